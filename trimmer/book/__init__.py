@@ -1,0 +1,1 @@
+"""The bench book: sheets, turns, readings and what they teach, in a database."""
