@@ -28,4 +28,6 @@ class BookError(TrimmerError):
     """The bench book could not be opened, read or written."""
 
     exit_status = 5
-    default_remedy = "Check the path, the space left and the permissions, or choose another with `--book`."
+    default_remedy = (
+        "Check the path, the space left and the permissions, or choose another with `--book`."
+    )

@@ -2,14 +2,15 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass, field
 from datetime import datetime
-from typing import Literal
+from typing import Literal, Protocol
 
 import numpy as np
 from numpy.typing import NDArray
 
-from trimmer.guidance.advice import Advice, Done, Follow
+from trimmer.guidance.advice import Advice, Done, Follow, Trim
 from trimmer.measurement.reading import Reading
 
 Word = Literal["moved", "back", "at-stop", "skip", "quit"]
@@ -135,3 +136,23 @@ class SheetNotes:
     """Unit's kind."""
     notes: dict[str, str] = field(default_factory=dict)
     """KEY=VALUE notes."""
+
+
+class Conversation(Protocol):
+    """A session as its faces see it."""
+
+    def run(self, stop: Callable[[], bool] = ...) -> Iterator[Report]:
+        """Give reports until the session ends or `stop` says so. Called once, in one thread."""
+        ...
+
+    def say(self, word: Word) -> None:
+        """Take a word from the person. Safe from any thread; answered through the reports."""
+        ...
+
+
+class Screwdriver(Protocol):
+    """Something that turns the simulated unit's trims: keys on the screen, lines on stdin."""
+
+    def turn(self, trim: Trim, turns: float) -> None:
+        """Turn a trim's screw; plus is clockwise. Safe from any thread, returns at once."""
+        ...
