@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 Coupling = Literal["DC", "AC", "unknown"]
 
-_CONTROL = {code: "\N{REPLACEMENT CHARACTER}" for code in (*range(0x20), *range(0x7F, 0xA0))}
+_CONTROL = dict.fromkeys((*range(32), *range(127, 160)), "�")
 
 
 def clean(text: str, limit: int = 200) -> str:
