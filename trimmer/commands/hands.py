@@ -1,0 +1,53 @@
+"""A session whose turns are made by a simulated hand, blind or following the live word."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator
+from typing import Self
+
+from drivers.bench import Bench
+from drivers.bench.hand import Hand
+from trimmer.reports import Advised, Conversation, Followed, Report, Word
+
+SIGN = {"clockwise": 1.0, "counter-clockwise": -1.0}
+STOPS = ("stop", "wrong-trim", "wrong-way")
+
+
+class HandsOn:
+    """A conversation in which a simulated hand answers each advice.
+
+    Blind, the hand makes the turn as asked, with its errors, and says *moved* (or *at-stop* when it
+    felt the stop). Followed, it turns until the live word says stop, like a person.
+    """
+
+    def __init__(self, session: Conversation, bench: Bench, *, seed: int) -> None:
+        self._session = session
+        self._bench = bench
+        self._hand = Hand(bench, seed)
+        self._turning = False
+
+    def run(self, stop: Callable[[], bool] = lambda: False) -> Iterator[Report]:
+        """Give the session's reports, turning the trims in between."""
+        for report in self._session.run(stop):
+            yield report
+            match report:
+                case Advised(advice=advice, follows=False):
+                    self._hand.make(advice.trim, SIGN[advice.sense] * advice.turns)
+                    at_stop = self._bench.at_stop(advice.trim)
+                    self._session.say("at-stop" if at_stop else "moved")
+                case Advised(advice=advice, follows=True):
+                    self._hand.start(advice.trim, SIGN[advice.sense])
+                    self._turning = True
+                case Followed(word=word) if self._turning and word.say in STOPS:
+                    self._hand.stop()
+                    self._turning = False
+
+    def say(self, word: Word) -> None:
+        """Pass a word on to the session."""
+        self._session.say(word)
+
+    def __enter__(self) -> Self:
+        return self
+
+    def __exit__(self, *exc: object) -> None:
+        self._hand.stop()

@@ -1,0 +1,62 @@
+"""`trimmer measure`: one reading of each source."""
+
+from __future__ import annotations
+
+import argparse
+import sys
+
+from drivers import SourceError, UnusableCapture
+from trimmer.commands.opening import opened
+from trimmer.commands.wording import reading_lines
+from trimmer.console import SIGNAL_UNUSABLE, SOURCE_FAILED, complain
+from trimmer.events import line, reading_event
+from trimmer.intake import Intake, Wanted
+from trimmer.measurement import MeasurementError
+
+
+def run(options: argparse.Namespace) -> int:
+    """Read each source in order; one that fails is said, and the others are still read.
+
+    Returns
+    -------
+    int
+        0, or the status of the first source that failed.
+    """
+    status = 0
+    for word in options.sources:
+        failed = _one(word, options)
+        status = status or failed
+    return status
+
+
+def wanted(options: argparse.Namespace, frames: int) -> Wanted:
+    """Give what the command's options ask of a reading."""
+    points = options.until_sigma
+    return Wanted(
+        orders=options.orders,
+        frames=frames,
+        until_sigma=None if points is None else points / 100.0,
+    )
+
+
+def _one(word: str, options: argparse.Namespace) -> int:
+    try:
+        with opened(word, options) as source:
+            taken = Intake(source.source, wanted(options, frames=4)).still()
+    except (MeasurementError, UnusableCapture) as error:
+        complain(error, error.remedy)
+        return SIGNAL_UNUSABLE
+    except SourceError as error:
+        complain(error, error.remedy)
+        return SOURCE_FAILED
+    waveform = taken.waveform
+    if options.json:
+        event = reading_event(
+            None, waveform.taken_at, waveform.source, taken.reading, notes=list(waveform.notes)
+        )
+        print(line(event), flush=True)
+        return 0
+    for text in reading_lines(waveform.source, taken.reading, waveform.notes):
+        print(text)
+    sys.stdout.flush()
+    return 0
