@@ -1,0 +1,1 @@
+"""Units, hands and trials shared by tests, benchmarks and campaigns of the guidance."""
