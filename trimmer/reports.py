@@ -65,6 +65,9 @@ class Advised:
     """What to do."""
     follows: bool
     """True where the session watches the hand and takes the turn as made by itself."""
+    reach: NDArray[np.float64] | None = field(default=None, compare=False, repr=False)
+    """Shape (m, 2(K-1)), orthonormal rows in the order of `Reading.parts`: the span of the trims'
+    columns as far as they are known; None until one is."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
