@@ -1,0 +1,151 @@
+"""Engines for the two databases, set so that a committed row is a kept row."""
+
+from __future__ import annotations
+
+import os
+import sqlite3
+import stat
+from importlib.util import find_spec
+from pathlib import Path
+from typing import Any
+from urllib.parse import quote
+
+import sqlalchemy as sa
+from sqlalchemy import event
+from sqlalchemy.pool import QueuePool
+
+from trimmer.book.faults import sqlite_name
+from trimmer.errors import BookError
+
+APPLICATION_ID = 0x54524D31
+"""In the header of every book file (SQLite's application_id), so that no other program's is taken."""
+
+BUSY_S = 10.0
+"""Longest wait for another program's write."""
+
+_CONNECT_S = 3
+_SILENCE_MS = 5000
+
+
+def sqlite_engine(path: Path, *, writes: bool = True) -> sa.Engine:
+    """Give an engine on a SQLite file, made if it is missing and `writes` is true.
+
+    Raises
+    ------
+    BookError
+        The path is a folder, a device, or a file of another program.
+    """
+    _check_path(path)
+
+    def connect() -> sqlite3.Connection:
+        connection = _open(path, writes)
+        try:
+            _prepare(connection, path, writes)
+        except BaseException:
+            connection.close()
+            raise
+        return connection
+
+    engine = sa.create_engine("sqlite://", creator=connect, poolclass=QueuePool)
+    event.listen(engine, "begin", _begin)
+    return engine
+
+
+def _check_path(path: Path) -> None:
+    try:
+        mode = path.stat().st_mode
+    except FileNotFoundError:
+        return
+    except OSError as error:
+        raise BookError(f"The book {path} failed: {error.strerror}.") from error
+    if not stat.S_ISREG(mode):
+        what = "a folder" if stat.S_ISDIR(mode) else "no plain file"
+        raise BookError(f"The book {path} failed: it is {what}.", "Give a file with `--book`.")
+
+
+def _open(path: Path, writes: bool) -> sqlite3.Connection:
+    """Open the file. `isolation_level` None leaves transactions to `_begin`, so that DDL is in them."""
+    mode = "rwc" if writes else "ro"
+    return _connect(path, f"mode={mode}")
+
+
+def _connect(path: Path, options: str) -> sqlite3.Connection:
+    name = quote(os.fsencode(path.absolute()))
+    return sqlite3.connect(
+        f"file:{name}?{options}",
+        uri=True,
+        timeout=BUSY_S,
+        isolation_level=None,
+        check_same_thread=False,
+    )
+
+
+def _prepare(connection: sqlite3.Connection, path: Path, writes: bool) -> None:
+    _check_owner(connection, path, writes)
+    connection.execute("PRAGMA foreign_keys = ON")
+    connection.execute("PRAGMA trusted_schema = OFF")
+    if writes:
+        # Where the file system cannot do WAL (a network folder), SQLite keeps the rollback journal,
+        # which is as safe and only slower.
+        connection.execute("PRAGMA journal_mode = WAL")
+        connection.execute("PRAGMA synchronous = FULL")
+
+
+def _check_owner(connection: sqlite3.Connection, path: Path, writes: bool) -> None:
+    owner = connection.execute("PRAGMA application_id").fetchone()[0]
+    if owner == APPLICATION_ID:
+        return
+    empty = connection.execute("SELECT count(*) FROM sqlite_master").fetchone()[0] == 0
+    if owner == 0 and empty:
+        if writes:
+            connection.execute(f"PRAGMA application_id = {APPLICATION_ID}")
+        return
+    raise BookError(
+        f"{path} is another program's database, not a bench book.",
+        "Choose another file with `--book`; this one was left as it is.",
+    )
+
+
+def _begin(connection: sa.Connection) -> None:
+    # A write takes the lock at its start: one that began by reading could be refused half-way.
+    writes = connection.get_execution_options().get("book_writes", False)
+    connection.exec_driver_sql("BEGIN IMMEDIATE" if writes else "BEGIN")
+
+
+def server_engine(url: str) -> sa.Engine:
+    """Give an engine on a PostgreSQL server whose every wait is finite.
+
+    Raises
+    ------
+    BookError
+        The driver is not installed, or the address cannot be read.
+    """
+    if find_spec("psycopg") is None:
+        raise BookError(
+            "A book on a server needs the PostgreSQL driver, which is not installed.",
+            "Install it with `pip install 'trimmer[postgres]'`.",
+        )
+    options: dict[str, Any] = {
+        "connect_timeout": _CONNECT_S,
+        "keepalives_idle": 5,
+        "keepalives_interval": 2,
+        "keepalives_count": 3,
+        "tcp_user_timeout": _SILENCE_MS,
+        "application_name": "trimmer",
+        "options": f"-c statement_timeout={3 * _SILENCE_MS} -c lock_timeout={_SILENCE_MS}",
+    }
+    try:
+        parsed = sa.make_url(url)
+        for given in parsed.query:
+            options.pop(given, None)
+        return sa.create_engine(parsed, connect_args=options, pool_pre_ping=True, pool_size=2)
+    except (sa.exc.ArgumentError, ValueError) as error:
+        raise BookError(
+            "The book's address cannot be read.",
+            "Write it as `postgresql+psycopg://USER@HOST:PORT/DATABASE`.",
+        ) from error
+
+
+def is_sqlite_busy(error: BaseException) -> bool:
+    """Tell whether another program held the file for longer than the wait."""
+    return sqlite_name(error).startswith(("SQLITE_BUSY", "SQLITE_LOCKED"))

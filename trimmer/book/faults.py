@@ -1,0 +1,96 @@
+"""What a database's complaint means for the person at the bench."""
+
+from __future__ import annotations
+
+import sqlite3
+from collections.abc import Iterator
+from contextlib import contextmanager
+
+import sqlalchemy.exc as sa_exc
+
+from trimmer.errors import BookError
+
+_SQLITE: tuple[tuple[str, str, str], ...] = (
+    (
+        "SQLITE_FULL",
+        "there is no space left for it",
+        "Free some space on that disk, or choose another with `--book`; what is in the book is safe.",
+    ),
+    (
+        "SQLITE_READONLY",
+        "it may be read but not written",
+        "Make the file and its folder writable, or choose another book with `--book`.",
+    ),
+    (
+        "SQLITE_NOTADB",
+        "it is not a bench book",
+        "Choose another file with `--book`; this one was left as it is.",
+    ),
+    (
+        "SQLITE_CORRUPT",
+        "it is damaged",
+        "Copy the file away, then import your latest export into a new book with `--book`.",
+    ),
+    (
+        "SQLITE_BUSY",
+        "another program has kept it locked",
+        "Close the other program that writes to it, then try again.",
+    ),
+    (
+        "SQLITE_LOCKED",
+        "another program has kept it locked",
+        "Close the other program that writes to it, then try again.",
+    ),
+    (
+        "SQLITE_CANTOPEN",
+        "it cannot be opened",
+        "Check that its folder exists and may be written, or choose another with `--book`.",
+    ),
+    (
+        "SQLITE_IOERR",
+        "the disk failed while it was read or written",
+        "Check the disk and the space left on it, or choose another with `--book`.",
+    ),
+)
+
+
+def sqlite_name(error: BaseException | None) -> str:
+    """Give SQLite's own name of an error (``SQLITE_FULL``), or an empty text."""
+    origin = getattr(error, "orig", error)
+    return getattr(origin, "sqlite_errorname", "") or ""
+
+
+def is_lost(error: BaseException) -> bool:
+    """Tell whether an error means that a server cannot be reached now: worth trying again later."""
+    if isinstance(error, sa_exc.DBAPIError):
+        if error.connection_invalidated:
+            return True
+        return isinstance(error, sa_exc.OperationalError | sa_exc.InterfaceError)
+    return isinstance(error, sa_exc.TimeoutError | OSError)
+
+
+def book_error(error: BaseException, shown: str) -> BookError:
+    """Turn a complaint of SQLite, PostgreSQL or the system into the book's own error."""
+    name = sqlite_name(error)
+    for start, what, remedy in _SQLITE:
+        if name.startswith(start):
+            return BookError(f"The book {shown} failed: {what}.", remedy)
+    if isinstance(error, sqlite3.DatabaseError) and "file is not a database" in str(error):
+        return BookError(f"The book {shown} failed: {_SQLITE[2][1]}.", _SQLITE[2][2])
+    return BookError(f"The book {shown} failed: {_first_line(error)}")
+
+
+def _first_line(error: BaseException) -> str:
+    origin = getattr(error, "orig", None) or error
+    lines = [line.strip() for line in str(origin).splitlines() if line.strip()]
+    said = lines[0] if lines else type(origin).__name__
+    return said if said.endswith(".") else said + "."
+
+
+@contextmanager
+def guarded(shown: str) -> Iterator[None]:
+    """Let only `BookError` out of the block."""
+    try:
+        yield
+    except (sa_exc.SQLAlchemyError, sqlite3.Error, OSError) as error:
+        raise book_error(error, shown) from error
