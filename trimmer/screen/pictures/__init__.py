@@ -1,0 +1,1 @@
+"""Drawing: pure functions from values and sizes to text, without Textual."""

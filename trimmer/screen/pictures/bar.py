@@ -1,0 +1,82 @@
+"""The bar that fills while the hand turns: the way the top of the screw goes, up to the mark."""
+
+from __future__ import annotations
+
+from trimmer.guidance.advice import Say, Sense
+from trimmer.screen.pictures.runs import Picture, Role, Row, Run
+
+BEGIN = -0.25
+"""Share at the bar's empty end; what is below 0 is the wrong way."""
+END = 1.35
+"""Share at the bar's far end; what is above 1 is too far."""
+
+_ROLES: dict[Say, Role] = {
+    "wait": "quiet",
+    "turn": "go",
+    "slow": "care",
+    "stop": "halt",
+    "wrong-trim": "halt",
+    "wrong-way": "halt",
+}
+
+
+def cell_of(share: float, width: int) -> int:
+    """Say in which of `width` cells a share lies, the ends taking what is beyond them."""
+    place = (share - BEGIN) / (END - BEGIN) * width
+    return min(width - 1, max(0, int(place)))
+
+
+def bar(
+    share: float | None, width: int, rows: int, sense: Sense = "clockwise", say: Say = "turn"
+) -> Picture:
+    """Draw the bar.
+
+    Parameters
+    ----------
+    share
+        How far of the asked turn has been made, 1 is all of it; None where it cannot be told yet.
+    width, rows
+        Size in cells, at least 12 by 1.
+    sense
+        Clockwise fills to the right, counter-clockwise to the left, as the top of the screw goes.
+    say
+        The word for the hand, which gives the filled part its role.
+
+    Returns
+    -------
+    Picture
+        Empty track, ``█`` made, ``╳`` the wrong way, ``▚`` too far, a full-height mark at 1.
+    """
+    zero, goal = cell_of(0.0, width), cell_of(1.0, width)
+    cells: list[tuple[str, Role]] = [_track(at, zero, goal, share is None) for at in range(width)]
+    if share is not None:
+        here = cell_of(share, width)
+        for at in range(zero, min(here, goal)):
+            cells[at] = ("█", _ROLES[say])
+        for at in range(goal + 1, here + 1):
+            cells[at] = ("▚", "halt")
+        for at in range(here, zero):
+            cells[at] = ("╳", "halt")
+    cells[goal] = ("┃", "strong")
+    if share is not None and share >= 1.0:
+        cells[goal] = ("█", "halt")
+    return tuple(_joined(cells, sense) for _ in range(rows))
+
+
+def _track(at: int, zero: int, goal: int, unknown: bool) -> tuple[str, Role]:
+    """Give the empty track: the asked stretch shaded, what is outside it bare."""
+    if not zero <= at < goal:
+        return " ", "quiet"
+    return ("╌" if unknown else "░"), "quiet"
+
+
+def _joined(cells: list[tuple[str, Role]], sense: Sense) -> Row:
+    """Join neighbours of one role into runs, mirrored where the turn is counter-clockwise."""
+    ordered = cells if sense == "clockwise" else cells[::-1]
+    runs: list[Run] = []
+    for text, role in ordered:
+        if runs and runs[-1].role == role:
+            runs[-1] = Run(runs[-1].text + text, role)
+        else:
+            runs.append(Run(text, role))
+    return tuple(runs)

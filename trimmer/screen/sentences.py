@@ -1,0 +1,127 @@
+"""What is said in small: why, what to expect, what is the matter, where things stand."""
+
+from __future__ import annotations
+
+import math
+
+from trimmer.measurement.reading import Reading
+from trimmer.screen.view import View
+
+STALE_S = 2.0
+"""A followed reading older than this is said to be old."""
+
+
+def percent(ratio: float, sigma: float | None = None) -> str:
+    """Write a ratio in percent, with as many digits as its uncertainty bears."""
+    value = 100.0 * ratio
+    if sigma is None or not math.isfinite(sigma) or sigma <= 0.0:
+        return f"{value:.2f} %"
+    digits = min(4, max(1, 1 - math.floor(math.log10(100.0 * sigma))))
+    return f"{value:.{digits}f} ±{100.0 * sigma:.{digits}f} %"
+
+
+def why(view: View) -> str:
+    """Say why this turn, or what is being done."""
+    if view.awaiting is not None:
+        return view.awaiting.message
+    if view.advice is not None:
+        return view.advice.notice or view.advice.reason
+    if view.finished is not None:
+        return view.finished.done.reason
+    return ""
+
+
+def expectation(view: View) -> str:
+    """Say what THD is, what it should become, and what no turn can remove."""
+    said = []
+    if view.reading is not None:
+        said.append(f"THD {percent(view.reading.thd.value, view.reading.thd.sigma)} now")
+    advice = view.advice
+    if advice is not None and advice.expected_thd is not None:
+        rise = ", and it rises at first" if advice.rises_first else ""
+        said.append(f"{percent(advice.expected_thd)} expected after this turn{rise}")
+    elif advice is not None:
+        said.append("this turn shows what the trim does")
+    if view.floor is not None:
+        said.append(f"floor {percent(view.floor.thd, view.floor.sigma)}")
+    return "; ".join(said)
+
+
+def even_skew(reading: Reading) -> float:
+    """Give what uneven rise and fall costs: the length of the even orders' skew parts, ratio."""
+    return float(math.sqrt(float((reading.skew_parts[0::2] ** 2).sum())))
+
+
+def first_things(reading: Reading) -> str:
+    """Say rise share, offset and level, their targets and what they cost."""
+    rise = 100.0 * reading.rise_share
+    said = [f"rise {rise:.2f} % of the period (50) costs {percent(even_skew(reading))}"]
+    if reading.has_volts and not reading.ac_coupled:
+        said.append(f"offset {volts(reading.offset)} (0)")
+    if reading.has_volts:
+        said.append(f"level {volts(reading.amplitude)} peak")
+    return ", ".join(said)
+
+
+def volts(value: float) -> str:
+    """Write a voltage in V or mV."""
+    return f"{value:.2f} V" if abs(value) >= 0.9995 else f"{1e3 * value:.0f} mV"
+
+
+def matters(view: View) -> tuple[str, ...]:
+    """List what the eyes should see besides the turn, the weightiest first."""
+    said: list[str] = []
+    if view.awaiting is not None and view.awaiting.code != "confirming":
+        left = view.awaiting.seconds_left
+        wait = "" if left is None else f" ({left:.0f} s left)"
+        said.append(f"{view.awaiting.remedy}{wait}")
+    if view.reading is not None:
+        said += [f"{flag.message}: {flag.remedy}" for flag in view.reading.flags]
+        first = first_things(view.reading)
+        costly = even_skew(view.reading) > 0.5 * view.reading.thd.value
+        said.insert(
+            0 if costly and len(view.steps) <= 1 and not view.awaiting else len(said), first
+        )
+    said += view.notes
+    return tuple(said)
+
+
+def waiting_for(view: View) -> str:
+    """Say what the tool is waiting for."""
+    if view.over:
+        return "nothing: the sheet is closed"
+    if view.awaiting is not None:
+        return {
+            "source-lost": "the source",
+            "signal": "a signal",
+            "confirming": "a longer reading",
+            "drifting": "the unit to settle",
+            "file": "the next file",
+        }.get(view.awaiting.code, view.awaiting.message)
+    if view.advice is None:
+        return "a reading" if view.opened is not None else "the source"
+    return "the hand" if view.follows else "your word that it is turned"
+
+
+def freshness(view: View, now: float) -> str:
+    """Say how old the reading is."""
+    if view.read_at is None:
+        return "no reading yet"
+    age = max(0.0, now - view.read_at)
+    said = f"{age:.1f} s" if age < 10.0 else f"{age:.0f} s"
+    return f"read {said} ago"
+
+
+def stale(view: View, now: float) -> bool:
+    """Tell whether a watched reading has stopped coming."""
+    watched = view.follows and view.advice is not None and not view.over
+    return watched and view.read_at is not None and now - view.read_at > STALE_S
+
+
+def kept(view: View) -> str:
+    """Say what the book has."""
+    if view.opened is None:
+        return "book not open yet"
+    count = len(view.steps)
+    readings = "no reading" if count == 0 else f"{count} reading{'s' if count > 1 else ''}"
+    return f"sheet {view.opened.sheet}: {readings} in the book"

@@ -1,0 +1,1 @@
+"""Small widgets: each takes one value and shows one picture of it."""

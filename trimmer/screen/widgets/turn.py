@@ -1,0 +1,76 @@
+"""The turn: its sign, its large words, the bar, and the trim that is to be left alone."""
+
+from __future__ import annotations
+
+from textual.reactive import reactive
+
+from trimmer.guidance.advice import Say, Sense
+from trimmer.screen.orders import Order, slot_radians
+from trimmer.screen.pictures.bar import bar
+from trimmer.screen.pictures.runs import Picture, Role, picture, row
+from trimmer.screen.pictures.signs import sign
+from trimmer.screen.pictures.words import words
+from trimmer.screen.widgets.picture import PictureWidget
+
+NOTHING = Order("wait", (("OPENING",),))
+
+
+class SignWidget(PictureWidget):
+    """The sign beside the words."""
+
+    order: reactive[Order] = reactive(NOTHING)
+
+    def picture(self, width: int, height: int) -> Picture:
+        """Draw the sign in the middle of its space."""
+        order = self.order
+        wide, high = min(width - 2, 2 * height), height
+        lines = sign(
+            order.sign, wide, high, order.trim or "upper", order.sense, slot_radians(order)
+        )
+        return picture(lines, width, height, _role(order))
+
+
+class WordsWidget(PictureWidget):
+    """The large words."""
+
+    order: reactive[Order] = reactive(NOTHING)
+
+    def picture(self, width: int, height: int) -> Picture:
+        """Draw the words as large as they fit."""
+        return words(self.order.words, self.order.aside, width, height, self.order.ground)
+
+
+class BarWidget(PictureWidget):
+    """The bar that fills while the hand turns."""
+
+    share: reactive[float | None] = reactive(None)
+    sense: reactive[Sense] = reactive("clockwise")
+    say: reactive[Say] = reactive("turn")
+    asked: reactive[bool] = reactive(False)
+
+    def picture(self, width: int, height: int) -> Picture:
+        """Draw the bar, or nothing while no turn is asked for."""
+        if not self.asked:
+            return tuple(row("", width) for _ in range(height))
+        return bar(self.share, width, height, self.sense, self.say)
+
+
+class LineWidget(PictureWidget):
+    """Lines of plain text, cut to the width; what does not fit is counted on the last."""
+
+    lines: reactive[tuple[str, ...]] = reactive(())
+    role: reactive[Role] = reactive("plain")
+
+    def picture(self, width: int, height: int) -> Picture:
+        """Show the lines."""
+        shown = list(self.lines[:height])
+        left = len(self.lines) - height
+        if left > 0 and shown:
+            tail = f"  (+{left} more)"
+            shown[-1] = shown[-1][: max(0, width - len(tail))] + tail
+        return tuple(row(line, width, self.role) for line in shown)
+
+
+def _role(order: Order) -> Role:
+    roles: dict[str, Role] = {"bars": "care", "solid": "halt", "checks": "halt", "slants": "halt"}
+    return roles.get(order.ground, "go" if order.sign == "turn" else "strong")
