@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping, Sequence
 from datetime import UTC, datetime
-from typing import Any, Self
+from typing import Any, Self, TypeVar
 
 import sqlalchemy as sa
 
@@ -32,6 +32,8 @@ from trimmer.book.entries import (
 from trimmer.book.ids import Ids
 from trimmer.book.store import Row, Store
 from trimmer.errors import BookError
+
+T = TypeVar("T")
 
 _EVERY = SheetFilter()
 
@@ -80,10 +82,6 @@ class Book:
 
     def _write(self, *rows: Row) -> None:
         self._store.add(rows)
-
-    def _read(self) -> Store:
-        """Give the database to read from."""
-        return self._store
 
     def begin_sheet(self, start: SheetStart) -> str:
         """Begin a sheet and give its id."""
@@ -200,9 +198,13 @@ class Book:
 
     # -- reading -------------------------------------------------------------------------------
 
+    def _ask(self, question: Callable[[sa.Connection], T]) -> T:
+        """Put a question to the database; a question may be put again elsewhere."""
+        with self._store.reading() as connection:
+            return question(connection)
+
     def _rows(self, query: sa.Select[Any]) -> list[sa.RowMapping]:
-        with self._read().reading() as connection:
-            return list(connection.execute(query).mappings())
+        return self._ask(lambda connection: list(connection.execute(query).mappings()))
 
     def _first(self, query: sa.Select[Any]) -> sa.RowMapping | None:
         rows = self._rows(query)
@@ -216,8 +218,7 @@ class Book:
 
     def count(self, which: SheetFilter = _EVERY) -> int:
         """Count sheets."""
-        with self._read().reading() as connection:
-            return connection.scalar(q.count(which)) or 0
+        return self._ask(lambda connection: connection.scalar(q.count(which)) or 0)
 
     def open_sheets(self, unit: str | None = None) -> list[SheetRow]:
         """List sheets that were never finished, newest first."""
@@ -250,22 +251,25 @@ class Book:
         return self._whole(self.find(fragment))
 
     def _whole(self, sheet: str) -> Sheet:
-        with self._read().reading() as connection:
-            card = connection.execute(sa.select(t.card).where(t.card.c.sheet_id == sheet))
-            row = r.listed(card.mappings().one())
-            start = connection.execute(sa.select(t.sheet).where(t.sheet.c.id == sheet))
-            began = r.start_from(start.mappings().one())
-            turns = list(connection.execute(q.of_sheet(t.turn, sheet)).mappings())
-            end = connection.execute(q.latest_of_sheet(t.sheet_end, sheet)).mappings().first()
-            wrong = list(connection.execute(q.of_sheet(t.correction, sheet)).mappings())
-        for seen in (*turns[-1:], *wrong[-1:], *((end,) if end else ())):
+        return self._ask(lambda connection: self._gathered(connection, sheet))
+
+    def _gathered(self, connection: sa.Connection, sheet: str) -> Sheet:
+        def rows(query: sa.Select[Any]) -> Sequence[sa.RowMapping]:
+            return connection.execute(query).mappings().all()
+
+        card = rows(sa.select(t.card).where(t.card.c.sheet_id == sheet))[0]
+        start = rows(sa.select(t.sheet).where(t.sheet.c.id == sheet))[0]
+        turns = rows(q.of_sheet(t.turn, sheet))
+        ends = rows(q.latest_of_sheet(t.sheet_end, sheet))
+        wrong = rows(q.of_sheet(t.correction, sheet))
+        for seen in (*turns[-1:], *wrong[-1:], *ends):
             self._ids.after(seen["id"])
         corrections = tuple(r.correction_from(each) for each in wrong)
         return Sheet(
-            row=row,
-            start=r.corrected(began, corrections),
+            row=r.listed(card),
+            start=r.corrected(r.start_from(start), corrections),
             turns=tuple(r.turn_from(each) for each in turns),
-            end=r.end_from(end) if end else None,
+            end=r.end_from(ends[0]) if ends else None,
             corrections=corrections,
         )
 

@@ -69,6 +69,19 @@ def is_lost(error: BaseException) -> bool:
     return isinstance(error, sa_exc.TimeoutError | OSError)
 
 
+_NOT_YET = ("starting up", "shutting down", "recovery", "too many", "remaining connection slots")
+
+
+def turned_away(error: BaseException) -> bool:
+    """Tell whether a server answered a greeting with a refusal that waiting will not mend.
+
+    A wrong password or an unknown database comes as ``FATAL`` in the greeting, without a code; so do
+    a start and a shutdown, which pass.
+    """
+    said = str(getattr(error, "orig", error))
+    return "FATAL" in said and not any(word in said for word in _NOT_YET)
+
+
 def book_error(error: BaseException, shown: str) -> BookError:
     """Turn a complaint of SQLite, PostgreSQL or the system into the book's own error."""
     name = sqlite_name(error)
@@ -82,6 +95,8 @@ def book_error(error: BaseException, shown: str) -> BookError:
 
 def _first_line(error: BaseException) -> str:
     origin = getattr(error, "orig", None) or error
+    if turned_away(origin):
+        return str(origin).partition("FATAL:")[2].strip().splitlines()[0] + "."
     lines = [line.strip() for line in str(origin).splitlines() if line.strip()]
     said = lines[0] if lines else type(origin).__name__
     return said if said.endswith(".") else said + "."

@@ -27,10 +27,11 @@ class Row:
 
     @property
     def owner(self) -> str:
-        """The sheet or record the row belongs to, itself where it stands alone."""
+        """The sheet or record the row is a part of, itself where it stands alone."""
         values = self.values
-        owner = values.get("sheet_id") or values.get("record_id") or values["id"]
-        return str(owner)
+        if self.table is t.record:
+            return str(values["id"])
+        return str(values.get("sheet_id") or values.get("record_id") or values["id"])
 
 
 class Store:
