@@ -1,0 +1,113 @@
+"""The lines of the signal model and their exact normal equations.
+
+The model of a record is a sum of lines ``a_i cos(w_i t) + b_i sin(w_i t)`` with
+``w_i = multiple_i * w + fixed_i``: order 0 (the offset), orders 1..K of the fundamental, and
+nuisance lines (hum) whose frequency does not move with the fundamental. The Gram matrix of the
+basis falls apart into an even block (cosines) and an odd block (sines), because time is counted
+from the middle of the record. Nothing of size N is ever built.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import lru_cache
+
+import numpy as np
+from numpy.typing import NDArray
+
+from trimmer.measurement.kernels import Array, dirichlet
+
+Complex = NDArray[np.complex128]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Lines:
+    """Which lines the model has: orders 0..K, then nuisance lines."""
+
+    orders: int
+    """K, the highest order of the fundamental in the model."""
+    fixed: Array
+    """Shape (H,), frequencies of nuisance lines, radians per sample."""
+
+    @property
+    def count(self) -> int:
+        """Number of lines, the offset included."""
+        return self.orders + 1 + self.fixed.size
+
+    def multiples(self) -> Array:
+        """Shape (count,), derivative of each line's frequency with respect to the fundamental's."""
+        return np.concatenate((np.arange(self.orders + 1.0), np.zeros(self.fixed.size)))
+
+    def frequencies(self, w: float) -> Array:
+        """Shape (count,), each line's frequency for the fundamental `w`, radians per sample."""
+        return np.concatenate((np.arange(self.orders + 1.0) * w, self.fixed))
+
+
+@lru_cache(maxsize=32)
+def _indices(orders: int) -> tuple[NDArray[np.intp], NDArray[np.intp]]:
+    """Give ``|i - j|`` and ``i + j`` for orders 0..K: the Toeplitz and the Hankel index."""
+    k = np.arange(orders + 1)
+    return np.abs(k[:, None] - k[None, :]), k[:, None] + k[None, :]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Normal:
+    """Normal equations of a set of lines at one fundamental frequency."""
+
+    even: Array
+    """Shape (L, L), sums of products of cosines."""
+    odd: Array
+    """Shape (L-1, L-1), sums of products of sines (the offset has none)."""
+    even_slope: Array
+    """Shape (L, L), sums of ``cos_l * t sin_i``."""
+    odd_slope: Array
+    """Shape (L, L), sums of ``sin_l * t cos_i``."""
+    sine_curve: Array
+    """Shape (L, L), sums of ``t sin_i * t sin_j``."""
+    cosine_curve: Array
+    """Shape (L, L), sums of ``t cos_i * t cos_j``."""
+
+
+def normal_equations(samples: int, lines: Lines, w: float) -> Normal:
+    """Build the Gram matrices of `lines` at fundamental `w` (radians per sample) in closed form."""
+    minus, plus = _kernels(samples, lines, w)
+    (d_minus, s_minus, c_minus), (d_plus, s_plus, c_plus) = minus, plus
+    return Normal(
+        even=0.5 * (d_minus + d_plus),
+        odd=0.5 * (d_minus - d_plus)[1:, 1:],
+        # cos_l t sin_i = t [sin(w_i + w_l) + sin(w_i - w_l)] / 2; `s_minus` is taken at w_l - w_i
+        even_slope=-0.5 * (s_plus - s_minus),
+        odd_slope=-0.5 * (s_plus + s_minus),
+        sine_curve=0.5 * (c_plus - c_minus),
+        cosine_curve=-0.5 * (c_plus + c_minus),
+    )
+
+
+Kernels = tuple[Array, Array, Array]
+
+
+def _kernels(samples: int, lines: Lines, w: float) -> tuple[Kernels, Kernels]:
+    """Give the kernels at all ``w_l - w_i`` and ``w_l + w_i`` (row l, column i)."""
+    k = lines.orders
+    table = dirichlet(samples, np.arange(2 * k + 1) * w)
+    near, far = _indices(k)
+    sign = np.sign(np.arange(k + 1)[:, None] - np.arange(k + 1)[None, :]).astype(np.float64)
+    minus = (table[0][near], sign * table[1][near], table[2][near])
+    plus = (table[0][far], table[1][far], table[2][far])
+    if not lines.fixed.size:
+        return minus, plus
+    w_i = lines.frequencies(w)
+    size = w_i.size
+    whole = []
+    for part, shift in ((minus, -1.0), (plus, 1.0)):
+        edge = dirichlet(samples, w_i[k + 1 :, None] + shift * w_i[None, :])
+        built = []
+        # kernel and curvature are even in w, the slope is odd: that decides the mirrored edge
+        for inner, rows, mirror in zip(part, edge, (1.0, shift, 1.0), strict=True):
+            full = np.empty((size, size))
+            full[: k + 1, : k + 1] = inner
+            full[k + 1 :, :] = rows
+            full[: k + 1, k + 1 :] = mirror * rows[:, : k + 1].T
+            built.append(full)
+        whole.append((built[0], built[1], built[2]))
+    return whole[0], whole[1]

@@ -1,0 +1,144 @@
+"""What the data have to say: block projections of a record on the lines of a model.
+
+The record is cut into M blocks of B samples. One real matrix product gives every block's sums
+``P = sum x exp(-j w_i b)`` and moments ``Q = sum b x exp(-j w_i b)``, with ``b`` counted from the
+middle of the block. Twisting block m by ``exp(-j w_i t_m)`` and adding up gives the sums over the
+whole record, and the moments give them at any slightly different frequency as well, so that the
+frequency can be refined without touching the samples again.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from trimmer.measurement.kernels import Array
+from trimmer.measurement.model import Complex, Lines
+
+_CHUNK = 1 << 16
+"""Samples projected at a time: half a megabyte, so that a chunk stays in the cache."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Record:
+    """A record brought to order: mean and scale taken out when its samples are read."""
+
+    samples: NDArray[np.float64]
+    """Shape (N,), as given."""
+    mean: float
+    """Taken off each sample."""
+    scale: float
+    """Each sample is divided by it after the mean is taken off."""
+
+    @property
+    def count(self) -> int:
+        """N, number of samples."""
+        return int(self.samples.size)
+
+    def piece(self, start: int, stop: int) -> Array:
+        """Samples `start` to `stop`, without mean, over the scale."""
+        return (self.samples[start:stop] - self.mean) / self.scale
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Projections:
+    """Block sums of a record on lines near the fundamental `w`."""
+
+    samples: int
+    """N."""
+    lines: Lines
+    """The lines projected on."""
+    w: float
+    """Fundamental at which the blocks were projected, radians per sample."""
+    centres: Array
+    """Shape (M,), middle of each block in samples from the middle of the record."""
+    length: int
+    """B, samples of a block."""
+    sums: Complex
+    """Shape (M, L), ``sum x exp(-j w_i b)``."""
+    moments: Complex
+    """Shape (M, L), ``sum b x exp(-j w_i b)``."""
+    power: float
+    """``sum x^2``."""
+
+    def totals(self, w: float, orders: int | None = None) -> tuple[Complex, Complex]:
+        """Give ``sum x exp(-j w_i t)`` and ``sum t x exp(-j w_i t)`` at the fundamental `w`.
+
+        Exact at `self.w`; away from it the error is of the order of ``(K (w - self.w) B)^2 / 24``.
+        `orders` keeps only the lines 0..orders.
+        """
+        keep = slice(None) if orders is None else slice(0, orders + 1)
+        k = self.lines.multiples()[keep]
+        turn = twists(self.centres, self.lines, w, keep)
+        moments = self.moments[:, keep]
+        shift = w - self.w
+        sums = self.sums[:, keep] if shift == 0.0 else self.sums[:, keep] - 1j * shift * k * moments
+        first = turn * sums
+        second = self.centres @ first + np.einsum("ml,ml->l", turn, moments)
+        return first.sum(axis=0), second
+
+    def blur(self, w: float) -> float:
+        """Say how far the highest order turns within half a block between `self.w` and `w`."""
+        return 0.5 * abs(w - self.w) * self.lines.orders * self.length
+
+
+def twists(t: Array, lines: Lines, w: float, keep: slice = slice(None)) -> Complex:
+    """Give ``exp(-j w_i t)`` for each line; shape (len(t), lines kept).
+
+    Orders are built from products of two short sets of powers, which costs two multiplications
+    where an exponential costs forty.
+    """
+    stop = lines.count if keep.stop is None else keep.stop
+    orders = min(lines.orders, stop - 1)
+    step = 8
+    low = np.exp(np.multiply.outer(t, -1j * w * np.arange(step)))
+    high = np.exp(np.multiply.outer(t, -1j * w * step * np.arange(orders // step + 1)))
+    powers = (high[:, :, None] * low[:, None, :]).reshape(t.size, -1)[:, : orders + 1]
+    if stop <= lines.orders + 1 or not lines.fixed.size:
+        return np.ascontiguousarray(powers)
+    return np.concatenate((powers, np.exp(np.multiply.outer(t, -1j * lines.fixed))), axis=1)
+
+
+def block_length(samples: int) -> int:
+    """Choose B: about as many samples in a block as there are blocks, even, at least 16."""
+    return max(16, 2 * round(0.5 * float(np.sqrt(samples))))
+
+
+def project(record: Record, lines: Lines, w: float) -> Projections:
+    """Project a record on `lines` at the fundamental `w` (radians per sample)."""
+    samples, length = record.count, block_length(record.count)
+    blocks = -(-samples // length)
+    inner = np.arange(length) - 0.5 * (length - 1)
+    basis = _basis(inner, lines, w)
+    found = np.empty((blocks, basis.shape[1]))
+    power = 0.0
+    rows = max(1, _CHUNK // length)
+    for first in range(0, blocks, rows):
+        last = min(first + rows, blocks)
+        piece = record.piece(first * length, min(last * length, samples))
+        power += float(piece @ piece)
+        if piece.size < (last - first) * length:  # zeros add nothing to any sum
+            piece = np.concatenate((piece, np.zeros((last - first) * length - piece.size)))
+        np.matmul(piece.reshape(last - first, length), basis, out=found[first:last])
+    cosines, sines, t_cosines, t_sines = np.split(found, 4, axis=1)
+    centres = np.arange(blocks) * float(length) + 0.5 * (length - 1) - 0.5 * (samples - 1)
+    return Projections(
+        samples=samples,
+        lines=lines,
+        w=w,
+        centres=centres,
+        length=length,
+        sums=cosines - 1j * sines,
+        moments=t_cosines - 1j * t_sines,
+        power=power,
+    )
+
+
+def _basis(inner: Array, lines: Lines, w: float) -> Array:
+    """Shape (B, 4 L): cosines, sines, and both times the time within the block."""
+    waves = twists(inner, lines, w)
+    cosines, sines = waves.real, -waves.imag
+    t = inner[:, None]
+    return np.concatenate((cosines, sines, t * cosines, t * sines), axis=1)
