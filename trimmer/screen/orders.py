@@ -5,7 +5,6 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass
 
-
 from trimmer.guidance.advice import Advice, Follow, Sense, Trim, Verdict
 from trimmer.reports import Awaiting
 from trimmer.screen.pictures.signs import Sign

@@ -104,12 +104,21 @@ def waiting_for(view: View) -> str:
 
 
 def freshness(view: View, now: float) -> str:
-    """Say how old the reading is."""
+    """Say how old the reading is; whole seconds, so that the line is seldom redrawn."""
     if view.read_at is None:
         return "no reading yet"
     age = max(0.0, now - view.read_at)
-    said = f"{age:.1f} s" if age < 10.0 else f"{age:.0f} s"
-    return f"read {said} ago"
+    if age < 1.0:
+        return "reading live"
+    said = f"{age:.0f} s" if age < 120.0 else f"{age / 60.0:.0f} min"
+    return f"reading {said} old"
+
+
+def status(view: View, now: float) -> str:
+    """Say where things stand: waiting for, freshness, source, book."""
+    unit = view.opened.unit if view.opened is not None else ""
+    place = f"{view.source}, {unit}" if unit else view.source
+    return f"waits for {waiting_for(view)} │ {freshness(view, now)} │ {place} │ {kept(view)}"
 
 
 def stale(view: View, now: float) -> bool:
@@ -124,4 +133,4 @@ def kept(view: View) -> str:
         return "book not open yet"
     count = len(view.steps)
     readings = "no reading" if count == 0 else f"{count} reading{'s' if count > 1 else ''}"
-    return f"sheet {view.opened.sheet}: {readings} in the book"
+    return f"book: sheet {view.opened.sheet}, {readings}"

@@ -21,6 +21,7 @@ from trimmer.reports import (
     Report,
 )
 from trimmer.screen.pictures.course import Floor, Step
+from trimmer.screen.pictures.parts import Split, split
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -51,6 +52,8 @@ class View:
     """THD that no turn removes."""
     reach: NDArray[np.float64] | None = None
     """Shape (m, 2(K-1)), orthonormal rows: what the trims reach."""
+    parts: Split | None = None
+    """The newest reading's parts, split into what the trims reach and what they do not."""
     finished: Finished | None = None
     """The end, where it came."""
     failed: Failed | None = None
@@ -86,6 +89,7 @@ def take(view: View, report: Report, now: float) -> View:
                 view,
                 word=report.word,
                 reading=report.reading,
+                parts=_split(report.reading, view.reach),
                 read_at=now - report.age_s,
                 awaiting=None,
             )
@@ -107,6 +111,7 @@ def _measured(view: View, report: Measured, now: float) -> View:
     return replace(
         view,
         reading=report.reading,
+        parts=_split(report.reading, view.reach),
         read_at=now,
         notes=report.notes,
         steps=(*kept, step),
@@ -121,12 +126,14 @@ def _advised(view: View, report: Advised) -> View:
     floor = view.floor
     if advice.floor_thd is not None:
         floor = Floor(advice.floor_thd, advice.floor_sigma or 0.0)
+    reach = view.reach if report.reach is None else report.reach
     return replace(
         view,
         advice=advice,
         follows=report.follows,
         floor=floor,
-        reach=view.reach if report.reach is None else report.reach,
+        reach=reach,
+        parts=_split(view.reading, reach),
         word=None,
         awaiting=None,
     )
@@ -138,3 +145,7 @@ def _finished(view: View, report: Finished) -> View:
     if done.floor_thd is not None:
         floor = Floor(done.floor_thd, done.floor_sigma or 0.0)
     return replace(view, finished=report, floor=floor, advice=None, word=None, awaiting=None)
+
+
+def _split(reading: Reading | None, reach: NDArray[np.float64] | None) -> Split | None:
+    return None if reading is None else split(reading.parts, reading.covariance, reach)

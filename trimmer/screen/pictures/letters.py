@@ -133,7 +133,7 @@ class Size:
     @property
     def rows(self) -> int:
         """Rows of cells a line of letters takes."""
-        return -(-self._letters["A"].shape[0] * self.down // 2)
+        return -(-len(self._letters["A"]) * self.down // 2)
 
     @property
     def _letters(self) -> Alphabet:
@@ -150,7 +150,7 @@ class Size:
 
     def width(self, text: str) -> int:
         """Cells a line of text takes."""
-        return self.mask(text).shape[1] // 2
+        return int(self.mask(text).shape[1]) // 2
 
 
 SIZES = (

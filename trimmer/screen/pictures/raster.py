@@ -77,8 +77,8 @@ class Canvas:
         """Give x and y of every sample, broadcastable to the whole canvas."""
         wide, high = self.dots.value
         across, down = self.columns * wide * self.fine, self.rows * high * self.fine
-        x = (np.arange(across) + 0.5) * (self.columns / across)
-        y = (np.arange(down) + 0.5) * (2.0 * self.rows / down)
+        x = (np.arange(across, dtype=np.float64) + 0.5) * (self.columns / across)
+        y = (np.arange(down, dtype=np.float64) + 0.5) * (2.0 * self.rows / down)
         return x[None, :], y[:, None]
 
     def ink(self, samples: Mask) -> Mask:

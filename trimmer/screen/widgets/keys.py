@@ -43,6 +43,6 @@ class KeysWidget(PictureWidget):
 
     keys: reactive[tuple[Key, ...]] = reactive(())
 
-    def picture(self, width: int, height: int) -> Picture:
+    def picture(self, width: int, height: int) -> Picture:  # noqa: ARG002
         """Lay out the keys in one row."""
         return (keys_row(self.keys, width),)

@@ -1,0 +1,65 @@
+"""The sheet at the end: the verdict, the figures, what is left and what to do about it."""
+
+from __future__ import annotations
+
+from typing import ClassVar
+
+from textual.app import ComposeResult
+from textual.binding import Binding, BindingType
+from textual.containers import Horizontal, VerticalScroll
+from textual.screen import Screen
+from textual.widgets import Static
+
+from trimmer.screen.orders import order
+from trimmer.screen.sheet_words import failed_lines, sheet_lines
+from trimmer.screen.view import View
+from trimmer.screen.widgets.keys import Key, KeysWidget
+from trimmer.screen.widgets.panes import CourseWidget, ShapeWidget
+from trimmer.screen.widgets.turn import SignWidget, WordsWidget
+
+
+class SheetScreen(Screen[None]):
+    """Shows how a session ended."""
+
+    CSS_PATH = "sheet.tcss"
+    VERTICAL_BREAKPOINTS = [(0, "-short"), (32, "-tall")]  # noqa: RUF012 - declared so by the base class
+    BINDINGS: ClassVar[list[BindingType]] = [
+        Binding("enter,escape", "close", "Close the sheet", show=False),
+    ]
+
+    def __init__(self, view: View) -> None:
+        super().__init__()
+        self.view = view
+
+    def compose(self) -> ComposeResult:
+        """Lay out the verdict, the words, the pictures, the key."""
+        with Horizontal(id="verdict"):
+            yield SignWidget(id="sign")
+            yield WordsWidget(id="words")
+        with VerticalScroll(id="sheet"):
+            lines = failed_lines(self.view) if self.view.failed else sheet_lines(self.view)
+            for kind, text in lines:
+                yield Static(text, classes=kind, markup=False)
+        with Horizontal(id="panes"):
+            yield ShapeWidget(id="shape")
+            yield CourseWidget(id="course")
+        yield KeysWidget(id="keys")
+
+    def on_mount(self) -> None:
+        """Give every widget its value."""
+        todo = order(self.view)
+        self.query_one(SignWidget).order = todo
+        self.query_one(WordsWidget).order = todo
+        self.query_one(ShapeWidget).reading = self.view.reading
+        course = self.query_one(CourseWidget)
+        course.steps, course.floor = self.view.steps, self.view.floor
+        self.query_one("#panes").display = self.view.reading is not None
+        self.query_one(KeysWidget).keys = (
+            Key("Enter", "close", "screen.close"),
+            Key("?", "help", "app.explain"),
+            Key("t", "light/dark", "app.turn_light"),
+        )
+
+    def action_close(self) -> None:
+        """Close."""
+        self.dismiss(None)

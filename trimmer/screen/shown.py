@@ -1,0 +1,113 @@
+"""What each place on the tuning screen shows, worked out from the view."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from trimmer.guidance.advice import Say, Trim
+from trimmer.screen import sentences
+from trimmer.screen.hand import KeyedHand
+from trimmer.screen.orders import Order, order
+from trimmer.screen.view import View
+from trimmer.screen.widgets.keys import Key
+
+
+@dataclass(frozen=True, slots=True)
+class Shown:
+    """The values of all places at a moment."""
+
+    order: Order
+    """What to do."""
+    share: float | None
+    """How far the asked turn has been made."""
+    say: Say
+    """The word for the hand."""
+    asked: bool
+    """Whether a turn is asked for."""
+    lines: dict[str, tuple[str, ...]]
+    """Lines of text by the place they stand in."""
+    keys: tuple[Key, ...]
+    """Keys on show, the weightiest first."""
+    stale: bool
+    """Whether watched readings have stopped."""
+    alarming: bool
+    """Whether the first matter is one that holds the session up."""
+
+
+def shown(view: View, now: float, hand: KeyedHand | None, silent: bool) -> Shown:
+    """Work out what to show.
+
+    Parameters
+    ----------
+    view
+        What is known.
+    now
+        The monotonic clock, seconds.
+    hand
+        The hand on the keyboard, where there is one.
+    silent
+        Whether sounds are off.
+    """
+    todo, word = order(view), view.word
+    return Shown(
+        order=todo,
+        share=None if word is None else word.share,
+        say="turn" if word is None else word.say,
+        asked=view.advice is not None and not view.over,
+        lines={
+            "upper-rest": resting("upper", todo, hand),
+            "lower-rest": resting("lower", todo, hand),
+            "why": (sentences.why(view), sentences.expectation(view)),
+            "matters": sentences.matters(view),
+            "status": (sentences.status(view, now),),
+        },
+        keys=keys(view, hand, silent),
+        stale=sentences.stale(view, now),
+        alarming=view.awaiting is not None and view.awaiting.code != "confirming",
+    )
+
+
+def resting(trim: Trim, todo: Order, hand: KeyedHand | None) -> tuple[str, ...]:
+    """Say that a trim is to be left alone; nothing for the one that is to be turned."""
+    if todo.trim is None or todo.trim == trim:
+        return ()
+    said = f"{trim} trim: leave it alone"
+    if hand is not None and hand.trim == trim:
+        arrow = "↑" if trim == "lower" else "↓"
+        said += f"   ◀ the screwdriver is on it: {arrow} puts it on the {todo.trim} trim"
+    return (said,)
+
+
+def keys(view: View, hand: KeyedHand | None, silent: bool) -> tuple[Key, ...]:
+    """List the keys that do something now, the weightiest first."""
+    listed: list[Key] = []
+    turning = view.advice is not None and not view.over
+    if hand is not None:
+        where = f"on {hand.trim}"
+        other = "lower" if hand.trim == "upper" else "upper"
+        coarse, fine = hand.degrees(fine=False), hand.degrees(fine=True)
+        listed += [
+            Key("↑↓", where, f"screen.hold('{other}')"),
+            Key("←", "", "screen.turn('counter-clockwise', False)"),
+            Key("→", f"{coarse:.2g}°", "screen.turn('clockwise', False)"),
+            Key(",", "", "screen.turn('counter-clockwise', True)"),
+            Key(".", f"{fine:.2g}°", "screen.turn('clockwise', True)"),
+        ]
+    if turning and not view.follows:
+        listed.append(Key("Enter", "turned", "screen.say('moved')"))
+    listed.append(Key("?", "help", "app.explain"))
+    if turning:
+        listed += [
+            Key("b", "take back", "screen.say('back')"),
+            Key("e", "at its end", "screen.say('at-stop')"),
+            Key("o", "other way", "screen.say('skip')"),
+        ]
+    listed += [
+        Key("q", "end", "app.leave"),
+        Key("m", "sound off" if not silent else "sound on", "screen.mute"),
+        Key("t", "light/dark", "app.turn_light"),
+        Key("g", "glyphs", "screen.glyphs"),
+        Key("c", "cautions", "app.caution"),
+        Key("^P", "all", "app.command_palette"),
+    ]
+    return tuple(listed)

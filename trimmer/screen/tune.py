@@ -1,0 +1,201 @@
+"""The screen of a tuning session: takes its reports up and shows each in its place."""
+
+from __future__ import annotations
+
+from time import monotonic
+from typing import ClassVar
+
+from textual import work
+from textual.app import ComposeResult
+from textual.binding import Binding, BindingType
+from textual.containers import Horizontal
+from textual.message import Message
+from textual.screen import Screen
+from textual.worker import get_current_worker
+
+from trimmer.guidance.advice import Sense, Trim
+from trimmer.reports import Conversation, Word
+from trimmer.screen.bells import STROKES_S, rung
+from trimmer.screen.hand import KeyedHand
+from trimmer.screen.mailbox import Mailbox, reports
+from trimmer.screen.options import Options
+from trimmer.screen.pictures.raster import Dots
+from trimmer.screen.shown import Shown, shown
+from trimmer.screen.view import View, take
+from trimmer.screen.widgets.keys import KeysWidget
+from trimmer.screen.widgets.panes import CourseWidget, PartsWidget, ShapeWidget
+from trimmer.screen.widgets.turn import BarWidget, LineWidget, SignWidget, WordsWidget
+
+FRAME_S = 1 / 20
+"""The shortest time between two frames."""
+
+
+class TuneScreen(Screen[None]):
+    """Guides the two trims: what to do, how far along, why and what is left, figures."""
+
+    CSS_PATH = "tune.tcss"
+    VERTICAL_BREAKPOINTS = [  # noqa: RUF012 - declared so by the base class
+        (0, "-tiny"),
+        (20, "-short"),
+        (32, "-tall"),
+        (50, "-high"),
+    ]
+    BINDINGS: ClassVar[list[BindingType]] = [
+        Binding("enter,space", "say('moved')", "I have turned it", show=False),
+        Binding("b", "say('back')", "Take the last turn back", show=False),
+        Binding("e", "say('at-stop')", "The trim is at its end", show=False),
+        Binding("o", "say('skip')", "Ask for another way", show=False),
+        Binding("up", "hold('upper')", "Screwdriver on the upper trim", show=False),
+        Binding("down", "hold('lower')", "Screwdriver on the lower trim", show=False),
+        Binding("right", "turn('clockwise', False)", "Turn clockwise", show=False),
+        Binding("left", "turn('counter-clockwise', False)", "Turn counter-clockwise", show=False),
+        Binding("full_stop,shift+right", "turn('clockwise', True)", "A little", show=False),
+        Binding("comma,shift+left", "turn('counter-clockwise', True)", "A little", show=False),
+        Binding("m", "mute", "Sounds on or off", show=False),
+        Binding("g", "glyphs", "Fine or plain curves", show=False),
+    ]
+
+    class Mail(Message):
+        """Reports lie in the mailbox."""
+
+    class Over(Message):
+        """The session has ended."""
+
+        def __init__(self, view: View, left: bool) -> None:
+            super().__init__()
+            self.view = view
+            self.left = left
+
+    def __init__(self, session: Conversation, options: Options) -> None:
+        super().__init__()
+        self.view = View(source=options.source)
+        self.options = options
+        self.hand = None if options.hand is None else KeyedHand(options.hand, options.travel)
+        self.silent = not options.bell
+        self.dots = options.dots
+        self._session = session
+        self._mailbox = Mailbox()
+        self.leaving = False
+        self._frame_at = 0.0
+        self._frame_due = False
+
+    def compose(self) -> ComposeResult:
+        """Lay out: the turn, the bar, why, the panes, what matters, where things stand, keys."""
+        yield LineWidget(id="upper-rest", classes="rest")
+        with Horizontal(id="turn"):
+            yield SignWidget(id="sign")
+            yield WordsWidget(id="words")
+        yield LineWidget(id="lower-rest", classes="rest")
+        yield BarWidget(id="bar")
+        yield LineWidget(id="why")
+        with Horizontal(id="panes"):
+            yield ShapeWidget(id="shape")
+            yield PartsWidget(id="parts")
+            yield CourseWidget(id="course")
+        yield LineWidget(id="matters")
+        yield LineWidget(id="status")
+        yield KeysWidget(id="keys")
+
+    def on_mount(self) -> None:
+        """Begin: the session in its thread, the clock for the reading's age."""
+        self.display_view()
+        self.set_interval(1.0, self.display_view)
+        self.follow()
+
+    @work(thread=True, exclusive=True, exit_on_error=False, group="readings")
+    def follow(self) -> None:
+        """Run the session and put its reports into the mailbox."""
+        worker = get_current_worker()
+        for report in reports(self._session, lambda: worker.is_cancelled):
+            if self._mailbox.put(report):
+                self.post_message(self.Mail())
+        self.post_message(self.Mail())
+
+    def on_tune_screen_mail(self) -> None:
+        """Take the mail up now, or as soon as a frame may be drawn again."""
+        wait = self._frame_at + FRAME_S - monotonic()
+        if wait <= 0.0:
+            self.take_mail()
+        elif not self._frame_due:
+            self._frame_due = True
+            self.set_timer(wait, self.take_mail)
+
+    def take_mail(self) -> None:
+        """Take all reports up and show what they make of the view."""
+        self._frame_due = False
+        self._frame_at = now = monotonic()
+        for report in self._mailbox.take():
+            before, self.view = self.view, take(self.view, report, now)
+            self.ring(before)
+        self.display_view()
+        if self.view.over:
+            self.post_message(self.Over(self.view, self.leaving))
+
+    def ring(self, before: View) -> None:
+        """Ring for the change from `before` to now."""
+        bell = None if self.silent else rung(before, self.view)
+        for delay in STROKES_S[bell] if bell is not None else ():
+            self.set_timer(max(delay, 0.001), self.app.bell)
+
+    def display_view(self) -> None:
+        """Give every widget its value; those whose value is the same stay as they are."""
+        value = shown(self.view, monotonic(), self.hand, self.silent)
+        self.query_one(SignWidget).order = value.order
+        self.query_one(WordsWidget).order = value.order
+        self._show_lines(value)
+        self._show_bar(value)
+        self.query_one(ShapeWidget).reading = self.view.reading
+        self.query_one(ShapeWidget).dots = self.dots
+        self.query_one(PartsWidget).split = self.view.parts
+        course = self.query_one(CourseWidget)
+        course.steps, course.floor = self.view.steps, self.view.floor
+        self.query_one(KeysWidget).keys = value.keys
+
+    def _show_lines(self, value: Shown) -> None:
+        for name, lines in value.lines.items():
+            self.query_one(f"#{name}", LineWidget).lines = lines
+        for trim in ("upper", "lower"):
+            rest = self.query_one(f"#{trim}-rest")
+            rest.display = bool(value.lines[f"{trim}-rest"])
+        self.query_one("#status").set_class(value.stale, "-stale")
+        self.query_one("#matters").set_class(value.alarming, "-alarming")
+
+    def _show_bar(self, value: Shown) -> None:
+        bar = self.query_one(BarWidget)
+        bar.asked, bar.share = value.asked, value.share
+        bar.sense, bar.say = value.order.sense, value.say
+
+    def check_action(self, action: str, parameters: tuple[object, ...]) -> bool | None:  # noqa: ARG002
+        """Only the simulated unit's trims can be turned from here."""
+        return action not in ("hold", "turn") or self.hand is not None
+
+    def action_say(self, word: Word) -> None:
+        """Say a word to the session."""
+        self._session.say(word)
+
+    def action_hold(self, trim: Trim) -> None:
+        """Put the screwdriver on a trim."""
+        if self.hand is not None:
+            self.hand.trim = trim
+            self.display_view()
+
+    def action_turn(self, sense: Sense, fine: bool) -> None:
+        """Turn the trim the screwdriver is on."""
+        if self.hand is not None:
+            self.hand.turn(sense, fine)
+
+    def action_mute(self) -> None:
+        """Sounds on or off."""
+        self.silent = not self.silent
+        self.display_view()
+
+    def action_glyphs(self) -> None:
+        """Draw curves in braille or in block characters."""
+        self.dots = Dots.BLOCK if self.dots is Dots.BRAILLE else Dots.BRAILLE
+        self.display_view()
+
+    def leave(self) -> None:
+        """End the session early; what was measured is in the book."""
+        self.leaving = True
+        self._session.say("quit")
+        self.workers.cancel_node(self)
