@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from datetime import UTC, datetime
 from typing import Any, Self, TypeVar
 
@@ -14,6 +14,7 @@ from trimmer.book import tables as t
 from trimmer.book.entries import (
     Document,
     Learned,
+    Merged,
     Notice,
     Record,
     RecordPoint,
@@ -29,6 +30,7 @@ from trimmer.book.entries import (
     UnitRow,
     What,
 )
+from trimmer.book.faults import legible
 from trimmer.book.ids import Ids
 from trimmer.book.store import Row, Store
 from trimmer.errors import BookError
@@ -196,12 +198,20 @@ class Book:
         }
         return Row(t.record_end, values)
 
+    def merge(self, batches: Iterable[Sequence[Row]]) -> Merged:
+        """Add rows of another bench's book, all of them or none."""
+        return self._store.merge(batches)
+
     # -- reading -------------------------------------------------------------------------------
 
     def _ask(self, question: Callable[[sa.Connection], T]) -> T:
         """Put a question to the database; a question may be put again elsewhere."""
         with self._store.reading() as connection:
             return question(connection)
+
+    def examine(self, question: Callable[[sa.Connection], T]) -> T:
+        """Put a question of one's own to the database; it sees one moment of the book."""
+        return self._ask(question)
 
     def _rows(self, query: sa.Select[Any]) -> list[sa.RowMapping]:
         return self._ask(lambda connection: list(connection.execute(query).mappings()))
@@ -232,8 +242,11 @@ class Book:
         BookError
             There is none, or more than one.
         """
-        found = self._rows(q.like_id(fragment.strip().lower())) if fragment.strip() else []
-        ids = [row["sheet_id"] for row in found]
+        return self._ask(lambda connection: self._found(connection, fragment))
+
+    def _found(self, connection: sa.Connection, fragment: str) -> str:
+        sought = fragment.strip().lower()
+        ids = list(connection.scalars(q.like_id(sought))) if sought else []
         if not ids:
             raise BookError(
                 f"No sheet's id begins or ends with {fragment!r} in {self.location}.",
@@ -248,12 +261,11 @@ class Book:
 
     def sheet(self, fragment: str) -> Sheet:
         """Give a whole sheet by its id, or by the beginning or end of it that no other shares."""
-        return self._whole(self.find(fragment))
+        return self._ask(lambda connection: self._gathered(connection, fragment))
 
-    def _whole(self, sheet: str) -> Sheet:
-        return self._ask(lambda connection: self._gathered(connection, sheet))
+    def _gathered(self, connection: sa.Connection, fragment: str) -> Sheet:
+        sheet = self._found(connection, fragment)
 
-    def _gathered(self, connection: sa.Connection, sheet: str) -> Sheet:
         def rows(query: sa.Select[Any]) -> Sequence[sa.RowMapping]:
             return connection.execute(query).mappings().all()
 
@@ -264,14 +276,15 @@ class Book:
         wrong = rows(q.of_sheet(t.correction, sheet))
         for seen in (*turns[-1:], *wrong[-1:], *ends):
             self._ids.after(seen["id"])
-        corrections = tuple(r.correction_from(each) for each in wrong)
-        return Sheet(
-            row=r.listed(card),
-            start=r.corrected(r.start_from(start), corrections),
-            turns=tuple(r.turn_from(each) for each in turns),
-            end=r.end_from(ends[0]) if ends else None,
-            corrections=corrections,
-        )
+        with legible(f"Sheet {sheet} in {self.location}"):
+            corrections = tuple(r.correction_from(each) for each in wrong)
+            return Sheet(
+                row=r.listed(card),
+                start=r.corrected(r.start_from(start), corrections),
+                turns=tuple(r.turn_from(each) for each in turns),
+                end=r.end_from(ends[0]) if ends else None,
+                corrections=corrections,
+            )
 
     def resume(self, fragment: str) -> Resumed:
         """Take a sheet up again: all that was acknowledged, and the guide's last state."""
@@ -303,7 +316,8 @@ class Book:
     def reference(self, name: str) -> Reference | None:
         """Give the newest reference of a name."""
         row = self._first(q.reference(name.strip()))
-        return None if row is None else r.reference_from(row)
+        with legible(f"Reference {name!r} in {self.location}"):
+            return None if row is None else r.reference_from(row)
 
     def references(self) -> list[str]:
         """List the names of references."""

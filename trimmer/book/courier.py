@@ -112,10 +112,9 @@ class Courier:
         shown = self._outbox.server.shown
         with self._change:
             if not self._away:
-                said = str(error)
                 self._notices.append(
                     Notice(
-                        f"{said} What is measured is kept on this machine meanwhile.",
+                        f"{error} What is measured is kept on this machine meanwhile.",
                         f"Go on; it is delivered by itself once {shown} answers.",
                     )
                 )

@@ -130,6 +130,8 @@ class SheetFilter:
     until: datetime | None = None
     """Begun before this instant."""
     limit_thd: float | None = None
+    """Only sheets whose last THD is above this limit, ratio."""
+    within_thd: float | None = None
     """Only sheets whose last THD is at most this, ratio."""
     verdict: str | None = None
     """Only this verdict; ``stopped`` takes the unfinished ones in."""
@@ -294,3 +296,15 @@ class Notice:
     """What is the matter."""
     remedy: str
     """What to do, or that nothing needs to be done."""
+
+
+@dataclass(frozen=True, slots=True)
+class Merged:
+    """What an import brought."""
+
+    sheets: int
+    """Sheets in the file."""
+    rows: int
+    """Rows in the file."""
+    new: int
+    """Rows that the book did not have."""

@@ -69,6 +69,8 @@ def is_lost(error: BaseException) -> bool:
     return isinstance(error, sa_exc.TimeoutError | OSError)
 
 
+_TURNED_AWAY = "Check the user, the password and the database's name in `--book`."
+_LOST = "Check that the server runs and the network reaches it, then try again."
 _NOT_YET = ("starting up", "shutting down", "recovery", "too many", "remaining connection slots")
 
 
@@ -90,16 +92,22 @@ def book_error(error: BaseException, shown: str) -> BookError:
             return BookError(f"The book {shown} failed: {what}.", remedy)
     if isinstance(error, sqlite3.DatabaseError) and "file is not a database" in str(error):
         return BookError(f"The book {shown} failed: {_SQLITE[2][1]}.", _SQLITE[2][2])
+    if turned_away(error):
+        return BookError(f"The book {shown} turned us away: {_first_line(error)}", _TURNED_AWAY)
+    if isinstance(error, sa_exc.DBAPIError) and is_lost(error):
+        return BookError(f"The book {shown} cannot be reached: {_first_line(error)}", _LOST)
     return BookError(f"The book {shown} failed: {_first_line(error)}")
 
 
 def _first_line(error: BaseException) -> str:
     origin = getattr(error, "orig", None) or error
-    if turned_away(origin):
-        return str(origin).partition("FATAL:")[2].strip().splitlines()[0] + "."
-    lines = [line.strip() for line in str(origin).splitlines() if line.strip()]
-    said = lines[0] if lines else type(origin).__name__
-    return said if said.endswith(".") else said + "."
+    said = str(origin)
+    lines = [line.strip() for line in said.splitlines() if line.strip()]
+    first = lines[0] if lines else type(origin).__name__
+    # The PostgreSQL driver leads every failed greeting with where it greeted; the reason comes last.
+    for lead in ("FATAL:", " failed: "):
+        first = first.rpartition(lead)[2].strip() if lead in first else first
+    return first if first.endswith(".") else first + "."
 
 
 @contextmanager
@@ -109,3 +117,15 @@ def guarded(shown: str) -> Iterator[None]:
         yield
     except (sa_exc.SQLAlchemyError, sqlite3.Error, OSError) as error:
         raise book_error(error, shown) from error
+
+
+@contextmanager
+def legible(what: str) -> Iterator[None]:
+    """Turn the trouble of reading an entry that is not as this program writes it into `BookError`."""
+    try:
+        yield
+    except (KeyError, IndexError, TypeError, ValueError, AttributeError, OverflowError) as error:
+        raise BookError(
+            f"{what} cannot be read: {type(error).__name__}, {error}.",
+            "Update trimmer; if it still cannot be read, import your latest export into a new book.",
+        ) from error

@@ -36,7 +36,8 @@ def _conditions(which: SheetFilter) -> list[sa.ColumnElement[bool]]:
         (which.kind, lambda kind: card.kind == kind),
         (which.since, lambda since: card.taken_at >= since),
         (which.until, lambda until: card.taken_at < until),
-        (which.limit_thd, lambda limit: card.thd <= limit),
+        (which.limit_thd, lambda limit: card.thd > limit),
+        (which.within_thd, lambda limit: card.thd <= limit),
         (which.verdict, lambda verdict: card.verdict == verdict),
     ]
     conditions = [test(value) for value, test in tests if value is not None]

@@ -70,7 +70,7 @@ def _matrix(matrix: np.ndarray[Any, np.dtype[np.float64]]) -> list[Any]:
 
 
 def from_document(document: Mapping[str, Any]) -> Reading:
-    """Give back the reading that `reading_document` wrote.
+    """Give back the reading that `reading_document` wrote; what a newer program added is left out.
 
     Raises
     ------
@@ -85,9 +85,7 @@ def from_document(document: Mapping[str, Any]) -> Reading:
 
 def _read(given: dict[str, Any]) -> Reading:
     known = {each.name for each in fields(Reading)}
-    strangers = sorted(set(given) - known)
-    if strangers:
-        raise ValueError(f"this is not a reading: it has {strangers[0]!r}")
+    given = {name: value for name, value in given.items() if name in known}
     parts = _floats(given.pop("parts"))
     size = parts.size
     if size != 2 * (int(given["orders"]) - 1):
@@ -143,8 +141,13 @@ def advice_document(advice: Advice) -> dict[str, Any]:
 
 
 def advice_from(document: Mapping[str, Any]) -> Advice:
-    """Give back the advice that `advice_document` wrote."""
-    return Advice(**document)
+    """Give back the advice that `advice_document` wrote; what a newer program added is left out."""
+    return Advice(**_known(Advice, document))
+
+
+def _known(kind: type[Any], document: Mapping[str, Any]) -> dict[str, Any]:
+    names = {each.name for each in fields(kind)}
+    return {name: value for name, value in document.items() if name in names}
 
 
 def causes_document(causes: tuple[Cause, ...]) -> list[dict[str, Any]]:
@@ -154,4 +157,4 @@ def causes_document(causes: tuple[Cause, ...]) -> list[dict[str, Any]]:
 
 def causes_from(documents: list[Mapping[str, Any]]) -> tuple[Cause, ...]:
     """Give back the causes that `causes_document` wrote."""
-    return tuple(Cause(**document) for document in documents)
+    return tuple(Cause(**_known(Cause, document)) for document in documents)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterable, Sequence
 from typing import Any, TypeVar
 
 import sqlalchemy as sa
@@ -11,7 +11,7 @@ from trimmer.book import tables as t
 from trimmer.book.book import Book
 from trimmer.book.courier import Courier
 from trimmer.book.engines import server_engine
-from trimmer.book.entries import Learned, Notice, SheetEnd
+from trimmer.book.entries import Learned, Merged, Notice, SheetEnd
 from trimmer.book.faults import is_lost, turned_away
 from trimmer.book.opening import open_store
 from trimmer.book.outbox import Outbox
@@ -92,6 +92,12 @@ class SharedBook(Book):
         self._fetch_parents(rows)
         self._store.add(rows, waits=True)
         self._courier.wake()
+
+    def merge(self, batches: Iterable[Sequence[Row]]) -> Merged:
+        """Add rows of another bench's book, all of them or none; they are delivered like one's own."""
+        merged = self._store.merge(batches, waits=True)
+        self._courier.wake()
+        return merged
 
     def _ask(self, question: Callable[[sa.Connection], T]) -> T:
         if self._courier.settle(_SETTLE_S):

@@ -7,13 +7,17 @@ from contextlib import contextmanager
 from dataclasses import dataclass
 from typing import Any
 
+import numpy as np
 import sqlalchemy as sa
 from sqlalchemy.dialects import postgresql, sqlite
 
 from trimmer.book import tables as t
 from trimmer.book.cards import refresh
+from trimmer.book.entries import Merged
 from trimmer.book.faults import guarded
 from trimmer.book.migrate import applied, check, migrate
+from trimmer.book.waveforms import unpack_samples
+from trimmer.errors import BookError
 
 
 @dataclass(frozen=True, slots=True)
@@ -58,8 +62,11 @@ class Store:
 
     @contextmanager
     def reading(self) -> Iterator[sa.Connection]:
-        """Give a connection to read by; complaints become `BookError`."""
+        """Give a connection that sees one moment of the book; complaints become `BookError`."""
         with guarded(self.shown), self.engine.connect() as connection:
+            if self.engine.dialect.name == "postgresql":
+                # SQLite's transactions see one moment by themselves.
+                connection.execution_options(isolation_level="REPEATABLE READ")
             yield connection
 
     def add(self, rows: Sequence[Row], *, waits: bool = False) -> int:
@@ -85,6 +92,25 @@ class Store:
         with guarded(self.shown), self.writing() as connection:
             return insert(connection, rows, waits=waits)
 
+    def merge(self, batches: Iterable[Sequence[Row]], *, waits: bool = False) -> Merged:
+        """Add rows from elsewhere, all of them or none.
+
+        Raises
+        ------
+        BookError
+            A row says something else than the one the book has under its id, refers to one that is
+            not there, or the database failed. Nothing was added.
+        """
+        sheets = rows = new = 0
+        with guarded(self.shown), self.writing() as connection:
+            for batch in batches:
+                known = _known(connection, batch)
+                fresh = [row for row in batch if row.values["id"] not in known]
+                new += insert(connection, fresh, waits=waits)
+                sheets += sum(row.table is t.sheet for row in batch)
+                rows += len(batch)
+        return Merged(sheets, rows, new)
+
     @contextmanager
     def writing(self) -> Iterator[sa.Connection]:
         """Give a connection in a transaction that holds the write lock; complaints come as they are."""
@@ -98,23 +124,46 @@ class Store:
         self.engine.dispose()
 
 
+_CARD_PARTS = (t.sheet, t.turn, t.sheet_end, t.correction)
+_AT_ONCE = 500
+
+
 def insert(connection: sa.Connection, rows: Sequence[Row], *, waits: bool = False) -> int:
     """Add the rows that are not there yet, and renew the cards of the sheets they touch."""
-    added = sum(_insert_one(connection, row) for row in rows)
-    touched = sorted({row.owner for row in rows if row.table in (t.sheet, *_CARD_PARTS)})
-    for sheet_id in touched:
-        refresh(connection, t.sheet.c.id == sheet_id)
+    added = 0
+    for table in t.RECORDS:  # parents before children, whatever the order given
+        values = [row.values for row in rows if row.table is table]
+        if values:
+            added += max(0, connection.execute(unless_there(connection, table), values).rowcount)
+    touched = sorted({row.owner for row in rows if row.table in _CARD_PARTS})
+    for start in range(0, len(touched), _AT_ONCE):
+        refresh(connection, t.sheet.c.id.in_(touched[start : start + _AT_ONCE]))
     if waits and rows:
         connection.execute(t.waiting.insert(), [_ticket(row) for row in rows])
     return added
 
 
-_CARD_PARTS = (t.turn, t.sheet_end, t.correction)
+def _known(connection: sa.Connection, batch: Sequence[Row]) -> set[str]:
+    """Give the ids of the rows that are there already and say the same."""
+    known: set[str] = set()
+    for table in {row.table for row in batch}:
+        given = {row.values["id"]: row for row in batch if row.table is table}
+        for each, there in by_id(connection, table, given).items():
+            for name in given[each].values:
+                if not _same(name, given[each].values[name], there.values[name]):
+                    raise BookError(
+                        f"The {table.name} {each} says another {name} than the book does.",
+                        "Find out which bench changed it; nothing was taken in.",
+                    )
+            known.add(each)
+    return known
 
 
-def _insert_one(connection: sa.Connection, row: Row) -> int:
-    statement = unless_there(connection, row.table)
-    return max(0, connection.execute(statement, row.values).rowcount)
+def _same(name: str, given: Any, there: Any) -> bool:
+    if name == "waveform" and given is not None and there is not None:
+        # The same samples may be packed otherwise by another version of the packer.
+        return bool(np.array_equal(unpack_samples(given), unpack_samples(bytes(there))))
+    return bool(given == there)
 
 
 def unless_there(connection: sa.Connection, table: sa.Table) -> sa.Insert:
