@@ -49,9 +49,7 @@ def _levels(top: float) -> Vector:
     return np.asarray(top * np.sin(np.linspace(-1.5, 1.5, NODES)), dtype=np.float64)
 
 
-def _through_network(
-    x_of_y: NDArray[np.float64], y: Vector, peak: float
-) -> tuple[Vector, Vector]:
+def _through_network(x_of_y: NDArray[np.float64], y: Vector, peak: float) -> tuple[Vector, Vector]:
     """Cut a table (x(y), y) to the triangle's span, ends by local interpolation."""
     if x_of_y[0] > -peak or x_of_y[-1] < peak:
         raise ValueError("the table of the curve ends before the triangle does")
@@ -156,8 +154,10 @@ class Diodes:
         for side, sign in enumerate((1.0, -1.0)):
             bias = self.biases_v[side] * (1.0 + self.reach[side] * at[side])
             for level, resistance in zip(bias, self.resistances[side], strict=True):
-                x += sign * self.series * junction(
-                    sign * y, float(level) + 0.55, float(resistance), 1e-3
+                x += (
+                    sign
+                    * self.series
+                    * junction(sign * y, float(level) + 0.55, float(resistance), 1e-3)
                 )
         x -= self.offset_v
         return *_through_network(x, y, self.peak_v), self.peak_v

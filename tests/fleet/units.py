@@ -73,7 +73,7 @@ class Unit:
             thd = float(np.sqrt(2.0 * answer.cost))
             if found is None or thd < found[1] - 1e-9:
                 found = ((float(answer.x[0]), float(answer.x[1])), thd)
-            if start == (0.5, 0.5) and 0.02 < min(answer.x) and max(answer.x) < 0.98:
+            if start == (0.5, 0.5) and min(answer.x) > 0.02 and max(answer.x) < 0.98:
                 break
         assert found is not None
         return found
@@ -110,7 +110,9 @@ def uneven(rng: Generator) -> Circuit:
     """Draw the same network behind a triangle that rises in about 48 or 52 % of the period."""
     circuit = ladders(rng)
     assert isinstance(circuit, Ladders)
-    return replace(circuit, rise_share=0.5 + float(rng.choice([-0.02, 0.02])) * rng.uniform(0.8, 1.1))
+    return replace(
+        circuit, rise_share=0.5 + float(rng.choice([-0.02, 0.02])) * rng.uniform(0.8, 1.1)
+    )
 
 
 def diodes(rng: Generator) -> Circuit:
@@ -165,7 +167,14 @@ def squares(rng: Generator) -> Circuit:
     )
 
 
-LOADING = {"ladders": 0.4, "diodes": 0.4, "pair": 0.9, "coupled": 0.9, "uneven": 0.4, "squares": 0.9}
+LOADING = {
+    "ladders": 0.4,
+    "diodes": 0.4,
+    "pair": 0.9,
+    "coupled": 0.9,
+    "uneven": 0.4,
+    "squares": 0.9,
+}
 """Resistance of each kind's trims over what their wipers feed."""
 
 

@@ -1,0 +1,83 @@
+"""Readings of true parts as an 8-bit digitiser gives them, with an honest covariance.
+
+The noise of a capture of N samples with s/A noise over amplitude gives each part a standard deviation
+of ``sqrt(2/N) s/A`` (the Cramer-Rao bound for many cycles). The digitiser's integral non-linearity is
+a fixed error of the same unit, range and offset; a reading's covariance owns up to its size.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.random import Generator
+
+from tests.fleet.waves import Vector
+from trimmer.measurement.reading import Crests, Flag, Interval, Reading
+
+AMPLITUDE_CODES = 100.0
+
+
+@dataclass
+class Scope:
+    """An 8-bit digitiser that reads a unit."""
+
+    rng: Generator
+    samples: int = 10_000
+    noise_codes: float = 0.6
+    nonlinearity_codes: float = 0.05
+    orders: int = 15
+
+    def __post_init__(self) -> None:
+        k = np.repeat(np.arange(2, 16), 2)
+        shape = self.rng.standard_normal(28) / k
+        shape[1::2] *= 0.3
+        peak = np.sum(np.abs(shape)) / 2.0
+        self.fixed = self.nonlinearity_codes / AMPLITUDE_CODES * shape / peak
+
+    def sigma(self, longer: bool = False) -> float:
+        """Give the standard deviation of a part by noise and quantisation."""
+        codes = np.hypot(self.noise_codes, 1.0 / np.sqrt(12.0))
+        samples = self.samples * (16 if longer else 1)
+        return float(np.sqrt(2.0 / samples) * codes / AMPLITUDE_CODES)
+
+    def read(self, true: Vector, *, longer: bool = False, flags: tuple[Flag, ...] = ()) -> Reading:
+        """Give a reading of a wave with these true parts."""
+        size = 2 * (self.orders - 1)
+        sigma = self.sigma(longer)
+        parts = (true + self.fixed)[:size] + sigma * self.rng.standard_normal(size)
+        k = np.repeat(np.arange(2, self.orders + 1), 2)
+        own = self.nonlinearity_codes / AMPLITUDE_CODES / 3.0 / k
+        covariance = np.diag(np.full(size, sigma**2) + own**2)
+        return reading_of(parts, covariance, sigma, flags)
+
+
+def reading_of(
+    parts: Vector, covariance: Vector, sigma: float, flags: tuple[Flag, ...] = ()
+) -> Reading:
+    """Give a reading with these parts and covariance; figures not needed here are nominal."""
+    square = float(parts @ parts)
+    thd = float(np.sqrt(max(0.0, square - parts.size * sigma**2)))
+    spread = float(np.sqrt(parts @ covariance @ parts)) / max(thd, 1e-9)
+    return Reading(
+        fundamental_hz=1000.0,
+        fundamental_sigma_hz=0.01,
+        amplitude=2.5,
+        amplitude_sigma=1e-4,
+        offset=0.0,
+        offset_sigma=1e-4,
+        orders=parts.size // 2 + 1,
+        parts=parts,
+        covariance=covariance,
+        noise=0.01,
+        thd=Interval(thd, spread, max(0.0, thd - 1.96 * spread), thd + 1.96 * spread),
+        thd_plus_noise=thd + 0.004,
+        crests=Crests(0.0, 0.0, 0.0, 1e-4, 1e-4, 1e-4),
+        rise_share=0.5,
+        rise_share_sigma=1e-4,
+        flags=flags,
+        samples=10_000,
+        interval_s=1e-6,
+        cycles=10.0,
+        bits=8,
+    )

@@ -1,0 +1,174 @@
+"""Which trim next, which way, how far: the plan with the least expected distortion at its end."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Final
+
+import numpy as np
+
+from trimmer.guidance import words
+from trimmer.guidance.aim import Aim
+from trimmer.guidance.estimate import Estimate
+from trimmer.guidance.field import Array
+from trimmer.guidance.general import column_scale
+from trimmer.guidance.hand import Hand
+from trimmer.guidance.record import Record
+
+FIRST_SHARE: Final = 0.08
+"""First turn of a trim of which nothing is known, share of the travel."""
+LONGEST_BLIND_SHARE: Final = 0.10
+"""Longest turn while its sense is a guess."""
+LONGEST_SHARE: Final = 0.35
+"""Longest turn ever asked for at once."""
+SHORTEST_PROBE: Final = 0.03
+"""Shortest turn that teaches a column."""
+WORTH_SHARE: Final = 0.015
+"""A turn must promise to gain this share of the floor .."""
+WORTH_THD: Final = 6e-5
+""".. or this much THD."""
+
+
+@dataclass(frozen=True, slots=True)
+class Choice:
+    """A turn to ask for."""
+
+    trim: int
+    """0 upper, 1 lower."""
+    share: float
+    """Signed share of the travel to ask for, play included."""
+    way: float
+    """Signed share of the travel it is to make."""
+    expected_thd: float | None
+    """THD expected after it."""
+    rises: bool
+    """Whether THD is expected to rise first."""
+    reason: str
+    """One sentence."""
+
+
+def crest_weights(orders: int) -> tuple[Array, Array]:
+    """Give the weights of crest parts in the pointedness of the upper and of the lower crest."""
+    k = np.arange(2, orders + 1)
+    upper = 1.0 - np.cos(k * np.pi / 4.0)
+    return upper, upper * np.where(k % 2 == 0, -1.0, 1.0)
+
+
+def worse_crest(parts: Array) -> int:
+    """Tell which crest is further from a sine's: 0 upper, 1 lower."""
+    upper, lower = crest_weights(parts.size // 2 + 1)
+    crest = parts[0::2]
+    return 0 if abs(upper @ crest) >= abs(lower @ crest) else 1
+
+
+def first_size(parts: Array) -> float:
+    """Give the size of a first turn: no longer than the likely way to the best setting."""
+    scale = column_scale(parts.size // 2 + 1)
+    return _clip_probe(_likely_way(parts, scale), FIRST_SHARE)
+
+
+def _clip_probe(size: float, longest: float) -> float:
+    return float(np.clip(size, SHORTEST_PROBE, longest))
+
+
+def _likely_way(parts: Array, column: Array) -> float:
+    """Way of one trim to the joint best, were the other's column this one's mirror."""
+    crest, reach = parts[0::2], column[0::2]
+    even, odd = slice(0, None, 2), slice(1, None, 2)
+    by_even = (crest[even] @ reach[even]) / (reach[even] @ reach[even])
+    by_odd = (crest[odd] @ reach[odd]) / (reach[odd] @ reach[odd])
+    return float(0.5 * max(abs(by_even + by_odd), abs(by_even - by_odd)))
+
+
+def mirrored_way(parts: Array, column: Array) -> float:
+    """Give the signed way of the other trim, its column being the mirror of a known one.
+
+    With columns ``j`` and ``m j`` (`m` turns the sign of even orders) the joint problem falls into
+    its even and its odd half, one unknown each.
+    """
+    crest, reach = parts[0::2], column[0::2]
+    even, odd = slice(0, None, 2), slice(1, None, 2)
+    both = -(crest[odd] @ reach[odd]) / (reach[odd] @ reach[odd] + 1e-12)
+    apart = -(crest[even] @ reach[even]) / (reach[even] @ reach[even] + 1e-12)
+    return 0.5 * float(both - apart)
+
+
+def with_play(record: Record, hand: Hand, trim: int, share: float) -> float:
+    """Add the play of the screw where the turn goes back on the trim's last one."""
+    last = record.last_sense(trim)
+    sense = 1 if share > 0 else -1
+    if last == 0:
+        return share + 0.5 * sense * hand.backlash
+    return share + sense * hand.backlash if last != sense else share
+
+
+def choose(
+    est: Estimate, record: Record, hand: Hand, trims: tuple[int, ...] = (0, 1)
+) -> Choice | None:
+    """Choose the next turn once both columns are known; None where no turn is worth making."""
+    aim = Aim(est.belief)
+    now = aim.expected(est.here)
+    plans = [_plan(aim, est, record, hand, trim, now) for trim in trims]
+    usable = [p for p in plans if p is not None]
+    if not usable:
+        return None
+    return min(usable, key=lambda p: p[0])[1]
+
+
+def _plan(
+    aim: Aim, est: Estimate, record: Record, hand: Hand, trim: int, now: float
+) -> tuple[float, Choice] | None:
+    """Expected squared distortion of the best plan that begins with this trim."""
+    floor = est.floor_thd**2
+    worth = max(WORTH_SHARE * est.floor_thd, WORTH_THD)
+    thd_now = float(np.sqrt(now))
+    columns = est.belief.columns(est.here)
+    length = np.sum(columns**2, axis=1)
+    line = aim.along(est.here, trim, est.box)
+    best = None
+    for target, one_turn in ((line, True), (est.best, False)):
+        way = float(np.clip(target[trim] - est.here[trim], -LONGEST_SHARE, LONGEST_SHARE))
+        if abs(way) < 1e-6:
+            continue
+        there = est.here.copy()
+        there[trim] += way
+        noise = _noise(record, hand, trim, way)
+        after = aim.expected(there) + length[trim] * noise**2
+        final = after
+        if not one_turn:
+            rest = aim.along(there, 1 - trim, est.box)
+            further = rest[1 - trim] - there[1 - trim]
+            wedge = 1.0 - (columns[0] @ columns[1]) ** 2 / (length[0] * length[1])
+            final = (
+                aim.expected(rest)
+                + length[trim] * wedge * noise**2
+                + length[1 - trim] * _noise(record, hand, 1 - trim, further) ** 2
+            )
+        cost = float(np.sqrt(final)) + (0.0 if one_turn else worth)
+        if thd_now - cost < worth:
+            continue
+        if best is None or cost < best[0]:
+            rises = after > now
+            reason = words.RISES if rises else words.NEARER
+            if after < (1.1 * est.floor_thd) ** 2 or final <= floor:
+                reason = words.LAST_BIT
+            best = (
+                cost,
+                Choice(
+                    trim,
+                    with_play(record, hand, trim, way),
+                    way,
+                    float(np.sqrt(after)),
+                    bool(rises),
+                    reason,
+                ),
+            )
+    return best
+
+
+def _noise(record: Record, hand: Hand, trim: int, way: float) -> float:
+    sigma = hand.sigma(way)
+    last = record.last_sense(trim)
+    if last and last != (1 if way > 0 else -1):
+        sigma = float(np.hypot(sigma, hand.backlash_sigma))
+    return sigma

@@ -1,0 +1,173 @@
+"""What is believed at this moment: the walk so far, the field, the best setting and its floor."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from trimmer.guidance.aim import Aim, Box
+from trimmer.guidance.field import Array, FieldBelief, features
+from trimmer.guidance.general import TYPICAL, general_belief
+from trimmer.guidance.hand import Hand
+from trimmer.guidance.memory import KindPrior
+from trimmer.guidance.path import Found, Walk, find_walk
+from trimmer.guidance.record import Record
+
+START_SIGMA = 0.3
+"""Where a unit's trims stand from their best before anything is turned, share of the travel."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Estimate:
+    """The state of knowledge after a reading."""
+
+    found: Found
+    """Walk and field."""
+    here: Array
+    """Shape (2,), present position."""
+    origin: Array
+    """Shape (2,), position of the first reading."""
+    box: Box
+    """How far the trims can go, as far as is known."""
+    best: Array
+    """Shape (2,), the best setting inside the box."""
+    floor_thd: float
+    """THD there, ratio."""
+    floor_sigma: float
+    """Its standard uncertainty."""
+    known: tuple[bool, bool]
+    """Whether each trim's column is known."""
+
+    @property
+    def belief(self) -> FieldBelief:
+        """The field."""
+        return self.found.belief
+
+    @property
+    def net(self) -> Array:
+        """Shape (2,), net movement since the start, shares of the travel."""
+        return self.here - self.origin
+
+
+def estimate(record: Record, hand: Hand, kind: KindPrior | None) -> Estimate:
+    """Put all readings together.
+
+    Parameters
+    ----------
+    record
+        At least one reading.
+    hand
+        Errors of the hand.
+    kind
+        What is known of units of this kind.
+    """
+    walk = record.walk(hand)
+    found = _with_kind(walk, kind) if kind is not None else _general(walk, record)
+    here = found.places[-1]
+    box = _box(record, found.places)
+    aim = Aim(found.belief)
+    best = aim.joint(here, box)
+    floor, sigma = _floor(found, best)
+    return Estimate(
+        found=found,
+        here=here,
+        origin=found.places[0],
+        box=box,
+        best=best,
+        floor_thd=floor,
+        floor_sigma=sigma,
+        known=known_columns(found.belief, here),
+    )
+
+
+def _general(walk: Walk, record: Record) -> Found:
+    """Search with nothing known; the gain of the columns sets how much they may bend."""
+    orders = record.orders
+    gain = 1.0
+    found = None
+    for _ in range(2):
+        prior = general_belief(orders, gain)
+        at = walk.steps[-1] @ walk.expected if found is None else found.places[-1]
+        prior.anchor[:] = at
+        found = find_walk(walk, prior, None if found is None else found.steps)
+        length = float(np.max(np.linalg.norm(found.belief.columns(at), axis=1))) / TYPICAL
+        if not record.moves or 0.6 < length / gain < 1.7:
+            break
+        gain = float(np.clip(length, 0.05, 20.0))
+    assert found is not None
+    return found
+
+
+def _with_kind(walk: Walk, kind: KindPrior) -> Found:
+    """Search with a kind's response, anchored at the best setting; the start is unknown too."""
+    prior = kind.belief(walk.parts.shape[1] // 2 + 1)
+    n = walk.expected.size
+    steps = np.zeros((walk.steps.shape[0], 2, n + 2))
+    steps[:, 0, 0] = steps[:, 1, 1] = 1.0
+    steps[:, :, 2:] = walk.steps
+    wide = Walk(
+        parts=walk.parts,
+        variance=walk.variance,
+        steps=steps,
+        expected=np.concatenate((np.zeros(2), walk.expected)),
+        sigma=np.concatenate((np.full(2, START_SIGMA), walk.sigma)),
+    )
+    start = wide.expected.copy()
+    columns = prior.mean[:, 1:3]
+    weight = 1.0 / (prior.covariance[:, 0, 0] + walk.variance[0])
+    normal = (columns.T * weight) @ columns + np.eye(2) / START_SIGMA**2
+    start[:2] = np.linalg.solve(normal, (columns.T * weight) @ (walk.parts[0] - prior.mean[:, 0]))
+    return find_walk(wide, prior, start, rounds=20)
+
+
+def known_columns(belief: FieldBelief, here: Array) -> tuple[bool, bool]:
+    """Tell whether the columns stand out of their uncertainty at a position."""
+    moved = belief.moved_to(here)
+    known = [
+        float(np.sum(moved.mean[:, t] ** 2)) > 4.0 * float(np.sum(moved.covariance[:, t, t]))
+        for t in (1, 2)
+    ]
+    return known[0], known[1]
+
+
+def _box(record: Record, places: Array) -> Box:
+    """End stops met, else as far as the whole travel allows from where the trims have been."""
+    low = places.max(axis=0) - 1.0
+    high = places.min(axis=0) + 1.0
+    for i, move in enumerate(record.moves):
+        if not move.stopped:
+            continue
+        at = places[i + 1, move.trim]
+        if move.sense > 0:
+            high[move.trim] = min(high[move.trim], at)
+            low[move.trim] = max(low[move.trim], at - 1.0)
+        else:
+            low[move.trim] = max(low[move.trim], at)
+            high[move.trim] = min(high[move.trim], at + 1.0)
+    return Box(np.minimum(low, places[-1]), np.maximum(high, places[-1]))
+
+
+def _floor(found: Found, best: Array) -> tuple[float, float]:
+    """Length of the parts at the best setting and its standard uncertainty.
+
+    Only what lies outside the columns counts for the uncertainty: along them the setting is at its
+    least, and an error there changes the length in second order only.
+    """
+    belief = found.belief
+    parts = belief.at(best)
+    length = float(np.linalg.norm(parts))
+    if length == 0.0:
+        return 0.0, float(np.sqrt(np.mean(belief.variance(best))))
+    phi = features(best - belief.anchor)
+    own = np.einsum("f,kfg,g->k", phi, found.given_steps, phi)
+    direction = parts / length
+    tangent, _ = np.linalg.qr(belief.columns(best).T)
+    direction = direction - tangent @ (tangent.T @ direction)
+    size = float(np.linalg.norm(direction))
+    if size < 1e-9:
+        return length, float(np.sqrt(np.max(own)))
+    direction /= size
+    shared = direction @ np.einsum("f,kfj->kj", phi, found.through_steps)
+    variance = float(direction**2 @ own + shared @ found.steps_covariance @ shared)
+    return length, float(np.sqrt(variance))

@@ -1,0 +1,67 @@
+"""What is believed of any sine shaper before the first turn.
+
+Common practice and simulated networks agree on a few facts: a trim moves crest parts and hardly any
+skew part; its effect falls with the order; one hundredth of the travel moves the second order by some
+5e-4 and the third by some 3e-4; the response bends so that a straight line is wrong by a tenth of the
+way after a tenth to a quarter of the travel. Which way a trim works is not known, so the columns have
+mean zero. Nothing here ties the two columns together: the mirror (an upside-down wave has its crests
+swapped) only says how far the second trim's first turn should go, and a coupled pair may ignore it.
+"""
+
+from __future__ import annotations
+
+from typing import Final
+
+import numpy as np
+
+from trimmer.guidance.field import FEATURES, Array, FieldBelief
+
+COLUMN_C2: Final = 0.054
+"""Size of a trim's effect on the second order, per travel."""
+DECAY: Final = 1.5
+"""Power by which the effect falls with the order."""
+SKEW_SHARE: Final = 0.1
+"""Size of the effect on skew parts over that on crest parts (small unless the symmetry is far off)."""
+VALUE: Final = 0.2
+"""Size of a part before anything is known (a bare triangle has 0.11)."""
+BEND: Final = 2.0
+"""Relative change of a column per travel."""
+CROSS: Final = 0.6
+"""The same for a column as the other trim moves, over `BEND`."""
+TYPICAL: Final = 0.067
+"""Length of a column with the sizes above, parts per travel."""
+
+
+def column_scale(orders: int) -> Array:
+    """Give the size of a column's parts per travel, crest and skew by turns; shape (2(orders-1),)."""
+    k = np.arange(2, orders + 1)
+    crest = COLUMN_C2 * (2.0 / k) ** DECAY
+    return np.column_stack((crest, SKEW_SHARE * crest)).ravel()
+
+
+def general_belief(orders: int, gain: float = 1.0) -> FieldBelief:
+    """Give the belief about the field of a unit of which nothing is known.
+
+    Parameters
+    ----------
+    orders
+        Highest order K.
+    gain
+        Length of the columns over the typical one: larger columns bend more per travel.
+    """
+    scale = column_scale(orders)
+    bend = BEND * gain
+    relative = np.array(
+        [
+            0.0,
+            *(1.5 * gain,) * 2,
+            *(gain * bend * c for c in (1.0, CROSS, 1.0)),
+            *(1.5 * gain * bend**2 * c for c in (1.0, CROSS, CROSS, 1.0)),
+        ]
+    )
+    sigma = np.outer(scale, relative)
+    sigma[:, 0] = VALUE
+    covariance = np.zeros((scale.size, FEATURES, FEATURES))
+    index = np.arange(FEATURES)
+    covariance[:, index, index] = sigma**2
+    return FieldBelief(np.zeros(2), np.zeros((scale.size, FEATURES)), covariance)

@@ -1,0 +1,173 @@
+"""Where the trims have been: the most probable turns and field, from all readings together.
+
+Unknown are the turns really made (asked for, but made by a hand) and the field. Both are found at once
+by Gauss-Newton on the logarithm of their joint probability,
+
+    sum_i |y_i - f(x_i)|^2_{R_i} + sum_k |w_k - w0_k|^2_{C_k} + sum_j (s_j - mu_j)^2 / sigma_j^2,
+
+where `s` holds the start and the turns and `x_i` is their running sum. Parts are taken as independent
+of each other given the turns, so the weights fall into one small system for each part and only the few
+turns couple them (a Schur complement). No reading is forgotten: one taken far away counts for less by
+itself, since the belief lets the field bend in between.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from trimmer.guidance.field import FEATURES, Array, FieldBelief, features, slopes
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Walk:
+    """Readings along a walk of the two trims."""
+
+    parts: Array
+    """Shape (n, m), what was read at each place."""
+    variance: Array
+    """Shape (n, m), variance of `parts`."""
+    steps: Array
+    """Shape (n, 2, s), how each place follows from the unknown steps: ``x_i = steps_i @ s``."""
+    expected: Array
+    """Shape (s,), steps as expected, shares of the travel."""
+    sigma: Array
+    """Shape (s,), their standard deviations."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Found:
+    """The most probable walk and the belief about the field after it."""
+
+    belief: FieldBelief
+    """The field; its covariance includes what is not known of the steps."""
+    given_steps: Array
+    """Shape (m, 10, 10), covariance of the weights were the steps known."""
+    through_steps: Array
+    """Shape (m, 10, s), change of the weights with each step."""
+    steps: Array
+    """Shape (s,), steps as really made."""
+    steps_covariance: Array
+    """Shape (s, s)."""
+    places: Array
+    """Shape (n, 2), positions of the readings."""
+    cost: float
+    """Minus twice the logarithm of the joint probability, up to a constant."""
+    converged: bool
+    """Whether the search came to rest."""
+
+
+def find_walk(
+    walk: Walk, prior: FieldBelief, start: Array | None = None, rounds: int = 12
+) -> Found:
+    """Find the most probable steps and field.
+
+    Parameters
+    ----------
+    walk
+        The readings and what was expected of the steps.
+    prior
+        Belief about the field before the readings.
+    start
+        Shape (s,), steps to start the search from; the expected ones where None.
+    rounds
+        Most Gauss-Newton rounds.
+    """
+    precision = np.asarray(np.linalg.inv(prior.covariance), dtype=np.float64)
+    steps = walk.expected.copy() if start is None else start.copy()
+    problem = _Problem(walk, prior, precision)
+    weights, cost = problem.weights(steps)
+    converged = walk.expected.size == 0
+    for _ in range(0 if converged else rounds):
+        change = problem.newton(steps, weights)
+        size = 1.0
+        for _ in range(6):
+            tried = steps + size * change
+            new_weights, new_cost = problem.weights(tried)
+            if new_cost <= cost:
+                break
+            size *= 0.35
+        else:
+            break
+        gained = cost - new_cost
+        steps, weights, cost = tried, new_weights, new_cost
+        if gained < 1e-3:
+            converged = True
+            break
+    return problem.found(steps, weights, cost, converged)
+
+
+class _Problem:
+    """The joint problem with its fixed arrays at hand."""
+
+    def __init__(self, walk: Walk, prior: FieldBelief, precision: Array) -> None:
+        self.walk = walk
+        self.prior = prior
+        self.precision = precision
+        self.weight = 1.0 / walk.variance
+        self.pull = np.einsum("kfg,kg->kf", precision, prior.mean)
+
+    def _features(self, steps: Array) -> Array:
+        return features(self.walk.steps @ steps - self.prior.anchor)
+
+    def _normal(self, phi: Array) -> Array:
+        outer = (phi[:, :, None] * phi[:, None, :]).reshape(phi.shape[0], -1)
+        flat = self.weight.T @ outer
+        return self.precision + flat.reshape(-1, FEATURES, FEATURES)
+
+    def weights(self, steps: Array) -> tuple[Array, float]:
+        """Give the best weights for given steps, and the cost."""
+        phi = self._features(steps)
+        right = (self.weight * self.walk.parts).T @ phi + self.pull
+        best = np.linalg.solve(self._normal(phi), right[..., None])[..., 0]
+        miss = self.walk.parts - phi @ best.T
+        off = best - self.prior.mean
+        slip = (steps - self.walk.expected) / self.walk.sigma
+        cost = float(
+            np.sum(self.weight * miss * miss)
+            + np.einsum("kf,kfg,kg->", off, self.precision, off)
+            + slip @ slip
+        )
+        return best, cost
+
+    def _coupled(self, steps: Array, weights: Array) -> tuple[Array, Array, Array, Array]:
+        """Give inverse normal matrices, their coupling to the steps, the Schur complement, D."""
+        at = self.walk.steps @ steps - self.prior.anchor
+        phi = features(at)
+        by_place = np.einsum("iaf,kf->ika", slopes(at), weights)
+        by_step = by_place @ self.walk.steps
+        weighted = self.weight[..., None] * by_step
+        inverse = np.asarray(np.linalg.inv(self._normal(phi)), dtype=np.float64)
+        coupling = np.einsum("if,ikj->kfj", phi, weighted)
+        through = inverse @ coupling
+        n = steps.size
+        rows = phi.shape[0] * weights.shape[0], weights.size
+        direct = by_step.reshape(rows[0], n).T @ weighted.reshape(rows[0], n)
+        shared = coupling.reshape(rows[1], n).T @ through.reshape(rows[1], n)
+        schur = direct + np.diag(1.0 / self.walk.sigma**2) - shared
+        return inverse, through, schur, weighted
+
+    def newton(self, steps: Array, weights: Array) -> Array:
+        """Give the Gauss-Newton change of the steps (weights already at their best for them)."""
+        _, _, schur, weighted = self._coupled(steps, weights)
+        miss = self.walk.parts - self._features(steps) @ weights.T
+        slope = np.einsum("ik,ikj->j", miss, weighted)
+        slope -= (steps - self.walk.expected) / self.walk.sigma**2
+        return np.asarray(np.linalg.solve(schur, slope))
+
+    def found(self, steps: Array, weights: Array, cost: float, converged: bool) -> Found:
+        """Put the result together."""
+        inverse, through, schur, _ = self._coupled(steps, weights)
+        spread = np.asarray(np.linalg.inv(schur), dtype=np.float64)
+        covariance = inverse + through @ spread @ through.transpose(0, 2, 1)
+        return Found(
+            belief=FieldBelief(self.prior.anchor, weights, covariance),
+            given_steps=inverse,
+            through_steps=-through,
+            steps=steps,
+            steps_covariance=spread,
+            places=self.walk.steps @ steps,
+            cost=cost,
+            converged=converged,
+        )
