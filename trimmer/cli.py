@@ -93,8 +93,12 @@ def _sheet(parser: argparse.ArgumentParser) -> None:
 
 def _reading(parser: argparse.ArgumentParser) -> None:
     group = parser.add_argument_group("reading")
-    group.add_argument("--channel", metavar="N", type=count, help="channel, or Nth column of values")
-    group.add_argument("--dialect", metavar="NAME", help="waveform dialect (default: found by asking)")
+    group.add_argument(
+        "--channel", metavar="N", type=count, help="channel, or Nth column of values"
+    )
+    group.add_argument(
+        "--dialect", metavar="NAME", help="waveform dialect (default: found by asking)"
+    )
     group.add_argument(
         "--interval", metavar="SECONDS", type=positive, help="for files without a time column"
     )
@@ -110,14 +114,20 @@ def _reading(parser: argparse.ArgumentParser) -> None:
 
 def _tuning(parser: argparse.ArgumentParser) -> None:
     parser.add_argument(
-        "--travel", metavar="TURNS", type=positive, default=0.75, help="the trims' whole travel (0.75)"
+        "--travel",
+        metavar="TURNS",
+        type=positive,
+        default=0.75,
+        help="the trims' whole travel (0.75)",
     )
     parser.add_argument("--follow", action="store_true", help="watch the hand, without being told")
 
 
 def _bench(parser: argparse.ArgumentParser) -> None:
     group = parser.add_argument_group("simulated unit")
-    group.add_argument("--seed", metavar="N", type=int, help="the same unit, hand and noise each time")
+    group.add_argument(
+        "--seed", metavar="N", type=int, help="the same unit, hand and noise each time"
+    )
 
 
 def build_parser() -> argparse.ArgumentParser:
@@ -136,7 +146,9 @@ def build_parser() -> argparse.ArgumentParser:
         return made
 
     demo = command("demo", "run the whole job on the built-in simulated unit")
-    demo.add_argument("--hands", choices=["keys", "auto"], default="keys", help="who turns the trims")
+    demo.add_argument(
+        "--hands", choices=["keys", "auto"], default="keys", help="who turns the trims"
+    )
     _bench(demo)
     for add in (_output, _sheet, _reading, _tuning):
         add(demo)
@@ -152,11 +164,17 @@ def build_parser() -> argparse.ArgumentParser:
         add(measure)
 
     bench = command("bench", "run the simulated unit alone, as an SCPI instrument on loopback")
-    bench.add_argument("--port", metavar="P", type=port, required=True, help="TCP port; 0: any free one")
+    bench.add_argument(
+        "--port", metavar="P", type=port, required=True, help="TCP port; 0: any free one"
+    )
     bench.add_argument("--dialect", metavar="NAME", default="ten-field", help="dialect it speaks")
     bench.add_argument("--fault", metavar="NAME", help="a fault to show")
     bench.add_argument(
-        "--travel", metavar="TURNS", type=positive, default=0.75, help="the trims' whole travel (0.75)"
+        "--travel",
+        metavar="TURNS",
+        type=positive,
+        default=0.75,
+        help="the trims' whole travel (0.75)",
     )
     _bench(bench)
 
@@ -174,7 +192,9 @@ def _log(parser: argparse.ArgumentParser) -> None:
     listing.add_argument("--until", metavar="DATE", help="up to this date, inclusive")
     listing.add_argument("--limit-thd", metavar="RATIO", type=positive, help="only THD above this")
     show = actions.add_parser("show", help="one whole sheet", allow_abbrev=False)
-    show.add_argument("sheet", metavar="SHEET", help="a sheet's id, the beginning of one, or a unit")
+    show.add_argument(
+        "sheet", metavar="SHEET", help="a sheet's id, the beginning of one, or a unit"
+    )
     export = actions.add_parser("export", help="write sheets to a file", allow_abbrev=False)
     export.add_argument("-o", "--output", metavar="FILE", required=True, help=".json or .csv")
     export.add_argument("--unit", metavar="NAME", help="only this unit's")

@@ -28,7 +28,7 @@ def prior_of(book: Book, kind: str) -> KindPrior | None:
     """Give what the book has learned of a kind of unit; None where nothing was."""
     if not kind:
         return None
-    learned = [Learned.from_document(row.document) for row in book.learned_of(kind)]
+    learned = [Learned.from_document(dict(row.document)) for row in book.learned_of(kind)]
     return KindPrior.from_units(learned) if learned else None
 
 

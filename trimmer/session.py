@@ -13,6 +13,9 @@ from collections.abc import Callable, Generator, Iterator
 from dataclasses import dataclass, field
 from typing import TypeVar
 
+import numpy as np
+from numpy.typing import NDArray
+
 from drivers import SourceError, SourceTimeout, WaveformSource
 from trimmer.errors import BookError
 from trimmer.guidance import Guide
@@ -27,7 +30,6 @@ from trimmer.reports import (
     Finished,
     Followed,
     Measured,
-    Opened,
     Report,
     Word,
 )
@@ -129,11 +131,11 @@ class Session:
         taken = yield from self._measured(self._first())
         step: Step = self.guide.observe(taken.reading)
         while True:
-            step = yield from self._confirmed(step)
-            if isinstance(step, Done):
-                return step
-            self.keeper.advised(step, self.guide)
-            yield Advised(step, follows=self._follows)
+            settled = yield from self._confirmed(step)
+            if isinstance(settled, Done):
+                return settled
+            self.keeper.advised(settled, self.guide)
+            yield Advised(settled, follows=self._follows, reach=self._reach())
             step = yield from self._answered()
 
     @property
@@ -146,7 +148,7 @@ class Session:
             return (yield from self._next_file())
         return (yield from self._still())
 
-    def _confirmed(self, step: Step) -> Reports[Step]:
+    def _confirmed(self, step: Step) -> Reports[Advice | Done]:
         """Take the longer readings that the guide asks for before it calls the setting final."""
         while isinstance(step, Confirm):
             if self.source.info.paced_by_person and self._last is not None:
@@ -198,7 +200,9 @@ class Session:
         if isinstance(taken_or_word, Taken):
             return "moved", taken_or_word
         if taken_or_word == "moved":
-            yield Awaiting("file", "The turn is taken as made with the next file.", "Save a capture.")
+            yield Awaiting(
+                "file", "The turn is taken as made with the next file.", "Save a capture."
+            )
             return (yield from self._word_or_file())
         return taken_or_word, None
 
@@ -347,6 +351,11 @@ class Session:
         if self._stop():
             raise _Left
 
+    def _reach(self) -> NDArray[np.float64] | None:
+        """Give what the trims reach, as rows; None until the guide knows both columns."""
+        basis = self.guide.basis
+        return None if basis is None else np.ascontiguousarray(basis.T)
+
     def _quit(self) -> Done:
         return self.guide.quit(self._last.reading if self._last else None)
 
@@ -354,6 +363,3 @@ class Session:
         sheet = self.keeper.finish(done, self._last, self.guide)
         thd = self._last.reading.thd if self._last else None
         return Finished(done, thd.value if thd else None, thd.sigma if thd else None, sheet)
-
-
-__all__ = ["Manner", "Opened", "Session"]

@@ -24,6 +24,6 @@ def run(options: argparse.Namespace) -> int:
         assert source.bench is not None
         session = session_of(options, source, book, follow=options.follow or not plain)
         if not auto:
-            return hold(options, session, plain=plain, hand=source.bench)
+            return hold(options, session, "bench", plain=plain, hand=source.bench)
         with HandsOn(session, source.bench, seed=options.seed) as turned:
-            return hold(options, turned, plain=plain, hands_off=True)
+            return hold(options, turned, "bench", plain=plain, hand=source.bench, hands_off=True)

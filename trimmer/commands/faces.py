@@ -64,7 +64,9 @@ class JsonFace:
                     line(done_event(report.done, report.thd, report.thd_sigma, report.sheet))
                 )
             case Opened():
-                _message(self._messages, f"{report.identity}: sheet {report.sheet} in {report.book}")
+                _message(
+                    self._messages, f"{report.identity}: sheet {report.sheet} in {report.book}"
+                )
             case Awaiting() | Failed():
                 _trouble(self._messages, report)
             case _:
@@ -94,9 +96,7 @@ class PlainFace:
                 self._print(f"Trimming {unit} from {report.source}: {report.identity}.")
                 self._print(f"Sheet {report.sheet} in {report.book}.")
             case Measured():
-                self._print(
-                    *reading_lines(f"Turn {report.turn}", report.reading, report.notes)
-                )
+                self._print(*reading_lines(f"Turn {report.turn}", report.reading, report.notes))
             case Advised():
                 self._word = ""
                 self._print(*advice_lines(report.advice))

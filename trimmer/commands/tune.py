@@ -31,7 +31,9 @@ def run(options: argparse.Namespace) -> int:
     plain = without_screen(options)
     with open_book(options.book) as book, opened(options.source, options) as source:
         session = session_of(options, source, book, follow=options.follow or not plain)
-        return hold(options, session, plain=plain, paced=paced(source), hand=source.bench)
+        return hold(
+            options, session, options.source, plain=plain, paced=paced(source), hand=source.bench
+        )
 
 
 def without_screen(options: argparse.Namespace) -> bool:
@@ -49,16 +51,12 @@ def paced(source: Opened) -> bool:
     return source.source.info.paced_by_person
 
 
-def session_of(
-    options: argparse.Namespace, source: Opened, book: Book, *, follow: bool
-) -> Session:
+def session_of(options: argparse.Namespace, source: Opened, book: Book, *, follow: bool) -> Session:
     """Build the session from the command's options."""
     notes = SheetNotes(unit=options.unit, kind=options.kind or "", notes=dict(options.note))
     keeper = Keeper(book, notes, travel_turns=options.travel, orders=options.orders)
     follows = follow and not paced(source)
-    guide = Guide(
-        travel_turns=options.travel, followed=follows, prior=prior_of(book, keeper.kind)
-    )
+    guide = Guide(travel_turns=options.travel, followed=follows, prior=prior_of(book, keeper.kind))
     manner = Manner(wanted=wanted(options, frames=STILL_FRAMES), follow=follows)
     return Session(source.source, guide, keeper, manner)
 
@@ -66,6 +64,7 @@ def session_of(
 def hold(
     options: argparse.Namespace,
     session: Conversation,
+    word: str,
     *,
     plain: bool,
     paced: bool = False,
@@ -80,6 +79,8 @@ def hold(
         The command's.
     session
         The session.
+    word
+        SOURCE.
     plain
         True for lines in place of the screen.
     paced
@@ -92,7 +93,7 @@ def hold(
     if not plain:
         from trimmer.screen import run_tune
 
-        return run_tune(session, hand=None if hands_off else hand, hands_off=hands_off)
+        return run_tune(session, source=word, hand=hand, travel=options.travel)
     listen(session, end_quits=not (paced or options.follow or hands_off))
     face = JsonFace() if options.json else PlainFace(prompt=not hands_off)
     return converse(session, face)

@@ -93,8 +93,10 @@ def done_lines(done: Done, thd: float | None, sigma: float | None, sheet: str) -
         lines.append(f"  Floor: {percent(done.floor_thd, done.floor_sigma)}.")
     net = ", ".join(f"{trim} {turns:+.3f} turns" for trim, turns in done.net_turns.items())
     lines.append(f"  From the start: {net} (plus is clockwise).")
-    for cause in done.remainder:
-        lines.append(f"  Left: {cause.cause} {percent(cause.thd, cause.thd_sigma)}. {cause.remedy}")
+    lines += [
+        f"  Left: {cause.cause} {percent(cause.thd, cause.thd_sigma)}. {cause.remedy}"
+        for cause in done.remainder
+    ]
     if done.expected_thd_warm is not None:
         lines.append(f"  THD to expect once warm: {percent(done.expected_thd_warm)}.")
     lines.append("  Check again when the unit is warm.")
