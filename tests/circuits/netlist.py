@@ -30,7 +30,14 @@ _PARAM = re.compile(r"(\w+)=(\S+)")
 _NUMBER = re.compile(r"([-+]?[0-9.]+(?:e[-+]?[0-9]+)?)([a-z]*)", re.IGNORECASE)
 _SCALE = {"": 1.0, "p": 1e-12, "n": 1e-9, "u": 1e-6, "m": 1e-3, "k": 1e3, "meg": 1e6}
 
-_RATIO = {"r_": 0.015, "rail_": 0.01, "tri_peak": 0.01, "pot_": 0.07, "cap_": 0.05, "area_": 0.046}
+_RATIO = {
+    "r_": 0.015,
+    "rail_": 0.01,
+    "tri_peak": 0.01,
+    "pot_": 0.07,
+    "cap_": 0.05,
+    "area_": 0.046,
+}
 _SHIFT = {"tri_offset": 0.020, "tri_rise": 0.002}
 _WIDEST = 2.5
 """Standard deviations at which a draw is cut: parts further out were sorted away."""
@@ -110,6 +117,14 @@ def toleranced_unit(name: str, seed: int) -> Unit:
     rng = np.random.default_rng([seed, *name.encode("ascii")])
     values = {key: _drawn(key, made.nominal[key], rng) for key in order}
     return Unit(made, seed, values)
+
+
+def with_values(unit: Unit, **values: float) -> Unit:
+    """Give the same unit with some of its values replaced, such as ``hz=47.0``."""
+    unknown = values.keys() - unit.values.keys()
+    if unknown:
+        raise ValueError(f"{unit.circuit.name} has no {sorted(unknown)}")
+    return Unit(unit.circuit, unit.seed, {**unit.values, **values})
 
 
 def render(unit: Unit) -> str:
