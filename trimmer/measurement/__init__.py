@@ -1,6 +1,10 @@
 """From a capture to a reading: harmonics in the crest frame with their uncertainties. Pure."""
 
+from trimmer.measurement.combine import combine, cut_to, frames_needed
+from trimmer.measurement.figures import effective_bits, sinad_db, thd_of_total
 from trimmer.measurement.measure import measure
+from trimmer.measurement.packing import document, from_document
+from trimmer.measurement.picture import fold, shape_of
 from trimmer.measurement.reading import (
     Crests,
     Digitiser,
@@ -9,6 +13,8 @@ from trimmer.measurement.reading import (
     MeasurementError,
     Reading,
 )
+from trimmer.measurement.reference import Reference, apply_reference
+from trimmer.measurement.screening import digest
 
 __all__ = [
     "Crests",
@@ -17,5 +23,18 @@ __all__ = [
     "Interval",
     "MeasurementError",
     "Reading",
+    "Reference",
+    "apply_reference",
+    "combine",
+    "cut_to",
+    "digest",
+    "document",
+    "effective_bits",
+    "fold",
+    "frames_needed",
+    "from_document",
     "measure",
+    "shape_of",
+    "sinad_db",
+    "thd_of_total",
 ]

@@ -13,6 +13,7 @@ from trimmer.measurement.fit import Fit, fit
 from trimmer.measurement.model import Lines
 from trimmer.measurement.projection import Record
 from trimmer.measurement.reading import Digitiser, Flag, MeasurementError, Reading
+from trimmer.measurement.reference import Reference, apply_reference
 from trimmer.measurement.screening import (
     as_samples,
     check_clipping,
@@ -22,7 +23,7 @@ from trimmer.measurement.screening import (
     stale_flag,
 )
 from trimmer.measurement.search import coarse_fundamental
-from trimmer.measurement.thd import thd_of
+from trimmer.measurement.thd import Disturbance, thd_of
 
 MOST_ORDERS = 64
 """Orders fitted where the sample rate allows, whatever is reported: see `fitted_orders`."""
@@ -41,7 +42,7 @@ def measure(
     times_s: ArrayLike | None = None,
     mains_hz: float | None = None,
     previous_samples: ArrayLike | bytes | None = None,
-    reference: None = None,
+    reference: Reference | None = None,
 ) -> Reading:
     values = as_samples(samples)
     digitiser = digitiser or Digitiser()
@@ -60,7 +61,10 @@ def measure(
     if cycles < FEWEST_CYCLES - 1e-3:
         raise MeasurementError("too-few-cycles", f"{cycles:.2f} cycles", "Slow the time base.")
     flags = [flag for flag in (stale_flag(values, previous_samples),) if flag]
-    return _reading(record, found, crest_frame(found, kept), interval_s, digitiser, tuple(flags))
+    reading = _reading(
+        record, found, crest_frame(found, kept), interval_s, digitiser, tuple(flags)
+    )
+    return apply_reference(reading, reference) if reference else reading
 
 
 def _reading(
@@ -85,7 +89,11 @@ def _reading(
         parts=frame.parts,
         covariance=frame.covariance,
         noise=math.sqrt(found.variance) * record.scale,
-        thd=thd_of(frame.parts, frame.covariance, frame.noise_power),
+        thd=thd_of(
+            frame.parts,
+            frame.covariance,
+            Disturbance(frame.noise_power, freedom=found.freedom),
+        ),
         thd_plus_noise=thd_plus_noise_of(found),
         crests=crests_of(frame.parts, frame.covariance),
         rise_share=share,
@@ -97,5 +105,7 @@ def _reading(
         bits=digitiser.bits,
         has_volts=digitiser.has_volts,
         ac_coupled=digitiser.ac_coupled,
+        noise_power=frame.noise_power,
+        freedom=float(found.freedom),
         phase=math.remainder(frame.phase - middle, 2.0 * math.pi),
     )

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -159,9 +160,16 @@ class Reading:
     """Phase of the fundamental at the first sample, radians: samples ~ amplitude cos(phase + w t)."""
     extra: dict[str, float] = field(default_factory=dict)
     """Named further figures (lines of hum, drift of frequency, ...)."""
+    systematic: Matrix = field(default_factory=lambda: np.zeros((0, 0)))
+    """Shape of `covariance`, the share of it that is the same in every reading taken through this
+    input and so is not lowered by averaging; empty where there is none. Read-only."""
+    noise_power: float = 0.0
+    """What noise adds to the square of THD on average; taken off in `thd`."""
+    freedom: float = math.inf
+    """Degrees of freedom behind the noise's own estimate."""
 
     def __post_init__(self) -> None:
-        for name in ("parts", "covariance"):
+        for name in ("parts", "covariance", "systematic"):
             values = np.array(getattr(self, name), dtype=np.float64, copy=True)
             values.flags.writeable = False
             object.__setattr__(self, name, values)
@@ -170,6 +178,23 @@ class Reading:
     def crest_parts(self) -> Vector:
         """Shape (K-1,), ``c_2 .. c_K``."""
         return self.parts[0::2]
+
+    @property
+    def random_covariance(self) -> Matrix:
+        """Covariance of what changes from reading to reading: `covariance` less `systematic`.
+
+        This is the one to weigh differences of readings with.
+        """
+        return self.covariance - self.systematic if self.systematic.size else self.covariance
+
+    @property
+    def random_thd_sigma(self) -> float:
+        """Share of `thd.sigma` that more frames lower, ratio."""
+        if not self.systematic.size:
+            return self.thd.sigma
+        whole = float(self.parts @ self.covariance @ self.parts)
+        random = float(self.parts @ self.random_covariance @ self.parts)
+        return self.thd.sigma * math.sqrt(max(random, 0.0) / whole) if whole > 0.0 else 0.0
 
     @property
     def skew_parts(self) -> Vector:
