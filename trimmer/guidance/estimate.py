@@ -25,7 +25,7 @@ class Estimate:
     found: Found
     """Walk and field."""
     here: Array
-    """Shape (2,), present position."""
+    """Shape (2,), present position: the origin."""
     origin: Array
     """Shape (2,), position of the first reading."""
     box: Box
@@ -37,7 +37,7 @@ class Estimate:
     floor_sigma: float
     """Its standard uncertainty."""
     known: tuple[bool, bool]
-    """Whether each trim's column is known."""
+    """Whether each trim's column is known: from turning it, or from its kind."""
 
     @property
     def belief(self) -> FieldBelief:
@@ -64,7 +64,7 @@ def estimate(record: Record, hand: Hand, kind: KindPrior | None) -> Estimate:
     """
     walk = record.walk(hand)
     found = _with_kind(walk, kind) if kind is not None else _general(walk, record)
-    here = found.places[-1]
+    here = np.zeros(2)
     box = _box(record, found.places)
     aim = Aim(found.belief)
     best = aim.joint(here, box)
@@ -77,7 +77,7 @@ def estimate(record: Record, hand: Hand, kind: KindPrior | None) -> Estimate:
         best=best,
         floor_thd=floor,
         floor_sigma=sigma,
-        known=known_columns(found.belief, here),
+        known=_known(record, found.belief, kind is not None),
     )
 
 
@@ -85,17 +85,11 @@ def _general(walk: Walk, record: Record) -> Found:
     """Search with nothing known; the gain of the columns sets how much they may bend."""
     orders = record.orders
     gain = 1.0
-    found = None
-    for _ in range(2):
-        prior = general_belief(orders, gain)
-        at = walk.steps[-1] @ walk.expected if found is None else found.places[-1]
-        prior.anchor[:] = at
-        found = find_walk(walk, prior, None if found is None else found.steps)
-        length = float(np.max(np.linalg.norm(found.belief.columns(at), axis=1))) / TYPICAL
-        if not record.moves or 0.6 < length / gain < 1.7:
-            break
+    found = find_walk(walk, general_belief(orders, gain))
+    length = float(np.max(np.linalg.norm(found.belief.columns(found.last), axis=1))) / TYPICAL
+    if record.moves and not 0.6 < length < 1.7:
         gain = float(np.clip(length, 0.05, 20.0))
-    assert found is not None
+        found = find_walk(walk, general_belief(orders, gain), found.steps)
     return found
 
 
@@ -105,7 +99,7 @@ def _with_kind(walk: Walk, kind: KindPrior) -> Found:
     n = walk.expected.size
     steps = np.zeros((walk.steps.shape[0], 2, n + 2))
     steps[:, 0, 0] = steps[:, 1, 1] = 1.0
-    steps[:, :, 2:] = walk.steps
+    steps[:, :, 2:] = walk.steps - walk.steps[:1]
     wide = Walk(
         parts=walk.parts,
         variance=walk.variance,
@@ -121,14 +115,12 @@ def _with_kind(walk: Walk, kind: KindPrior) -> Found:
     return find_walk(wide, prior, start, rounds=20)
 
 
-def known_columns(belief: FieldBelief, here: Array) -> tuple[bool, bool]:
-    """Tell whether the columns stand out of their uncertainty at a position."""
-    moved = belief.moved_to(here)
-    known = [
-        float(np.sum(moved.mean[:, t] ** 2)) > 4.0 * float(np.sum(moved.covariance[:, t, t]))
-        for t in (1, 2)
-    ]
-    return known[0], known[1]
+def _known(record: Record, belief: FieldBelief, kind: bool) -> tuple[bool, bool]:
+    """Tell which columns are known: of trims that have answered, or of a unit of a known kind."""
+    if kind:
+        return True, True
+    answered = {m.trim for m in record.moves if not m.dead}
+    return 0 in answered, 1 in answered
 
 
 def _box(record: Record, places: Array) -> Box:

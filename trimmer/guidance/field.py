@@ -112,6 +112,25 @@ class FieldBelief:
         )
 
 
+def derivative_weights(weights: Array) -> Array:
+    """Give the weights of the field's derivatives by the upper and by the lower position.
+
+    Parameters
+    ----------
+    weights
+        Shape (m, 10).
+
+    Returns
+    -------
+    Array
+        Shape (2, m, 10), at the same anchor; third-degree terms are zero.
+    """
+    derived = np.zeros((2, *weights.shape))
+    derived[0][:, :6] = weights[:, [1, 3, 4, 6, 7, 8]]
+    derived[1][:, :6] = weights[:, [2, 4, 5, 7, 8, 9]]
+    return derived
+
+
 def shift_matrix(d: Array) -> Array:
     """Give the matrix that takes weights at an anchor to weights at the anchor moved by `d`."""
     u, v = float(d[0]), float(d[1])

@@ -17,7 +17,15 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from trimmer.guidance.field import FEATURES, Array, FieldBelief, features, slopes
+from trimmer.guidance.field import (
+    FEATURES,
+    Array,
+    FieldBelief,
+    derivative_weights,
+    features,
+    shift_matrix,
+    slopes,
+)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -38,10 +46,14 @@ class Walk:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Found:
-    """The most probable walk and the belief about the field after it."""
+    """The most probable walk and the belief about the field around its last place.
+
+    Positions of the belief are relative to the last place, wherever that is: so the parts read there
+    are known as well as they were read, and only the way from there on is a matter of belief.
+    """
 
     belief: FieldBelief
-    """The field; its covariance includes what is not known of the steps."""
+    """The field, anchor 0 at the last place; its covariance includes what is not known of the steps."""
     given_steps: Array
     """Shape (m, 10, 10), covariance of the weights were the steps known."""
     through_steps: Array
@@ -51,7 +63,9 @@ class Found:
     steps_covariance: Array
     """Shape (s, s)."""
     places: Array
-    """Shape (n, 2), positions of the readings."""
+    """Shape (n, 2), positions of the readings, last place at 0."""
+    last: Array
+    """Shape (2,), the last place in the coordinates of the prior."""
     cost: float
     """Minus twice the logarithm of the joint probability, up to a constant."""
     converged: bool
@@ -160,14 +174,21 @@ class _Problem:
         """Put the result together."""
         inverse, through, schur, _ = self._coupled(steps, weights)
         spread = np.asarray(np.linalg.inv(schur), dtype=np.float64)
+        places = self.walk.steps @ steps
+        shift = shift_matrix(places[-1] - self.prior.anchor)
+        local = weights @ shift.T
+        inverse = shift @ inverse @ shift.T
+        moved = np.einsum("akf,as->kfs", derivative_weights(local), self.walk.steps[-1])
+        through = moved - shift @ through
         covariance = inverse + through @ spread @ through.transpose(0, 2, 1)
         return Found(
-            belief=FieldBelief(self.prior.anchor, weights, covariance),
+            belief=FieldBelief(np.zeros(2), local, covariance),
             given_steps=inverse,
-            through_steps=-through,
+            through_steps=through,
             steps=steps,
             steps_covariance=spread,
-            places=self.walk.steps @ steps,
+            places=places - places[-1],
+            last=places[-1],
             cost=cost,
             converged=converged,
         )

@@ -97,13 +97,13 @@ class Record:
         return move.sense * size, sigma
 
     def walk(self, hand: Hand) -> Walk:
-        """Give the walk for the search of the most probable path, the start at the origin."""
+        """Give the walk for the search of the most probable path, the present place at 0."""
         size = 2 * (self.orders - 1)
         together = [merged(place) for place in self.places]
         n = len(self.moves)
         steps = np.zeros((n + 1, 2, n))
         for i, move in enumerate(self.moves):
-            steps[i + 1 :, move.trim, i] = 1.0
+            steps[: i + 1, move.trim, i] = -1.0
         expected = [self.expected_step(i, hand) for i in range(n)]
         return Walk(
             parts=np.array([r.parts[:size] for r in together]),
