@@ -47,7 +47,7 @@ class DeedsWidget(PictureWidget):
         """Write one deed to a row."""
         return tuple(
             (
-                Run(fitted(" / ".join(deed.keys), 22), "strong", f"screen.pick({at})"),
+                Run(fitted(" / ".join(deed.keys), 22), "cap", f"screen.pick({at})"),
                 Run(fitted(deed.more, width - 22), "plain", f"screen.pick({at})"),
             )
             for at, deed in enumerate(self.deeds[:height])

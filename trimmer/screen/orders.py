@@ -51,10 +51,10 @@ _AWAITED: dict[str, tuple[Sign, Ways]] = {
 def order(view: View) -> Order:
     """Say what to do now."""
     if view.failed is not None:
-        return Order("ended", (("ENDED",),), view.failed.message, ground="slants")
+        return Order("ended", (("ENDED",),), ground="slants")
     if view.finished is not None:
         sign, words = _VERDICTS[view.finished.done.verdict]
-        return Order(sign, words, view.finished.done.reason)
+        return Order(sign, words)
     if view.awaiting is not None and (view.awaiting.code != "file" or view.advice is None):
         return _awaited(view.awaiting)
     if view.advice is not None:
@@ -66,7 +66,7 @@ def order(view: View) -> Order:
 
 def _awaited(awaiting: Awaiting) -> Order:
     sign, words = _AWAITED.get(awaiting.code, ("wait", (("WAIT",),)))
-    return Order(sign, words, awaiting.remedy or awaiting.message)
+    return Order(sign, words, ground="bare" if sign == "wait" else "slants")
 
 
 def _turning(advice: Advice, word: Follow | None) -> Order:

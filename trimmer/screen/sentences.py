@@ -16,35 +16,38 @@ def percent(ratio: float, sigma: float | None = None) -> str:
     value = 100.0 * ratio
     if sigma is None or not math.isfinite(sigma) or sigma <= 0.0:
         return f"{value:.2f} %"
-    digits = min(4, max(1, 1 - math.floor(math.log10(100.0 * sigma))))
+    digits = min(4, max(1, -math.floor(math.log10(100.0 * sigma))))
     return f"{value:.{digits}f} ±{100.0 * sigma:.{digits}f} %"
 
 
 def why(view: View) -> str:
-    """Say why this turn, or what is being done."""
-    if view.awaiting is not None:
+    """Say why this turn, or what is the matter."""
+    if view.awaiting is not None and view.awaiting.code != "file":
         return view.awaiting.message
     if view.advice is not None:
         return view.advice.notice or view.advice.reason
-    if view.finished is not None:
-        return view.finished.done.reason
-    return ""
+    if view.opened is None:
+        return f"Opening {view.source}."
+    return "Reading the unit as it stands." if not view.steps else "Working out the next turn."
 
 
 def expectation(view: View) -> str:
-    """Say what THD is, what it should become, and what no turn can remove."""
+    """Say what to expect: of THD after this turn, or of what is being waited for."""
+    if view.awaiting is not None and view.awaiting.code != "file":
+        left = view.awaiting.seconds_left
+        return view.awaiting.remedy + ("" if left is None else f" Given up in {left:.0f} s.")
     said = []
     if view.reading is not None:
-        said.append(f"THD {percent(view.reading.thd.value, view.reading.thd.sigma)} now")
+        said.append(f"THD {100.0 * view.reading.thd.value:.2f} %")
     advice = view.advice
     if advice is not None and advice.expected_thd is not None:
-        rise = ", and it rises at first" if advice.rises_first else ""
-        said.append(f"{percent(advice.expected_thd)} expected after this turn{rise}")
+        rise = ", up before it comes down" if advice.rises_first else ""
+        said.append(f"{100.0 * advice.expected_thd:.2f} % after this turn{rise}")
     elif advice is not None:
         said.append("this turn shows what the trim does")
     if view.floor is not None:
         said.append(f"floor {percent(view.floor.thd, view.floor.sigma)}")
-    return "; ".join(said)
+    return ", ".join(said)
 
 
 def even_skew(reading: Reading) -> float:
@@ -55,11 +58,11 @@ def even_skew(reading: Reading) -> float:
 def first_things(reading: Reading) -> str:
     """Say rise share, offset and level, their targets and what they cost."""
     rise = 100.0 * reading.rise_share
-    said = [f"rise {rise:.2f} % of the period (50) costs {percent(even_skew(reading))}"]
+    said = [f"rise share {rise:.2f} % (50) costs {percent(even_skew(reading))}"]
     if reading.has_volts and not reading.ac_coupled:
         said.append(f"offset {volts(reading.offset)} (0)")
     if reading.has_volts:
-        said.append(f"level {volts(reading.amplitude)} peak")
+        said.append(f"level {volts(reading.amplitude)}")
     return ", ".join(said)
 
 
@@ -71,25 +74,18 @@ def volts(value: float) -> str:
 def matters(view: View) -> tuple[str, ...]:
     """List what the eyes should see besides the turn, the weightiest first."""
     said: list[str] = []
-    if view.awaiting is not None and view.awaiting.code != "confirming":
-        left = view.awaiting.seconds_left
-        wait = "" if left is None else f" ({left:.0f} s left)"
-        said.append(f"{view.awaiting.remedy}{wait}")
     if view.reading is not None:
         said += [f"{flag.message}: {flag.remedy}" for flag in view.reading.flags]
-        first = first_things(view.reading)
         costly = even_skew(view.reading) > 0.5 * view.reading.thd.value
-        said.insert(
-            0 if costly and len(view.steps) <= 1 and not view.awaiting else len(said), first
-        )
-    said += view.notes
-    return tuple(said)
+        first = first_things(view.reading)
+        said.insert(0 if costly and len(view.steps) <= 1 else len(said), first)
+    return (*said, *view.notes)
 
 
 def waiting_for(view: View) -> str:
     """Say what the tool is waiting for."""
     if view.over:
-        return "nothing: the sheet is closed"
+        return "nothing more"
     if view.awaiting is not None:
         return {
             "source-lost": "the source",
@@ -98,9 +94,11 @@ def waiting_for(view: View) -> str:
             "drifting": "the unit to settle",
             "file": "the next file",
         }.get(view.awaiting.code, view.awaiting.message)
+    if view.opened is None:
+        return "the source"
     if view.advice is None:
-        return "a reading" if view.opened is not None else "the source"
-    return "the hand" if view.follows else "your word that it is turned"
+        return "a reading"
+    return "the hand" if view.follows else "Enter, once turned"
 
 
 def freshness(view: View, now: float) -> str:
@@ -109,16 +107,17 @@ def freshness(view: View, now: float) -> str:
         return "no reading yet"
     age = max(0.0, now - view.read_at)
     if age < 1.0:
-        return "reading live"
+        return "read just now"
     said = f"{age:.0f} s" if age < 120.0 else f"{age / 60.0:.0f} min"
-    return f"reading {said} old"
+    return f"read {said} ago"
 
 
 def status(view: View, now: float) -> str:
     """Say where things stand: waiting for, freshness, source, book."""
     unit = view.opened.unit if view.opened is not None else ""
     place = f"{view.source}, {unit}" if unit else view.source
-    return f"waits for {waiting_for(view)} │ {freshness(view, now)} │ {place} │ {kept(view)}"
+    parts = [f"waits for {waiting_for(view)}", freshness(view, now), place, kept(view)]
+    return " │ ".join(part for part in parts if part)
 
 
 def stale(view: View, now: float) -> bool:
@@ -132,5 +131,4 @@ def kept(view: View) -> str:
     if view.opened is None:
         return "book not open yet"
     count = len(view.steps)
-    readings = "no reading" if count == 0 else f"{count} reading{'s' if count > 1 else ''}"
-    return f"book: sheet {view.opened.sheet}, {readings}"
+    return f"sheet {view.opened.sheet}: {count} kept"

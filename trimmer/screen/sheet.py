@@ -50,10 +50,10 @@ class SheetScreen(Screen[None]):
         todo = order(self.view)
         self.query_one(SignWidget).order = todo
         self.query_one(WordsWidget).order = todo
-        self.query_one(ShapeWidget).reading = self.view.reading
+        self.query_one(ShapeWidget).trace = self.view.trace
         course = self.query_one(CourseWidget)
         course.steps, course.floor = self.view.steps, self.view.floor
-        self.query_one("#panes").display = self.view.reading is not None
+        self.set_class(self.view.reading is None, "-unread")
         self.query_one(KeysWidget).keys = (
             Key("Enter", "close", "screen.close"),
             Key("?", "help", "app.explain"),

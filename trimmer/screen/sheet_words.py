@@ -14,7 +14,7 @@ def sheet_lines(view: View) -> list[Line]:
     if view.finished is None:
         return []
     end, done = view.finished, view.finished.done
-    lines: list[Line] = []
+    lines: list[Line] = [("plain", done.reason)]
     if end.thd is not None:
         floor = (
             "" if done.floor_thd is None else f", floor {percent(done.floor_thd, done.floor_sigma)}"

@@ -26,12 +26,12 @@ class Shown:
     """Whether a turn is asked for."""
     lines: dict[str, tuple[str, ...]]
     """Lines of text by the place they stand in."""
+    why: tuple[str, str]
+    """Why, and what to expect."""
     keys: tuple[Key, ...]
     """Keys on show, the weightiest first."""
     stale: bool
     """Whether watched readings have stopped."""
-    alarming: bool
-    """Whether the first matter is one that holds the session up."""
 
 
 def shown(view: View, now: float, hand: KeyedHand | None, silent: bool) -> Shown:
@@ -57,13 +57,12 @@ def shown(view: View, now: float, hand: KeyedHand | None, silent: bool) -> Shown
         lines={
             "upper-rest": resting("upper", todo, hand),
             "lower-rest": resting("lower", todo, hand),
-            "why": (sentences.why(view), sentences.expectation(view)),
             "matters": sentences.matters(view),
             "status": (sentences.status(view, now),),
         },
+        why=(sentences.why(view), sentences.expectation(view)),
         keys=keys(view, hand, silent),
         stale=sentences.stale(view, now),
-        alarming=view.awaiting is not None and view.awaiting.code != "confirming",
     )
 
 
@@ -73,8 +72,8 @@ def resting(trim: Trim, todo: Order, hand: KeyedHand | None) -> tuple[str, ...]:
         return ()
     said = f"{trim} trim: leave it alone"
     if hand is not None and hand.trim == trim:
-        arrow = "↑" if trim == "lower" else "↓"
-        said += f"   ◀ the screwdriver is on it: {arrow} puts it on the {todo.trim} trim"
+        way = "↑ moves it up" if trim == "lower" else "↓ moves it down"
+        said += f"  ◀ the screwdriver is on it: {way}"
     return (said,)
 
 

@@ -24,7 +24,7 @@ from trimmer.screen.shown import Shown, shown
 from trimmer.screen.view import View, take
 from trimmer.screen.widgets.keys import KeysWidget
 from trimmer.screen.widgets.panes import CourseWidget, PartsWidget, ShapeWidget
-from trimmer.screen.widgets.turn import BarWidget, LineWidget, SignWidget, WordsWidget
+from trimmer.screen.widgets.turn import BarWidget, LineWidget, SignWidget, WordsWidget, WordyWidget
 
 FRAME_S = 1 / 20
 """The shortest time between two frames."""
@@ -87,7 +87,7 @@ class TuneScreen(Screen[None]):
             yield WordsWidget(id="words")
         yield LineWidget(id="lower-rest", classes="rest")
         yield BarWidget(id="bar")
-        yield LineWidget(id="why")
+        yield WordyWidget(id="why")
         with Horizontal(id="panes"):
             yield ShapeWidget(id="shape")
             yield PartsWidget(id="parts")
@@ -144,7 +144,7 @@ class TuneScreen(Screen[None]):
         self.query_one(WordsWidget).order = value.order
         self._show_lines(value)
         self._show_bar(value)
-        self.query_one(ShapeWidget).reading = self.view.reading
+        self.query_one(ShapeWidget).trace = self.view.trace
         self.query_one(ShapeWidget).dots = self.dots
         self.query_one(PartsWidget).split = self.view.parts
         course = self.query_one(CourseWidget)
@@ -152,13 +152,13 @@ class TuneScreen(Screen[None]):
         self.query_one(KeysWidget).keys = value.keys
 
     def _show_lines(self, value: Shown) -> None:
+        self.query_one(WordyWidget).sentences = value.why
         for name, lines in value.lines.items():
             self.query_one(f"#{name}", LineWidget).lines = lines
         for trim in ("upper", "lower"):
             rest = self.query_one(f"#{trim}-rest")
             rest.display = bool(value.lines[f"{trim}-rest"])
         self.query_one("#status").set_class(value.stale, "-stale")
-        self.query_one("#matters").set_class(value.alarming, "-alarming")
 
     def _show_bar(self, value: Shown) -> None:
         bar = self.query_one(BarWidget)

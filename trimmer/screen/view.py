@@ -22,6 +22,7 @@ from trimmer.reports import (
 )
 from trimmer.screen.pictures.course import Floor, Step
 from trimmer.screen.pictures.parts import Split, split
+from trimmer.screen.pictures.wave import Trace
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -52,6 +53,8 @@ class View:
     """THD that no turn removes."""
     reach: NDArray[np.float64] | None = None
     """Shape (m, 2(K-1)), orthonormal rows: what the trims reach."""
+    trace: Trace | None = None
+    """The newest capture as it is drawn."""
     parts: Split | None = None
     """The newest reading's parts, split into what the trims reach and what they do not."""
     finished: Finished | None = None
@@ -89,6 +92,7 @@ def take(view: View, report: Report, now: float) -> View:
                 view,
                 word=report.word,
                 reading=report.reading,
+                trace=_trace(report),
                 parts=_split(report.reading, view.reach),
                 read_at=now - report.age_s,
                 awaiting=None,
@@ -111,6 +115,7 @@ def _measured(view: View, report: Measured, now: float) -> View:
     return replace(
         view,
         reading=report.reading,
+        trace=_trace(report),
         parts=_split(report.reading, view.reach),
         read_at=now,
         notes=report.notes,
@@ -149,3 +154,8 @@ def _finished(view: View, report: Finished) -> View:
 
 def _split(reading: Reading | None, reach: NDArray[np.float64] | None) -> Split | None:
     return None if reading is None else split(reading.parts, reading.covariance, reach)
+
+
+def _trace(report: Measured | Followed) -> Trace:
+    period = 1.0 / (report.reading.fundamental_hz * report.interval_s)
+    return Trace(report.reading.parts, report.waveform, period)

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from trimmer.guidance.advice import Say, Sense
-from trimmer.screen.pictures.runs import Picture, Role, Row, Run
+from trimmer.screen.pictures.runs import Picture, Role, joined
 
 BEGIN = -0.25
 """Share at the bar's empty end; what is below 0 is the wrong way."""
@@ -57,10 +57,9 @@ def bar(
             cells[at] = ("▚", "halt")
         for at in range(here, zero):
             cells[at] = ("╳", "halt")
-    cells[goal] = ("┃", "strong")
-    if share is not None and share >= 1.0:
-        cells[goal] = ("█", "halt")
-    return tuple(_joined(cells, sense) for _ in range(rows))
+    cells[goal] = ("█", "strong" if share is None or share < 1.0 else "halt")
+    ordered = cells if sense == "clockwise" else cells[::-1]
+    return tuple(joined(ordered) for _ in range(rows))
 
 
 def _track(at: int, zero: int, goal: int, unknown: bool) -> tuple[str, Role]:
@@ -68,15 +67,3 @@ def _track(at: int, zero: int, goal: int, unknown: bool) -> tuple[str, Role]:
     if not zero <= at < goal:
         return " ", "quiet"
     return ("╌" if unknown else "░"), "quiet"
-
-
-def _joined(cells: list[tuple[str, Role]], sense: Sense) -> Row:
-    """Join neighbours of one role into runs, mirrored where the turn is counter-clockwise."""
-    ordered = cells if sense == "clockwise" else cells[::-1]
-    runs: list[Run] = []
-    for text, role in ordered:
-        if runs and runs[-1].role == role:
-            runs[-1] = Run(runs[-1].text + text, role)
-        else:
-            runs.append(Run(text, role))
-    return tuple(runs)

@@ -6,7 +6,7 @@ import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 
-from trimmer.screen.pictures.runs import Picture, Role, Row, Run, fitted, row
+from trimmer.screen.pictures.runs import Picture, Role, blank, fitted, joined, longest, row
 
 
 @dataclass(frozen=True, slots=True)
@@ -54,7 +54,7 @@ def course(steps: Sequence[Step], floor: Floor | None, width: int, rows: int) ->
         ``█`` is the top of a column at a turn's THD, ``▀▄`` in half rows, ``▒`` the floor's band.
     """
     if not steps or rows < 4 or width < 14:
-        return (row("THD by turn", width, "quiet"), *(row("", width) for _ in range(rows - 1)))
+        return (row("THD by turn", width, "quiet"), *blank(width, rows - 1))
     tall = rows - 2
     low, high = _range(steps, floor)
     label = 6
@@ -67,20 +67,28 @@ def course(steps: Sequence[Step], floor: Floor | None, width: int, rows: int) ->
         _column(grid, at * every, step, low, high, last=at == len(shown) - 1)
     labels = _labels(tall, low, high)
     body = [
-        _joined([(fitted(labels.get(y, ""), label), "quiet"), *cells])
+        joined([(fitted(labels.get(y, ""), label), "quiet"), *cells])
         for y, cells in enumerate(grid)
     ]
     numbers = "".join(f"{step.turn:^{every - 1}} " for step in shown)
     return (
-        row(_caption(steps[-1], floor), width, "quiet"),
+        row(_caption(steps[-1], floor, width), width, "quiet"),
         *body,
         row(fitted("turn", label) + numbers, width, "quiet"),
     )
 
 
-def _caption(last: Step, floor: Floor | None) -> str:
-    text = f"THD {percent(last.thd)} %"
-    return text if floor is None else f"{text}, floor {percent(floor.thd)}"
+def _caption(last: Step, floor: Floor | None, width: int) -> str:
+    now = f"THD {percent(last.thd)}"
+    if floor is None:
+        return longest(width, f"{now} ±{percent(last.sigma, 3)} %, by turn", f"{now} % by turn")
+    return longest(
+        width,
+        f"{now} ±{percent(last.sigma, 3)} %, floor {percent(floor.thd)} ±{percent(floor.sigma)} %",
+        f"{now} %, floor {percent(floor.thd)} %",
+        f"{now}, floor {percent(floor.thd)}",
+        now,
+    )
 
 
 def _range(steps: Sequence[Step], floor: Floor | None) -> tuple[float, float]:
@@ -125,13 +133,3 @@ def _labels(tall: int, low: float, high: float) -> dict[int, str]:
     step = math.log(high / low) / tall
     value = {y: high * math.exp(-step * (y + 0.5)) for y in (0, tall - 1)}
     return {y: f"{100 * v:.3g}"[:5] for y, v in value.items()}
-
-
-def _joined(cells: list[tuple[str, Role]]) -> Row:
-    runs: list[Run] = []
-    for text, role in cells:
-        if runs and runs[-1].role == role:
-            runs[-1] = Run(runs[-1].text + text, role)
-        else:
-            runs.append(Run(text, role))
-    return tuple(runs)

@@ -136,6 +136,11 @@ class Size:
         return -(-len(self._letters["A"]) * self.down // 2)
 
     @property
+    def air(self) -> int:
+        """Rows to leave free under a line that fills its last row."""
+        return 0 if len(self._letters["A"]) * self.down % 2 else 1
+
+    @property
     def _letters(self) -> Alphabet:
         return TALL if self.alphabet == "tall" else LOW
 

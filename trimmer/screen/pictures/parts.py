@@ -8,7 +8,16 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from trimmer.screen.pictures.runs import Picture, Role, Row, Run, fitted, row
+from trimmer.screen.pictures.runs import (
+    Picture,
+    Role,
+    Row,
+    Run,
+    blank,
+    joined,
+    longest,
+    row,
+)
 
 _SCALES = (0.0005, 0.001, 0.002, 0.005, 0.01, 0.02, 0.05, 0.1, 0.2, 0.5, 1.0)
 
@@ -81,50 +90,68 @@ def parts_table(value: Split | None, width: int, rows: int) -> Picture:
     Returns
     -------
     Picture
-        ``█`` the trims reach, ``▒`` they do not, ``▪`` not known which, ``·`` lost in its own
-        uncertainty. From 44 cells on with figures.
+        ``█`` the trims reach, ``▒`` they do not, ``■`` not known which, ``·`` lost in its own
+        uncertainty. Where there is room, with figures.
     """
     if value is None or rows < 3 or width < 18:
-        return (row("parts by order", width, "quiet"), *(row("", width) for _ in range(rows - 1)))
+        return (row("parts by order", width, "quiet"), *blank(width, rows - 1))
     scale = scale_of(value)
     orders = min(rows - 2, value.parts.size // 2)
-    figures = width >= 52
-    half = (width - 4) // 2
-    head = fitted(f"    crest ±{100 * scale:g} %", half + 3) + " skew"
-    body = [_order_row(value, k, half, scale, figures) for k in range(orders)]
-    filler = [row("", width)] * (rows - 2 - orders)
-    fit = [(*runs, Run(" " * (width - sum(len(r.text) for r in runs)))) for runs in body]
-    return (row(head, width, "quiet"), *fit, *filler, row(_totals(value, width), width, "plain"))
+    half = (width - 3) // 2
+    body = [_order_row(value, k, half, width, scale) for k in range(orders)]
+    return (
+        row(_head(half, width, scale), width, "quiet"),
+        *body,
+        *blank(width, rows - 2 - orders),
+        row(_totals(value, width), width, "plain"),
+    )
+
+
+def _head(half: int, width: int, scale: float) -> str:
+    """Name the two columns from their middle lines on, and say what a bar to the end means."""
+    figures = FIGURES if half - 1 >= FIGURES + 11 else 0
+    middle = (half - 1 - figures - 1) // 2
+    text = list(" " * width)
+    for begin, name in ((3, "crest"), (3 + half, "skew")):
+        at = begin + middle
+        text[at : at + len(name)] = name
+    unit = f"±{100 * scale:g}%"
+    text[: len(unit)] = unit
+    return "".join(text)
 
 
 def _totals(value: Split, width: int) -> str:
     if value.within is None or value.beyond is None:
-        return fitted(
-            "█ reach not known yet" if width < 40 else "what the trims reach shows later", width
-        )
-    text = f"█ trims {100 * value.within:.2f}  ▒ rest {100 * value.beyond:.2f} %"
-    longer = (
-        f"█ the trims reach {100 * value.within:.3f} %   ▒ they do not {100 * value.beyond:.3f} %"
+        return longest(width, "what the trims reach shows after two turns", "reach not known yet")
+    within, beyond = 100 * value.within, 100 * value.beyond
+    return longest(
+        width,
+        f"█ the trims reach {within:.3f} %   ▒ they do not reach {beyond:.3f} %",
+        f"█ trims reach {within:.2f}   ▒ not {beyond:.2f} %",
+        f"█ reach {within:.2f} ▒ not {beyond:.2f}",
     )
-    return longer if len(longer) <= width else text
 
 
-def _order_row(value: Split, k: int, half: int, scale: float, figures: bool) -> Row:
+FIGURES = 14
+"""Cells a figure with its uncertainty takes."""
+
+
+def _order_row(value: Split, k: int, half: int, width: int, scale: float) -> Row:
     """Draw the row of order ``k + 2``."""
-    cells = [Run(f"{k + 2:>2} ", "quiet")]
-    for part in (0, 1):
-        index = 2 * k + part
+    figures = half - 1 >= FIGURES + 11
+    room = half - 1 - (FIGURES if figures else 0)
+    cells: list[Run] = [Run(f"{k + 2:>2} ", "quiet")]
+    for index in (2 * k, 2 * k + 1):
+        part, sigma = float(value.parts[index]), float(value.sigma[index])
         reached = None if value.reached is None else float(value.reached[index])
-        room = half - 14 if figures else half - 1
-        cells += signed(float(value.parts[index]), float(value.sigma[index]), reached, room, scale)
+        cells += signed(part, sigma, reached, room, scale)
         if figures:
-            sigma = 100 * value.sigma[index]
-            cells.append(Run(f"{100 * value.parts[index]:+7.3f}±{sigma:<5.3f}", "quiet"))
+            cells.append(Run(f" {100 * part:+7.3f}±{100 * sigma:.3f}"[:FIGURES], "quiet"))
         cells.append(Run(" "))
-    return tuple(cells)
+    return (*cells, Run(" " * (width - sum(len(run.text) for run in cells))))
 
 
-def signed(part: float, sigma: float, reached: float | None, width: int, scale: float) -> list[Run]:
+def signed(part: float, sigma: float, reached: float | None, width: int, scale: float) -> Row:
     """Draw a signed bar about a middle line: what is not reached nearest to it.
 
     Parameters
@@ -137,45 +164,50 @@ def signed(part: float, sigma: float, reached: float | None, width: int, scale: 
         Ratio at either end.
     """
     side = (width - 1) // 2
-    cells: list[tuple[str, Role]] = [(" ", "quiet")] * (2 * side + 1)
+    cells: list[tuple[str, Role]] = [(" ", "quiet")] * width
     cells[side] = ("│", "quiet")
     if abs(part) < 2 * sigma:
         cells[side] = ("·", "quiet")
-    elif reached is None:
-        _fill(cells, side, 0.0, part, scale, "▪", "plain")
+        return joined(cells)
+    per_half = scale / (2 * side)
+    if reached is None:
+        stretches = [(0.0, part / per_half, "unknown")]
     else:
-        rest = part - reached
+        least = max(2 * sigma, per_half / 2)
+        rest = (part - reached) / per_half if abs(part - reached) > least else 0.0
+        reached = part if rest == 0.0 else reached if abs(reached) > least else 0.0
         begin = rest if rest * reached > 0 else 0.0
-        _fill(cells, side, begin, begin + reached, scale, "█", "go")
-        _fill(cells, side, 0.0, rest, scale, "▒", "care")
-    padded = [*cells, *[(" ", "quiet")] * (width - len(cells))]
-    return _joined(padded)  # type: ignore[arg-type]
+        stretches = [(0.0, rest, "beyond"), (begin, begin + reached / per_half, "reached")]
+    for at in (*range(-side, 0), *range(1, side + 1)):
+        inner = 2 * abs(at) - 1.5
+        found = [_kind(math.copysign(place, at), stretches) for place in (inner, inner + 1.0)]
+        cells[side + at] = _cell(found[0], found[1], at > 0)
+    return joined(cells)
 
 
-def _fill(
-    cells: list[tuple[str, Role]],
-    middle: int,
-    begin: float,
-    end: float,
-    scale: float,
-    glyph: str,
-    role: Role,
-) -> None:
-    """Fill the cells between two values, at least one for a value that would show as half of one."""
-    per_cell = scale / middle if middle else math.inf
-    a, b = (round(value / per_cell) for value in (begin, end))
-    if a == b and abs(end - begin) > per_cell / 2:
-        b = a + (1 if end > begin else -1)
-    for at in range(min(a, b), max(a, b) + 1):
-        if at != 0 and abs(at) <= middle and (at != a or a == 0):
-            cells[middle + at] = (glyph, role)
+def _kind(place: float, stretches: list[tuple[float, float, str]]) -> str:
+    """Say what covers a place; a stretch that would vanish keeps half a cell."""
+    for begin, end, kind in stretches:
+        low, high = min(begin, end), max(begin, end)
+        if 0.0 < high - low < 0.5 and low <= 0.0 <= high:
+            low, high = (low, 0.6) if end > begin else (-0.6, high)
+        if low < place <= high:
+            return kind
+    return ""
 
 
-def _joined(cells: list[tuple[str, Role]]) -> list[Run]:
-    runs: list[Run] = []
-    for text, role in cells:
-        if runs and runs[-1].role == role:
-            runs[-1] = Run(runs[-1].text + text, role)
-        else:
-            runs.append(Run(text, role))
-    return runs
+_INKS: dict[str, tuple[str, str, str, Role]] = {
+    "reached": ("█", "▌", "▐", "go"),
+    "beyond": ("▒", "▒", "▒", "care"),
+    "unknown": ("■", "■", "■", "plain"),
+    "": (" ", " ", " ", "quiet"),
+}
+"""Glyph of a whole cell, of its half at the middle line's side to the right and to the left, role."""
+
+
+def _cell(inner: str, outer: str, right: bool) -> tuple[str, Role]:
+    """Give the cell whose halves are covered so; what lies nearer to the middle line counts."""
+    whole, half_right, half_left, role = _INKS[inner]
+    if outer == inner or (inner and outer):
+        return whole, role
+    return (half_right if right else half_left), role

@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
+import textwrap
 from dataclasses import dataclass
 from typing import Literal
 
-Role = Literal["plain", "strong", "quiet", "go", "care", "halt", "trace", "ideal"]
+Role = Literal["plain", "strong", "quiet", "cap", "go", "care", "halt", "trace", "ideal"]
 """What a run is for; a face decides on colour and weight, and the picture must do without."""
 
 
@@ -54,3 +55,27 @@ def blank(width: int, height: int) -> Picture:
 def plain(drawn: Picture) -> list[str]:
     """Give the text alone, row by row."""
     return ["".join(run.text for run in runs) for runs in drawn]
+
+
+def joined(cells: list[tuple[str, Role]]) -> Row:
+    """Join neighbouring cells of one role into runs."""
+    runs: list[Run] = []
+    for text, role in cells:
+        if runs and runs[-1].role == role:
+            runs[-1] = Run(runs[-1].text + text, role)
+        else:
+            runs.append(Run(text, role))
+    return tuple(runs)
+
+
+def longest(width: int, *texts: str) -> str:
+    """Give the first of several wordings, long ones first, that fits; the last one if none does."""
+    return next((text for text in texts if len(text) <= width), texts[-1])
+
+
+def wrapped(text: str, width: int, most: int) -> list[str]:
+    """Break a text at its spaces into at most so many lines, cut where it is longer still."""
+    lines = textwrap.wrap(text, width) if width > 0 else []
+    if len(lines) > most:
+        lines = [*lines[: most - 1], fitted(" ".join(lines[most - 1 :]), width)]
+    return lines

@@ -32,15 +32,15 @@ def screw(canvas: Canvas, sense: Sense, angle: float, broken: bool = False) -> M
     radius = min(canvas.columns / 2, 2 * canvas.rows / 1.82) - 0.2
     centre = (canvas.columns / 2, radius + (2 * canvas.rows - 1.82 * radius) / 2)
     thick = max(1.5, 0.22 * radius)
-    middle = radius - thick / 2 - 0.25 * thick
-    tip = math.radians(88)
-    body = canvas.arc(centre, middle - thick / 2, middle + thick / 2, math.radians(-138), tip)
+    middle = radius - thick / 2 - 0.4 * thick
+    tip = math.radians(82)
+    body = canvas.arc(centre, middle - thick / 2, middle + thick / 2, math.radians(-132), tip)
     if broken:
         x, y = canvas.grid()
         turned = np.arctan2(x - centre[0], centre[1] - y)
         body &= np.sin(turned * 7.0) > -0.35
     at = (centre[0] + middle * math.sin(tip), centre[1] - middle * math.cos(tip))
-    arrow = body | _head(canvas, at, (math.cos(tip), math.sin(tip)), 1.35 * thick)
+    arrow = body | _head(canvas, at, (math.cos(tip), math.sin(tip)), 1.6 * thick)
     if sense == "counter-clockwise":
         arrow = arrow[:, ::-1]
     inner = middle - thick / 2 - max(1.0, 0.12 * radius)
@@ -98,8 +98,7 @@ def crossed(canvas: Canvas, asked: Trim) -> Mask:
     arm, width = 1.15 * radius, max(1.0, 0.5 * radius)
     cross = canvas.stroke((bad[0] - arm, bad[1] - arm), (bad[0] + arm, bad[1] + arm), width)
     cross |= canvas.stroke((bad[0] - arm, bad[1] + arm), (bad[0] + arm, bad[1] - arm), width)
-    ring = canvas.arc(bad, 0.82 * radius, radius, -math.pi, math.pi)
-    return np.asarray(asked_screw | shaft | point | cross | ring)
+    return np.asarray(asked_screw | shaft | point | cross)
 
 
 def turn_round(canvas: Canvas, sense: Sense) -> Mask:

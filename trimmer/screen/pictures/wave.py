@@ -1,41 +1,80 @@
-"""One period against its ideal sine, the difference magnified until it shows, with a scale in percent."""
+"""One period folded over its ideal sine, the difference magnified, with its scale in percent."""
 
 from __future__ import annotations
+
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
+from trimmer.measurement.figures import shape_at
 from trimmer.screen.pictures.raster import Dots, Mask, told
-from trimmer.screen.pictures.runs import Picture, Role, Row, Run, row
+from trimmer.screen.pictures.runs import Picture, Role, Row, Run, blank, joined, longest, row
 
 Curve = NDArray[np.float64]
 """Shape (n,), ratios to the fundamental, over one period that begins at the rising zero."""
 
 _STEPS = (1, 2, 5, 10, 20, 50, 100, 200, 500, 1000)
-_ROOM = 0.45
+_ROOM = 0.55
 """The magnified difference may take this much of the crest's height at most."""
+_SCALES = (0.02, 0.05, 0.1, 0.2, 0.5, 1.0, 2.0, 5.0, 10.0, 20.0, 50.0, 100.0)
+_APART = 10
+"""From this many rows on the difference has a strip of its own."""
 
 
-def shape(parts: NDArray[np.float64], points: int) -> tuple[Curve, Curve]:
+@dataclass(frozen=True, slots=True, eq=False)
+class Trace:
+    """What a period can be drawn from: the samples, or the fitted parts where samples are too few."""
+
+    parts: Curve
+    """Shape (2(K-1),), ``c_2, s_2 .. c_K, s_K``, ratios."""
+    samples: Curve
+    """Shape (n,), in any unit; may be empty."""
+    period: float
+    """Samples to a period, not a whole number as a rule."""
+
+
+def period_of(trace: Trace, points: int) -> tuple[Curve, Curve]:
     """Give one period of the ideal sine and of the difference from it.
+
+    The samples are folded: each falls into the part of the period it was taken at, and the mean of
+    what they differ from the ideal sine *there* is shown. The sine is the samples' own fundamental
+    over whole periods, so that nothing of the difference depends on a phase told from elsewhere.
 
     Parameters
     ----------
-    parts
-        Shape (2(K-1),), ``c_2, s_2 .. c_K, s_K``, ratios.
+    trace
+        The samples and the fitted parts.
     points
         Points over the period.
 
     Returns
     -------
     ideal, difference
-        Shape (points,) each: ``cos theta`` and ``sum c_k cos k theta + s_k sin k theta``, with the
-        upper crest a quarter of the way along and the lower one at three quarters.
+        Shape (points,) each: ``cos theta`` and what is left, with the upper crest a quarter of the
+        way along and the lower one at three quarters.
     """
-    theta = 2 * np.pi * (np.arange(points) / points - 0.25)
-    order = np.arange(2, 2 + parts.size // 2)[:, None]
-    difference = parts[0::2] @ np.cos(order * theta) + parts[1::2] @ np.sin(order * theta)
-    return np.cos(theta), np.asarray(difference, dtype=np.float64)
+    theta = 2 * np.pi * ((np.arange(points) + 0.5) / points - 0.25)
+    whole = int(trace.samples.size // trace.period * trace.period) if trace.period > 0 else 0
+    if whole < 3 * points:
+        return np.cos(theta), _fitted(trace.parts, theta)
+    samples = trace.samples[:whole]
+    turn = np.exp(-2j * np.pi * np.arange(whole) / trace.period)
+    fundamental = 2.0 * np.mean((samples - samples.mean()) * turn)
+    if abs(fundamental) == 0.0:
+        return np.cos(theta), np.zeros(points)
+    angle = np.angle(np.conj(turn) * fundamental)
+    rest = (samples - samples.mean()) / abs(fundamental) - np.cos(angle)
+    place = ((angle / (2 * np.pi) + 0.25) % 1.0 * points).astype(int) % points
+    count = np.bincount(place, minlength=points)
+    if not count.all():
+        return np.cos(theta), _fitted(trace.parts, theta)
+    return np.cos(theta), np.bincount(place, weights=rest, minlength=points) / count
+
+
+def _fitted(parts: Curve, theta: Curve) -> Curve:
+    """Give the difference of the fitted shape from its fundamental."""
+    return np.asarray(shape_at(parts, theta) - np.cos(theta))
 
 
 def magnification(difference: Curve) -> int:
@@ -53,26 +92,27 @@ def drawn(curve: Curve, low: float, high: float, rows: int, dots: Dots) -> Mask:
     Mask
         Shape (rows * dots high, curve.size).
     """
-    pixels = rows * dots.value[1]
-    place = (high - curve) / (high - low) * (pixels - 1)
-    at = np.clip(np.rint(place), 0, pixels - 1).astype(int)
+    at = _pixel(curve, low, high, rows, dots)
     before = np.concatenate([at[:1], at[:-1]])
     half = (at + before) // 2
-    top = np.minimum(at, np.where(at > before, half + 1, half))[None, :]
-    bottom = np.maximum(at, np.where(at > before, half + 1, half))[None, :]
-    line = np.arange(pixels)[:, None]
-    return np.asarray((line >= np.minimum(top, at)) & (line <= np.maximum(bottom, at)))
+    far = np.where(at > before, half + 1, half)
+    line = np.arange(rows * dots.value[1])[:, None]
+    return np.asarray((line >= np.minimum(at, far)) & (line <= np.maximum(at, far)))
 
 
-def wave(
-    parts: NDArray[np.float64] | None, width: int, rows: int, dots: Dots = Dots.BRAILLE
-) -> Picture:
-    """Draw the period, its difference from the ideal sine magnified, over the dotted ideal sine.
+def _pixel(curve: Curve, low: float, high: float, rows: int, dots: Dots) -> NDArray[np.intp]:
+    pixels = rows * dots.value[1]
+    place = (high - curve) / (high - low) * (pixels - 1)
+    return np.clip(np.rint(place), 0, pixels - 1).astype(np.intp)
+
+
+def wave(trace: Trace | None, width: int, rows: int, dots: Dots = Dots.BRAILLE) -> Picture:
+    """Draw the period over its ideal sine.
 
     Parameters
     ----------
-    parts
-        Shape (2(K-1),), ratios; None where nothing has been read yet.
+    trace
+        What to draw; None where nothing has been read yet.
     width, rows
         Size in cells, the caption's row included.
     dots
@@ -81,39 +121,77 @@ def wave(
     Returns
     -------
     Picture
-        A caption with the magnification and the size of 1 row in percent, then the curves.
+        A caption; the period with its difference from the dotted ideal sine magnified and filled in;
+        with room for it, the difference again by itself over a scale in percent.
     """
-    if parts is None or rows < 3 or width < 12:
-        return (row("shape", width, "quiet"), *(row("", width) for _ in range(rows - 1)))
-    points = width * dots.value[0]
-    ideal, difference = shape(parts, points)
-    times = magnification(difference)
-    high = 1.0 + _ROOM
-    trace = drawn(ideal + times * difference, -high, high, rows - 1, dots)
-    faint = drawn(ideal, -high, high, rows - 1, dots)
-    faint[:, 1::2] = False
-    per_row = 100.0 * 2 * high / (rows - 1) / times
-    caption = f"shape, difference ×{times}, a row {per_row:.2g} %"
-    return (row(caption, width, "quiet"), *_laid(trace, faint, dots))
+    if trace is None or rows < 3 or width < 12:
+        return (row("shape", width, "quiet"), *blank(width, rows - 1))
+    if rows < _APART:
+        ideal, difference = period_of(trace, width * dots.value[0])
+        return (_caption(difference, width), *_over(ideal, difference, rows - 1, dots))
+    under = max(4, (rows - 2) * 2 // 5)
+    ideal, difference = period_of(trace, width * dots.value[0])
+    return (
+        _caption(difference, width),
+        *_over(ideal, difference, rows - 2 - under, dots),
+        *_strip(trace, width, under + 1, dots),
+    )
 
 
-def _laid(trace: Mask, faint: Mask, dots: Dots) -> Picture:
-    """Lay the trace over the faint curve; a cell shows one of them, so that they differ in role."""
-    above, below = told(trace, dots), told(faint, dots)
-    rows: list[Row] = []
-    for top, under in zip(above, below, strict=True):
-        runs: list[Run] = []
-        for ink, pale in zip(top, under, strict=True):
-            role: Role = "trace" if ink != " " else "ideal"
-            text = ink if ink != " " else _pale(pale, dots)
-            if runs and runs[-1].role == role:
-                runs[-1] = Run(runs[-1].text + text, role)
-            else:
-                runs.append(Run(text, role))
-        rows.append(tuple(runs))
-    return tuple(rows)
+def _caption(difference: Curve, width: int) -> Row:
+    times, peak = magnification(difference), 100.0 * float(np.max(np.abs(difference)))
+    text = longest(
+        width,
+        f"shape against its ideal sine, difference ×{times}, {peak:.2f} % at most",
+        f"shape, difference ×{times}, {peak:.2f} % at most",
+        f"difference ×{times}, peak {peak:.2f} %",
+        f"×{times}",
+    )
+    return row(text, width, "quiet")
 
 
-def _pale(cell: str, dots: Dots) -> str:
-    """Give the ideal sine's cell; without braille a dot, so that the two differ by glyph."""
-    return cell if dots is Dots.BRAILLE or cell == " " else "·"
+def _over(ideal: Curve, difference: Curve, rows: int, dots: Dots) -> Picture:
+    """Lay the magnified period over the ideal sine, the space between them dotted."""
+    shown = ideal + magnification(difference) * difference
+    high = float(max(1.0, np.max(np.abs(shown)))) * 1.02
+    line = drawn(shown, -high, high, rows, dots)
+    sine = drawn(ideal, -high, high, rows, dots)
+    a, b = _pixel(shown, -high, high, rows, dots), _pixel(ideal, -high, high, rows, dots)
+    y, x = np.indices(line.shape)
+    between = (y >= np.minimum(a, b)) & (y <= np.maximum(a, b)) & ((x + y) % 2 == 0)
+    return _layers(((line | between, line, "trace"), (sine, sine, "ideal")), dots)
+
+
+def _strip(trace: Trace, width: int, rows: int, dots: Dots) -> Picture:
+    """Draw the difference by itself: its scale to the left, its zero as a line."""
+    label = 8
+    _, difference = period_of(trace, (width - label) * dots.value[0])
+    peak = 100.0 * float(np.max(np.abs(difference)))
+    scale = next((step for step in _SCALES if step >= peak), 100.0)
+    high = scale / 100.0
+    curve = drawn(difference, -high, high, rows, dots)
+    zero = drawn(np.zeros_like(difference), -high, high, rows, dots)
+    body = _layers(((curve, curve, "care"), (zero, zero, "ideal")), dots)
+    marks = {0: f"+{scale:g} %", rows // 2: "0", rows - 1: f"-{scale:g} %"}
+    return tuple(
+        (Run(f"{marks.get(y, ''):>{label - 1}} ", "quiet"), *runs) for y, runs in enumerate(body)
+    )
+
+
+def _layers(layers: tuple[tuple[Mask, Mask, Role], ...], dots: Dots) -> Picture:
+    """Lay pictures over each other; a cell belongs to the first that has ink there.
+
+    Each is what to show, what it takes a cell for, and its role. Without braille the ideal sine is
+    told by dots, so that two curves differ by glyph and not by colour alone.
+    """
+    cells: list[list[tuple[str, Role]]] = []
+    for ink, claim, role in reversed(layers):
+        glyphs, claims = told(ink, dots), told(claim | ink, dots)
+        if not cells:
+            cells = [[(" ", role)] * len(glyphs[0]) for _ in glyphs]
+        for y, line in enumerate(glyphs):
+            for x, glyph in enumerate(line):
+                if claims[y][x] != " ":
+                    plain = dots is Dots.BLOCK and role == "ideal"
+                    cells[y][x] = ("·" if plain else glyph, role)
+    return tuple(joined(line) for line in cells)

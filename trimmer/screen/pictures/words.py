@@ -52,7 +52,7 @@ def setting(ways: Ways, width: int, height: int) -> tuple[tuple[str, Size], ...]
     for lines in ways:
         for head, tail in product(SIZES, SIZES):
             sizes = [head, *[tail] * (len(lines) - 1)]
-            total = sum(size.rows for size in sizes)
+            total = sum(size.rows + size.air for size in sizes) - sizes[-1].air
             if tail.rows > head.rows or total > height:
                 continue
             if any(size.width(line) > width for line, size in zip(lines, sizes, strict=True)):
@@ -80,7 +80,9 @@ def words(ways: Ways, aside: str, width: int, height: int, ground: Ground = "bar
     """
     margin = 0 if ground == "bare" else 2
     chosen = setting(ways, width - 2 * margin, height)
-    lines = [line for text, size in chosen for line in letters(text, size)]
+    lines = [line for text, size in chosen for line in [*letters(text, size), *[""] * size.air]][
+        : -chosen[-1][1].air or None if chosen else None
+    ]
     if not chosen:
         lines = [fitted(" ".join(ways[0]), width)]
     small = [aside] if aside and len(lines) + 1 <= height else []

@@ -33,7 +33,7 @@ def keys_row(keys: tuple[Key, ...], width: int) -> Row:
             continue
         if runs:
             runs.append(Run("  ", "quiet"))
-        runs += [Run(cap, "strong", key.action), Run(does, "quiet", key.action)]
+        runs += [Run(cap, "cap", key.action), Run(does, "quiet", key.action)]
         used += needed
     return (*runs, Run(" " * (width - used), "quiet"))
 

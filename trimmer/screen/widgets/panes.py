@@ -4,25 +4,23 @@ from __future__ import annotations
 
 from textual.reactive import reactive
 
-from trimmer.measurement.reading import Reading
 from trimmer.screen.pictures.course import Floor, Step, course
 from trimmer.screen.pictures.parts import Split, parts_table
 from trimmer.screen.pictures.raster import Dots
 from trimmer.screen.pictures.runs import Picture
-from trimmer.screen.pictures.wave import wave
+from trimmer.screen.pictures.wave import Trace, wave
 from trimmer.screen.widgets.picture import PictureWidget
 
 
 class ShapeWidget(PictureWidget):
     """One period against its ideal sine."""
 
-    reading: reactive[Reading | None] = reactive(None)
+    trace: reactive[Trace | None] = reactive(None)
     dots: reactive[Dots] = reactive(Dots.BRAILLE)
 
     def picture(self, width: int, height: int) -> Picture:
         """Draw the period and its magnified difference."""
-        parts = None if self.reading is None else self.reading.parts
-        return wave(parts, width, height, self.dots)
+        return wave(self.trace, width, height, self.dots)
 
 
 class PartsWidget(PictureWidget):

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import ClassVar, Self
+from typing import ClassVar, Self, get_args
 
 from rich.segment import Segment
 from rich.style import Style
@@ -10,16 +10,13 @@ from textual.geometry import Region
 from textual.strip import Strip
 from textual.widget import Widget
 
-from trimmer.screen.pictures.runs import Picture
+from trimmer.screen.pictures.runs import Picture, Role
 
 
 class PictureWidget(Widget):
     """Shows what `picture` draws; drawn again when a reactive or the size changes."""
 
-    COMPONENT_CLASSES: ClassVar[set[str]] = {
-        f"role--{role}"
-        for role in ("plain", "strong", "quiet", "go", "care", "halt", "trace", "ideal")
-    }
+    COMPONENT_CLASSES: ClassVar[set[str]] = {f"role--{role}" for role in get_args(Role)}
     can_focus = False
 
     _drawn: tuple[tuple[int, int], Picture] | None = None

@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+from textual.geometry import Size
 from textual.reactive import reactive
 
 from trimmer.guidance.advice import Say, Sense
 from trimmer.screen.orders import Order, slot_radians
 from trimmer.screen.pictures.bar import bar
-from trimmer.screen.pictures.runs import Picture, Role, picture, row
+from trimmer.screen.pictures.runs import Picture, Role, fitted, picture, row, wrapped
 from trimmer.screen.pictures.signs import sign
 from trimmer.screen.pictures.words import words
 from trimmer.screen.widgets.picture import PictureWidget
@@ -56,7 +57,7 @@ class BarWidget(PictureWidget):
 
 
 class LineWidget(PictureWidget):
-    """Lines of plain text, cut to the width; what does not fit is counted on the last."""
+    """Lines of plain text, one to a row; what does not fit is counted on the last."""
 
     lines: reactive[tuple[str, ...]] = reactive(())
     role: reactive[Role] = reactive("plain")
@@ -67,8 +68,29 @@ class LineWidget(PictureWidget):
         left = len(self.lines) - height
         if left > 0 and shown:
             tail = f"  (+{left} more)"
-            shown[-1] = shown[-1][: max(0, width - len(tail))] + tail
+            shown[-1] = fitted(shown[-1], max(0, width - len(tail))).rstrip() + tail
         return tuple(row(line, width, self.role) for line in shown)
+
+
+class WordyWidget(PictureWidget):
+    """Sentences over as many rows as they need, up to `MOST`."""
+
+    MOST = 3
+    sentences: reactive[tuple[str, ...]] = reactive((), layout=True)
+
+    def get_content_height(self, _container: Size, _viewport: Size, width: int) -> int:
+        """Count the rows."""
+        return max(2, len(self._broken(width, self.MOST)))
+
+    def picture(self, width: int, height: int) -> Picture:
+        """Break the sentences at their spaces."""
+        return tuple(row(line, width) for line in self._broken(width, height))
+
+    def _broken(self, width: int, rows: int) -> list[str]:
+        """Begin each sentence on a row of its own; the first one gives way to the others."""
+        first, *others = self.sentences or ("",)
+        after = [line for text in others for line in wrapped(text, width, max(1, rows - 1))]
+        return [*wrapped(first, width, max(1, rows - len(after))), *after][:rows]
 
 
 def _role(order: Order) -> Role:
