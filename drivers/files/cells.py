@@ -1,0 +1,204 @@
+"""What a cell of a table holds: a number in some convention, an overrange mark, a time of day, text."""
+
+from __future__ import annotations
+
+import math
+import re
+from collections.abc import Iterable
+from dataclasses import dataclass
+
+from drivers.files.units import Unit, parse_prefix, parse_unit
+
+_OVERRANGE_WORDS = (
+    "nan -nan +nan inf +inf -inf infinity -infinity ovl ovr ol o.l o.l. ofl over overflow overrange "
+    "over-range underflow underrange clip clipped n/a #n/a na null none invalid error err "
+    "#num! #value! #div/0! 1.#inf -1.#inf 1.#ind -1.#ind 1.#qnan -1.#qnan \N{INFINITY} "
+    "-\N{INFINITY} +\N{INFINITY}"
+)
+_OVERRANGE = frozenset(_OVERRANGE_WORDS.split())
+_ONLY_MARKS = re.compile(r"^[*\-?.#\u2013\u2014]*[*\-?#\u2013\u2014]+[*\-?.#\u2013\u2014]*$")
+_BLANKS = (
+    " '\N{NO-BREAK SPACE}\N{NARROW NO-BREAK SPACE}\N{THIN SPACE}\N{RIGHT SINGLE QUOTATION MARK}"
+)
+_NUMBER = re.compile(
+    rf"^(?P<sign>[+\-\N{{MINUS SIGN}}]?)\s*(?P<body>[0-9.,{_BLANKS}]*[0-9.,])"
+    r"(?P<exponent>[eEdD][+\-\N{MINUS SIGN}]?[0-9]{1,4})?\s*(?P<suffix>[^\s0-9.,+\-][^0-9]{0,12})?$"
+)
+_DATE = re.compile(r"^\d{1,4}[./\-]\d{1,2}[./\-]\d{1,4}$")
+_CLOCK = re.compile(
+    r"^(?:\d{1,4}[./\-]\d{1,2}[./\-]\d{1,4}[T ]\s*)?"
+    r"(\d{1,2}):(\d\d):(\d\d)(?:[.,:](\d{1,9}))?\s*(?:Z|[+\-]\d\d:?\d\d)?$"
+)
+
+
+@dataclass(frozen=True, slots=True)
+class Convention:
+    """How numbers are written."""
+
+    decimal: str = "."
+    """The decimal mark."""
+    thousands: str = ""
+    """The mark between groups of three digits, besides blanks; empty for none."""
+
+
+@dataclass(frozen=True, slots=True)
+class Number:
+    """A number and the unit written behind it."""
+
+    value: float
+    """The number, in the unit's base; NaN for an overrange mark."""
+    unit: Unit | None = None
+    """The unit behind the number; a bare prefix gives the base ''."""
+
+
+def parse_cell(cell: str, convention: Convention) -> Number | None:
+    """Read a cell as a number; NaN for an overrange mark or an empty cell, None for text."""
+    if convention.decimal == "." and "_" not in cell:
+        try:
+            value = float(cell)
+        except ValueError:
+            pass
+        else:
+            return Number(value if math.isfinite(value) else math.nan)
+    cell = cell.strip()
+    if is_overrange(cell):
+        return Number(math.nan)
+    found = _NUMBER.match(cell)
+    if found is None or (digits := _plain(found["body"], convention)) is None:
+        return None
+    exponent = (found["exponent"] or "").replace("\N{MINUS SIGN}", "-").upper().replace("D", "E")
+    value = float(digits + exponent)
+    if found["sign"] in ("-", "\N{MINUS SIGN}"):
+        value = -value
+    return _with_suffix(value, found["suffix"])
+
+
+def is_overrange(cell: str) -> bool:
+    """Say whether a stripped cell stands for a value that could not be had."""
+    return not cell or cell.casefold() in _OVERRANGE or bool(_ONLY_MARKS.match(cell))
+
+
+def _with_suffix(value: float, suffix: str | None) -> Number | None:
+    if suffix is None:
+        return Number(value if math.isfinite(value) else math.nan)
+    if (unit := parse_unit(suffix)) is not None:
+        return Number(value * unit.factor, unit)
+    if (size := parse_prefix(suffix.strip())) is not None:
+        return Number(value * size, Unit("", size))
+    return None
+
+
+def _plain(body: str, convention: Convention) -> str | None:
+    """Give the digits with a decimal point and without group marks; None where they do not fit."""
+    whole, mark, fraction = body.partition(convention.decimal)
+    if mark and not fraction.isdigit() and (fraction or mark == ","):
+        return None  # `5.` is a number, `5,` is a number and a delimiter
+    if not whole.isdigit() and whole:
+        groups = re.split(f"[{re.escape(_BLANKS + convention.thousands)}]", whole)
+        if not _grouped(groups):
+            return None
+        whole = "".join(groups)
+    return f"{whole}.{fraction}" if whole or fraction else None
+
+
+def _grouped(groups: list[str]) -> bool:
+    first, rest = groups[0], groups[1:]
+    if not first.isdigit() or len(first) > 3 or first.startswith("0"):
+        return False
+    return all(len(group) == 3 and group.isdigit() for group in rest)
+
+
+def is_date(cell: str) -> bool:
+    """Say whether a cell is a date, which looks like a number with two marks."""
+    return bool(_DATE.match(cell.strip()))
+
+
+def parse_clock(cell: str) -> float | None:
+    """Read a time of day, with or without a date before it, as seconds; None where it is none."""
+    found = _CLOCK.match(cell.strip())
+    if found is None:
+        return None
+    hours, minutes, seconds = (int(found[part]) for part in (1, 2, 3))
+    return hours * 3600.0 + minutes * 60.0 + float(f"{seconds}.{found[4] or 0}")
+
+
+def looks_numeric(cell: str) -> bool:
+    """Say whether a stripped cell could be a number in some convention, or stands for one."""
+    return bool(_NUMBER.match(cell)) or is_overrange(cell) or parse_clock(cell) is not None
+
+
+def last_place(cell: str, convention: Convention) -> tuple[int, int] | None:
+    """Tell how finely a number is printed.
+
+    Returns
+    -------
+    tuple of int or None
+        Decimal exponent of the last digit printed (-6 for ``0.000001``), and the count of
+        significant digits. None for text.
+    """
+    if clock := _CLOCK.match(cell.strip()):
+        return -len(clock[4] or ""), 5 + len(clock[4] or "")
+    found = _NUMBER.match(cell.strip())
+    if found is None or (digits := _plain(found["body"], convention)) is None:
+        return None
+    fraction = digits.partition(".")[2]
+    exponent = (found["exponent"] or "e0").replace("\N{MINUS SIGN}", "-")[1:]
+    significant = len(digits.replace(".", "").lstrip("0")) or 1
+    return int(exponent) - len(fraction), significant
+
+
+def find_convention(cells: Iterable[str]) -> Convention | None:
+    """Find the decimal mark from the numbers themselves.
+
+    A sine passes through zero, so that grouped numbers have ungrouped ones among them; a comma
+    in every number is a decimal mark.
+
+    Returns
+    -------
+    Convention or None
+        None where points and commas contradict each other.
+    """
+    bodies = [
+        found["body"]
+        for cell in cells
+        if (found := _NUMBER.match(cell.strip())) and not is_date(cell)
+    ]
+    points = [body for body in bodies if "." in body]
+    commas = [body for body in bodies if "," in body]
+    both = [body for body in bodies if "." in body and "," in body]
+    if both:
+        last = {"," if body.rfind(",") > body.rfind(".") else "." for body in both}
+        return _chosen(last.pop(), bodies) if len(last) == 1 else None
+    if points and commas:
+        fits = [mark for mark in ".," if _fits(_other(mark), mark, bodies)]
+        return _chosen(fits[0], bodies) if len(fits) == 1 else None
+    if commas:
+        return _one_mark(",", bodies, commas)
+    return _one_mark(".", bodies, points) if points else Convention()
+
+
+def _other(mark: str) -> str:
+    return "," if mark == "." else "."
+
+
+def _fits(thousands: str, decimal: str, bodies: list[str]) -> bool:
+    convention = Convention(decimal, thousands)
+    return all(_plain(body, convention) is not None for body in bodies)
+
+
+def _chosen(decimal: str, bodies: list[str]) -> Convention | None:
+    thousands = _other(decimal)
+    return Convention(decimal, thousands) if _fits(thousands, decimal, bodies) else None
+
+
+def _one_mark(mark: str, bodies: list[str], marked: list[str]) -> Convention | None:
+    """Settle a file whose numbers show only commas, or only points."""
+    if any(body.count(mark) > 1 for body in marked):
+        return _chosen(_other(mark), bodies)
+    if mark == ".":
+        return Convention()
+    as_groups = _fits(",", ".", bodies)
+    whole = [body for body in bodies if mark not in body]
+    if as_groups and whole and all(len(body.lstrip("0")) <= 3 for body in whole):
+        return Convention(".", ",")
+    return Convention(",")

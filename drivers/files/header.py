@@ -1,0 +1,180 @@
+"""What the rows above the numbers say: names and units of columns, and facts of the capture."""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass, field
+
+from drivers.contract import UnusableCapture, clean
+from drivers.files.block import Block
+from drivers.files.cells import parse_cell
+from drivers.files.facts import Fact, collect
+from drivers.files.layout import Layout
+from drivers.files.units import Unit, parse_unit, unit_in_name
+from drivers.files.vocabulary import (
+    CODE_NAMES,
+    FREQUENCY_NAMES,
+    INDEX_NAMES,
+    TIME_NAMES,
+    concept_of,
+    squeeze,
+)
+
+_COMMENT = re.compile(r'^[\s"]*(?:#|%|//|!|\*|;|--)+\s*')
+_NAME_AND_UNIT = re.compile(r"[^\s()\[\]{}][^()\[\]{}]*[(\[{][^()\[\]{}]*[)\]}]")
+
+
+@dataclass(frozen=True, slots=True)
+class Column:
+    """What is known of a column of numbers."""
+
+    place: int
+    """Index among the columns with numbers."""
+    name: str = ""
+    """Its name, as the file has it."""
+    unit: Unit | None = None
+    """Its unit, where stated."""
+    unit_text: str = ""
+    """The units row's own word where it is none known here."""
+
+    @property
+    def word(self) -> str:
+        """The name without unit, blanks and case."""
+        return squeeze(self.name)
+
+    @property
+    def is_time(self) -> bool:
+        """True where name or unit says time."""
+        return (self.unit is not None and self.unit.base == "s") or self.word in TIME_NAMES
+
+    @property
+    def is_index(self) -> bool:
+        """True where name or unit says that rows are counted here."""
+        if self.unit is not None and self.unit.base != "index":
+            return False
+        return self.unit is not None or self.word in INDEX_NAMES
+
+    @property
+    def is_code(self) -> bool:
+        """True where name or unit says digitiser codes."""
+        if self.unit is not None:
+            return self.unit.base == "code"
+        return self.word in CODE_NAMES
+
+    @property
+    def is_frequency(self) -> bool:
+        """True where name or unit says frequency."""
+        return (self.unit is not None and self.unit.base == "Hz") or self.word in FREQUENCY_NAMES
+
+    @property
+    def is_volts(self) -> bool:
+        """True where the unit is stated to be volts."""
+        return self.unit is not None and self.unit.base == "V"
+
+
+@dataclass(frozen=True, slots=True)
+class Header:
+    """Names, units and facts."""
+
+    columns: tuple[Column, ...]
+    """One for each column of numbers."""
+    facts: dict[str, list[Fact]] = field(default_factory=dict)
+    """Values stated, by concept; several where the file has one for each channel."""
+
+    def first(self, concept: str) -> Fact | None:
+        """Give the first value stated for a concept."""
+        return next(iter(self.facts.get(concept, ())), None)
+
+    def number(self, concept: str, channel: int = 1) -> float | None:
+        """Give the number stated for a concept: the channel's own where there are several."""
+        facts = [fact for fact in self.facts.get(concept, ()) if fact.number is not None]
+        if not facts:
+            return None
+        return facts[channel - 1 if len(facts) >= channel else 0].number
+
+
+def read_header(block: Block, layout: Layout) -> Header:
+    """Read what stands above and beside the numbers."""
+    rows = [row for row in map(_uncommented, block.header) if any(row)]
+    names, units = _name_rows(rows, layout)
+    columns = tuple(
+        _column(place, names.get(column, ""), units.get(column, ""), block.units[place])
+        for place, column in enumerate(layout.columns)
+    )
+    facts: dict[str, list[Fact]] = {}
+    following: list[list[str]] = [*rows[1:], []]
+    for row, below in zip(rows, following, strict=False):
+        collect(row, below, layout.convention, facts)
+    for row in block.beside:
+        collect(_uncommented(row), [], layout.convention, facts)
+    return Header(columns, facts)
+
+
+def _uncommented(row: list[str]) -> list[str]:
+    first = _COMMENT.sub("", row[0]) if row else ""
+    rest = row[1:]
+    return [first.strip().strip('"'), *rest] if first or not row or not row[0] else rest or [""]
+
+
+def _column(place: int, name: str, unit_text: str, written: Unit | None) -> Column:
+    unit = parse_unit(unit_text) or unit_in_name(name) or parse_unit(name)
+    if written is not None and written.base:
+        unit = Unit(written.base)
+    elif written is not None and unit is not None and unit.factor != 1.0:
+        raise UnusableCapture(
+            f"column {clean(name, 40)!r} states a scaled unit and its numbers carry prefixes too",
+            "Save with plain numbers.",
+        )
+    return Column(place, name, unit, "" if unit else unit_text)
+
+
+def _name_rows(rows: list[list[str]], layout: Layout) -> tuple[dict[int, str], dict[int, str]]:
+    """Find the names row and the units row among the last rows of the header."""
+    above = [cells for row in rows[-3:] if (cells := _aligned(row, layout))]
+    if not above:
+        return {}, {}
+    last = above[-1]
+    if len(above) > 1 and _is_units(last):
+        return above[-2], last
+    if len(above) > 1 and _is_half_units(last) and len(above[-2]) == len(last):
+        return above[-2], last
+    if _is_units(last):
+        return last, last
+    return last, {}
+
+
+def _aligned(row: list[str], layout: Layout) -> dict[int, str]:
+    """Put a header row's cells over the columns; empty where they cannot belong together."""
+    if layout.delimiter is None:
+        row = _respaced(row, len(layout.columns))
+    cells = {column: row[column] for column in layout.columns if column < len(row) and row[column]}
+    words = [cell for cell in cells.values() if parse_cell(cell, layout.convention) is None]
+    if not words or (len(cells) < len(layout.columns) and concept_of(row[0])[0]):
+        return {}
+    if len(layout.columns) > 1 and len(cells) < 2:
+        return {}
+    key, _ = concept_of(row[0])
+    if key and key not in ("interval", "y_unit") and not _is_all_words(row, layout):
+        return {}
+    return cells
+
+
+def _is_all_words(row: list[str], layout: Layout) -> bool:
+    return all(not cell or parse_cell(cell, layout.convention) is None for cell in row)
+
+
+def _respaced(row: list[str], wanted: int) -> list[str]:
+    """Blanks part the names too: join them again by their units in brackets."""
+    if len(row) == wanted:
+        return row
+    line = " ".join(row)
+    joined = _NAME_AND_UNIT.findall(line)
+    return joined if len(joined) == wanted else row
+
+
+def _is_units(cells: dict[int, str]) -> bool:
+    return all(parse_unit(cell) is not None for cell in cells.values())
+
+
+def _is_half_units(cells: dict[int, str]) -> bool:
+    return any(parse_unit(cell) is not None for cell in cells.values())
