@@ -6,12 +6,12 @@ from collections.abc import Iterable
 from typing import ClassVar
 
 from textual.app import App, SystemCommand
-from textual.binding import Binding, BindingType
+from textual.binding import BindingType
 from textual.screen import Screen
 
 from trimmer.reports import Conversation
 from trimmer.screen.cautions import CautionsScreen
-from trimmer.screen.commands import commands, deeds, perform
+from trimmer.screen.commands import commands, deeds, key, perform
 from trimmer.screen.help import HelpScreen
 from trimmer.screen.interrupts import on_interrupt
 from trimmer.screen.options import Options
@@ -31,12 +31,12 @@ class TuneApp(App[int]):
     CSS_PATH = "look.tcss"
     TITLE = "trimmer"
     BINDINGS: ClassVar[list[BindingType]] = [
-        Binding("q", "leave", "End", show=False),
-        Binding("ctrl+c,ctrl+q", "leave", "End", show=False, priority=True),
-        Binding("question_mark,f1", "explain", "Help", show=False),
-        Binding("c", "caution", "Cautions", show=False),
-        Binding("t", "turn_light", "Light or dark", show=False),
-        Binding("ctrl+p", "command_palette", "Every action by name", show=False),
+        key("q", "leave", "End", "What was measured so far is in the book."),
+        key("ctrl+c,ctrl+q", "leave", "End at once", "What was measured so far is in the book."),
+        key("question_mark,f1", "explain", "Help"),
+        key("c", "caution", "Cautions"),
+        key("t", "turn_light", "Light or dark"),
+        key("ctrl+p", "command_palette", "Every action by name"),
     ]
 
     def __init__(self, session: Conversation, options: Options) -> None:
@@ -89,8 +89,8 @@ class TuneApp(App[int]):
         """Show the help of the screen in front."""
         beneath = self.screen
         if not isinstance(beneath, HelpScreen):
-            listed = tuple(deeds(self, beneath))
-            self.push_screen(HelpScreen(listed), lambda act: perform(self, beneath, act))
+            shown = HelpScreen(beneath.HELP or "", tuple(deeds(self, beneath)))
+            self.push_screen(shown, lambda act: perform(self, beneath, act))
 
     def action_caution(self) -> None:
         """Show the cautions again."""

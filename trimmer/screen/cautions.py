@@ -5,11 +5,14 @@ from __future__ import annotations
 from typing import ClassVar
 
 from textual.app import ComposeResult
-from textual.binding import Binding, BindingType
+from textual.binding import BindingType
 from textual.containers import VerticalScroll
+from textual.content import Content
 from textual.screen import Screen
 from textual.widgets import Static
 
+from trimmer.screen import help_words
+from trimmer.screen.commands import key
 from trimmer.screen.widgets.keys import Key, KeysWidget
 
 OPENING = "Before the case is opened"
@@ -47,8 +50,8 @@ CAUTIONS: tuple[tuple[str, str], ...] = (
     ),
 )
 READY = (
-    "To begin: signal on a sine of about 1 kHz, load as in use, input DC coupled, level inside "
-    "the range, a quarter of an hour of warm-up. Uneven rise and fall is set before the two trims."
+    "To begin: a sine of about 1 kHz, loaded as in use, input DC coupled, level inside the range, "
+    "a quarter of an hour warm (common practice). Set uneven rise and fall before the two trims."
 )
 
 
@@ -56,8 +59,10 @@ class CautionsScreen(Screen[bool]):
     """Shows the cautions; gives True when they were read."""
 
     CSS_PATH = "cautions.tcss"
+    HELP = help_words.CAUTIONS
+    VERTICAL_BREAKPOINTS = [(0, "-short"), (30, "-tall")]  # noqa: RUF012 - declared so by the base class
     BINDINGS: ClassVar[list[BindingType]] = [
-        Binding("enter,space,escape", "go_on", "I have read this: go on", show=False),
+        key("enter,space,escape", "go_on", "I have read this: go on"),
     ]
 
     def compose(self) -> ComposeResult:
@@ -65,8 +70,7 @@ class CautionsScreen(Screen[bool]):
         yield Static(OPENING, id="title", markup=False)
         with VerticalScroll(id="cautions"):
             for headline, rest in CAUTIONS:
-                yield Static(headline, classes="headline", markup=False)
-                yield Static(rest, classes="rest", markup=False)
+                yield Static(Content.assemble((headline, "bold $warning"), f" {rest}"))
             yield Static(READY, id="ready", markup=False)
         yield KeysWidget(id="keys")
 

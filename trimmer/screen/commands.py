@@ -41,9 +41,14 @@ class Deed:
     name: str
     """What it does."""
     more: str
-    """The same in a sentence."""
+    """More about it, in a sentence; may be empty."""
     action: str
     """The action, with the name of whoever does it."""
+
+
+def key(keys: str, action: str, name: str, more: str = "") -> Binding:
+    """Bind keys, separated by commas, to an action that has a name and a sentence."""
+    return Binding(keys, action, name, show=False, tooltip=more, priority="ctrl+c" in keys)
 
 
 def deeds(app: App[int], screen: Screen[object]) -> Iterator[Deed]:
@@ -51,9 +56,9 @@ def deeds(app: App[int], screen: Screen[object]) -> Iterator[Deed]:
     for owner, where in ((screen, "screen"), (app, "app")):
         for binding in type(owner).BINDINGS:
             if isinstance(binding, Binding) and _possible(owner, binding.action):
-                caps = tuple(_CAPS.get(key, key) for key in binding.key.split(","))
+                caps = tuple(_CAPS.get(name, name) for name in binding.key.split(","))
                 name = binding.description
-                yield Deed(caps, name, binding.tooltip or name, f"{where}.{binding.action}")
+                yield Deed(caps, name, binding.tooltip, f"{where}.{binding.action}")
 
 
 def _possible(owner: App[int] | Screen[object], action: str) -> bool:
@@ -63,7 +68,9 @@ def _possible(owner: App[int] | Screen[object], action: str) -> bool:
 def commands(app: App[int], screen: Screen[object]) -> Iterator[SystemCommand]:
     """Give the deeds as entries of the command palette."""
     for deed in deeds(app, screen):
-        yield SystemCommand(deed.name, deed.more, partial(perform, app, screen, deed.action))
+        yield SystemCommand(
+            deed.name, deed.more or deed.name, partial(perform, app, screen, deed.action)
+        )
 
 
 def perform(app: App[int], screen: Screen[object], action: str | None) -> None:

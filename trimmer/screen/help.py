@@ -5,37 +5,16 @@ from __future__ import annotations
 from typing import ClassVar
 
 from textual.app import ComposeResult
-from textual.binding import Binding, BindingType
+from textual.binding import BindingType
 from textual.containers import VerticalScroll
 from textual.reactive import reactive
 from textual.screen import ModalScreen
 from textual.widgets import Static
 
-from trimmer.screen.commands import Deed
+from trimmer.screen.commands import Deed, key
 from trimmer.screen.pictures.runs import Picture, Run, fitted
 from trimmer.screen.widgets.keys import Key, KeysWidget
 from trimmer.screen.widgets.picture import PictureWidget
-
-TUNING = """\
-At the top stands what to do now: which trim, which way round, how far. The arrow and the bar go the \
-way the top of the screw goes. Turn until the bar has reached the mark; no key is needed where the \
-tool watches the hand.
-
-Bars across the picture: nearly there, go slowly. All inked: stop. A chequer and a cross: that is the \
-other trim. Slanting lines and an arrow that goes back: the wrong way round. An hourglass: leave both \
-alone for a moment.
-
-Below the bar stands why, and what distortion (THD) to expect. It may rise with one turn and fall \
-with the next: that is said beforehand.
-
-Shape: one period as it is, with its difference from the ideal sine (dotted) made larger. Parts: what \
-each order adds at the crests and what leans in time; full ink is what the two trims can take away, \
-grey is what they cannot. THD by turn runs down to the floor, the grey band: less than that no turn \
-of these trims can give, and what it is made of is on the sheet at the end.
-
-The line at the bottom says what the tool waits for, how old the reading is, where it comes from, and \
-what the book already has. Each reading is in the book as soon as it is shown.
-"""
 
 
 class DeedsWidget(PictureWidget):
@@ -48,7 +27,7 @@ class DeedsWidget(PictureWidget):
         return tuple(
             (
                 Run(fitted(" / ".join(deed.keys), 22), "cap", f"screen.pick({at})"),
-                Run(fitted(deed.more, width - 22), "plain", f"screen.pick({at})"),
+                Run(fitted(_said(deed), width - 22), "plain", f"screen.pick({at})"),
             )
             for at, deed in enumerate(self.deeds[:height])
         )
@@ -58,15 +37,19 @@ class DeedsWidget(PictureWidget):
         return len(self.deeds)
 
 
+def _said(deed: Deed) -> str:
+    return f"{deed.name}. {deed.more}" if deed.more else deed.name
+
+
 class HelpScreen(ModalScreen[str | None]):
     """Explains the screen beneath; gives the action that was picked, or nothing."""
 
     CSS_PATH = "help.tcss"
     BINDINGS: ClassVar[list[BindingType]] = [
-        Binding("escape,enter,question_mark,f1", "close", "Close the help", show=False),
+        key("escape,enter,question_mark,f1", "close", "Close the help"),
     ]
 
-    def __init__(self, deeds: tuple[Deed, ...], words: str = TUNING) -> None:
+    def __init__(self, words: str, deeds: tuple[Deed, ...]) -> None:
         super().__init__()
         self._deeds = deeds
         self._words = words
@@ -83,12 +66,17 @@ class HelpScreen(ModalScreen[str | None]):
         self.query_one(DeedsWidget).deeds = self._deeds
         self.query_one(KeysWidget).keys = (
             Key("Esc", "back", "screen.close"),
-            Key("↑↓", "more", "screen.close"),
+            Key("↑", "", "screen.scroll(-8)"),
+            Key("↓", "more", "screen.scroll(8)"),
         )
 
     def action_close(self) -> None:
         """Go back."""
         self.dismiss(None)
+
+    def action_scroll(self, rows: int) -> None:
+        """Go up or down in the text."""
+        self.query_one("#help").scroll_relative(y=rows, animate=False)
 
     def action_pick(self, at: int) -> None:
         """Do what was clicked."""

@@ -5,11 +5,13 @@ from __future__ import annotations
 from typing import ClassVar
 
 from textual.app import ComposeResult
-from textual.binding import Binding, BindingType
+from textual.binding import BindingType
 from textual.containers import Horizontal, VerticalScroll
 from textual.screen import Screen
 from textual.widgets import Static
 
+from trimmer.screen.commands import key
+from trimmer.screen.help_words import SHEET
 from trimmer.screen.orders import order
 from trimmer.screen.sheet_words import failed_lines, sheet_lines
 from trimmer.screen.view import View
@@ -22,9 +24,10 @@ class SheetScreen(Screen[None]):
     """Shows how a session ended."""
 
     CSS_PATH = "sheet.tcss"
+    HELP = SHEET
     VERTICAL_BREAKPOINTS = [(0, "-short"), (32, "-tall")]  # noqa: RUF012 - declared so by the base class
     BINDINGS: ClassVar[list[BindingType]] = [
-        Binding("enter,escape", "close", "Close the sheet", show=False),
+        key("enter,escape,q", "close", "Close the sheet", "It stays in the book."),
     ]
 
     def __init__(self, view: View) -> None:

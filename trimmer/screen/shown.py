@@ -11,6 +11,8 @@ from trimmer.screen.orders import Order, order
 from trimmer.screen.view import View
 from trimmer.screen.widgets.keys import Key
 
+BESIDE = "Simulated: nothing here is live. Inside a real unit mains kills: read c first."
+
 
 @dataclass(frozen=True, slots=True)
 class Shown:
@@ -34,7 +36,9 @@ class Shown:
     """Whether watched readings have stopped."""
 
 
-def shown(view: View, now: float, hand: KeyedHand | None, silent: bool) -> Shown:
+def shown(
+    view: View, now: float, hand: KeyedHand | None, silent: bool, beside: bool = False
+) -> Shown:
     """Work out what to show.
 
     Parameters
@@ -47,6 +51,8 @@ def shown(view: View, now: float, hand: KeyedHand | None, silent: bool) -> Shown
         The hand on the keyboard, where there is one.
     silent
         Whether sounds are off.
+    beside
+        Whether the cautions stand beside the session.
     """
     todo, word = order(view), view.word
     return Shown(
@@ -57,7 +63,7 @@ def shown(view: View, now: float, hand: KeyedHand | None, silent: bool) -> Shown
         lines={
             "upper-rest": resting("upper", todo, hand),
             "lower-rest": resting("lower", todo, hand),
-            "matters": sentences.matters(view),
+            "matters": ((BESIDE,) if beside else ()) + sentences.matters(view),
             "status": (sentences.status(view, now),),
         },
         why=(sentences.why(view), sentences.expectation(view)),

@@ -7,7 +7,7 @@ from typing import ClassVar
 
 from textual import work
 from textual.app import ComposeResult
-from textual.binding import Binding, BindingType
+from textual.binding import BindingType
 from textual.containers import Horizontal
 from textual.message import Message
 from textual.screen import Screen
@@ -16,7 +16,9 @@ from textual.worker import get_current_worker
 from trimmer.guidance.advice import Sense, Trim
 from trimmer.reports import Conversation, Word
 from trimmer.screen.bells import STROKES_S, rung
+from trimmer.screen.commands import key
 from trimmer.screen.hand import KeyedHand
+from trimmer.screen.help_words import TUNING
 from trimmer.screen.mailbox import Mailbox, reports
 from trimmer.screen.options import Options
 from trimmer.screen.pictures.raster import Dots
@@ -30,10 +32,15 @@ FRAME_S = 1 / 20
 """The shortest time between two frames."""
 
 
+BESIDE_S = 20.0
+"""How long the cautions stand beside a session on the simulated unit."""
+
+
 class TuneScreen(Screen[None]):
     """Guides the two trims: what to do, how far along, why and what is left, figures."""
 
     CSS_PATH = "tune.tcss"
+    HELP = TUNING
     VERTICAL_BREAKPOINTS = [  # noqa: RUF012 - declared so by the base class
         (0, "-tiny"),
         (20, "-short"),
@@ -41,18 +48,20 @@ class TuneScreen(Screen[None]):
         (50, "-high"),
     ]
     BINDINGS: ClassVar[list[BindingType]] = [
-        Binding("enter,space", "say('moved')", "I have turned it", show=False),
-        Binding("b", "say('back')", "Take the last turn back", show=False),
-        Binding("e", "say('at-stop')", "The trim is at its end", show=False),
-        Binding("o", "say('skip')", "Ask for another way", show=False),
-        Binding("up", "hold('upper')", "Screwdriver on the upper trim", show=False),
-        Binding("down", "hold('lower')", "Screwdriver on the lower trim", show=False),
-        Binding("right", "turn('clockwise', False)", "Turn clockwise", show=False),
-        Binding("left", "turn('counter-clockwise', False)", "Turn counter-clockwise", show=False),
-        Binding("full_stop,shift+right", "turn('clockwise', True)", "A little", show=False),
-        Binding("comma,shift+left", "turn('counter-clockwise', True)", "A little", show=False),
-        Binding("m", "mute", "Sounds on or off", show=False),
-        Binding("g", "glyphs", "Fine or plain curves", show=False),
+        key("enter,space", "say('moved')", "I have turned it", "The turn is made: read again."),
+        key("b", "say('back')", "Take the last turn back", "Say how to undo the last turn."),
+        key("e", "say('at-stop')", "The trim is at its end", "It will not go further that way."),
+        key("o", "say('skip')", "Ask for another way", "Not this turn: say another one."),
+        key("up", "hold('upper')", "Screwdriver on the upper trim"),
+        key("down", "hold('lower')", "Screwdriver on the lower trim"),
+        key("left", "turn('counter-clockwise', False)", "Turn counter-clockwise"),
+        key("right", "turn('clockwise', False)", "Turn clockwise"),
+        key("comma,shift+left", "turn('counter-clockwise', True)", "A touch counter-clockwise"),
+        key("full_stop,shift+right", "turn('clockwise', True)", "A touch clockwise"),
+        key(
+            "m", "mute", "Sound on or off", "One stroke: slow. Two: stop. Three: wrong. Four: done."
+        ),
+        key("g", "glyphs", "Fine or plain curves", "For a font without braille, or with it."),
     ]
 
     class Mail(Message):
@@ -78,6 +87,7 @@ class TuneScreen(Screen[None]):
         self.leaving = False
         self._frame_at = 0.0
         self._frame_due = False
+        self._beside_until = 0.0
 
     def compose(self) -> ComposeResult:
         """Lay out: the turn, the bar, why, the panes, what matters, where things stand, keys."""
@@ -98,6 +108,8 @@ class TuneScreen(Screen[None]):
 
     def on_mount(self) -> None:
         """Begin: the session in its thread, the clock for the reading's age."""
+        if self.options.cautions and self.hand is not None:
+            self._beside_until = monotonic() + BESIDE_S
         self.display_view()
         self.set_interval(1.0, self.display_view)
         self.follow()
@@ -139,7 +151,8 @@ class TuneScreen(Screen[None]):
 
     def display_view(self) -> None:
         """Give every widget its value; those whose value is the same stay as they are."""
-        value = shown(self.view, monotonic(), self.hand, self.silent)
+        now = monotonic()
+        value = shown(self.view, now, self.hand, self.silent, now < self._beside_until)
         self.query_one(SignWidget).order = value.order
         self.query_one(WordsWidget).order = value.order
         self._show_lines(value)
