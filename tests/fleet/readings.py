@@ -47,15 +47,15 @@ class Scope:
         sigma = self.sigma(longer)
         parts = (true + self.fixed)[:size] + sigma * self.rng.standard_normal(size)
         k = np.repeat(np.arange(2, self.orders + 1), 2)
-        own = self.nonlinearity_codes / AMPLITUDE_CODES / 3.0 / k
-        covariance = np.diag(np.full(size, sigma**2) + own**2)
-        return reading_of(parts, covariance, sigma, flags)
+        own = np.diag((self.nonlinearity_codes / AMPLITUDE_CODES / 3.0 / k) ** 2)
+        return reading_of(parts, sigma, own, flags)
 
 
 def reading_of(
-    parts: Vector, covariance: Vector, sigma: float, flags: tuple[Flag, ...] = ()
+    parts: Vector, sigma: float, systematic: Vector, flags: tuple[Flag, ...] = ()
 ) -> Reading:
-    """Give a reading with these parts and covariance; figures not needed here are nominal."""
+    """Give a reading with these parts, noise and fixed error; figures not needed are nominal."""
+    covariance = sigma**2 * np.eye(parts.size) + systematic
     square = float(parts @ parts)
     thd = float(np.sqrt(max(0.0, square - parts.size * sigma**2)))
     spread = float(np.sqrt(parts @ covariance @ parts)) / max(thd, 1e-9)
@@ -69,6 +69,7 @@ def reading_of(
         orders=parts.size // 2 + 1,
         parts=parts,
         covariance=covariance,
+        systematic=systematic,
         noise=0.01,
         thd=Interval(thd, spread, max(0.0, thd - 1.96 * spread), thd + 1.96 * spread),
         thd_plus_noise=thd + 0.004,

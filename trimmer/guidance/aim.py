@@ -27,13 +27,12 @@ class Aim:
     """Expected squared distortion over the positions, under a belief, and where it is least.
 
     The expectation counts the belief's variance too: far from where anything was read it grows, and
-    holds the aim back, the more the more the response was seen to bend.
+    holds the aim back, the more the more the response was seen to bend. `caution` weighs that.
     """
 
-    def __init__(self, belief: FieldBelief) -> None:
+    def __init__(self, belief: FieldBelief, caution: float = 1.0) -> None:
         self.belief = belief
-        self._spread = belief.covariance.sum(axis=0)
-        self._square = belief.mean.T @ belief.mean + self._spread
+        self._square = belief.mean.T @ belief.mean + caution * belief.covariance.sum(axis=0)
 
     def expected(self, x: Array) -> float:
         """Give the expected squared distortion at a position."""
@@ -43,7 +42,7 @@ class Aim:
     def _newton(self, x: Array) -> tuple[Array, Array]:
         at = x - self.belief.anchor
         phi, turn = features(at), slopes(at)
-        return turn @ self._square @ phi, turn @ self._square @ turn.T
+        return turn @ self._square @ phi, turn @ self._square @ turn.T + 1e-8 * np.eye(2)
 
     def along(self, x: Array, trim: int, box: Box, rounds: int = 8) -> Array:
         """Give the least expected distortion along one trim, the other left where it is."""

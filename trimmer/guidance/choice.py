@@ -8,7 +8,7 @@ from typing import Final
 import numpy as np
 
 from trimmer.guidance import words
-from trimmer.guidance.aim import Aim
+from trimmer.guidance.outlook import Outlook
 from trimmer.guidance.estimate import Estimate
 from trimmer.guidance.field import Array
 from trimmer.guidance.general import column_scale
@@ -19,14 +19,8 @@ FIRST_SHARE: Final = 0.08
 """First turn of a trim of which nothing is known, share of the travel."""
 LONGEST_BLIND_SHARE: Final = 0.10
 """Longest turn while its sense is a guess."""
-LONGEST_SHARE: Final = 0.35
-"""Longest turn ever asked for at once."""
 SHORTEST_PROBE: Final = 0.03
 """Shortest turn that teaches a column."""
-WORTH_SHARE: Final = 0.015
-"""A turn must promise to gain this share of the floor .."""
-WORTH_THD: Final = 6e-5
-""".. or this much THD."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -105,70 +99,19 @@ def with_play(record: Record, hand: Hand, trim: int, share: float) -> float:
 def choose(
     est: Estimate, record: Record, hand: Hand, trims: tuple[int, ...] = (0, 1)
 ) -> Choice | None:
-    """Choose the next turn once both columns are known; None where no turn is worth making."""
-    aim = Aim(est.belief)
-    now = aim.expected(est.here)
-    plans = [_plan(aim, est, record, hand, trim, now) for trim in trims]
-    usable = [p for p in plans if p is not None]
-    if not usable:
+    """Choose the next turn among `trims`; None where no turn is worth making."""
+    outlook = Outlook(est, record, hand, trims)
+    if outlook.is_there():
         return None
-    return min(usable, key=lambda p: p[0])[1]
-
-
-def _plan(
-    aim: Aim, est: Estimate, record: Record, hand: Hand, trim: int, now: float
-) -> tuple[float, Choice] | None:
-    """Expected squared distortion of the best plan that begins with this trim."""
-    floor = est.floor_thd**2
-    worth = max(WORTH_SHARE * est.floor_thd, WORTH_THD)
-    thd_now = float(np.sqrt(now))
-    columns = est.belief.columns(est.here)
-    length = np.sum(columns**2, axis=1)
-    line = aim.along(est.here, trim, est.box)
-    best = None
-    for target, one_turn in ((line, True), (est.best, False)):
-        way = float(np.clip(target[trim] - est.here[trim], -LONGEST_SHARE, LONGEST_SHARE))
-        if abs(way) < 1e-6:
-            continue
-        there = est.here.copy()
-        there[trim] += way
-        noise = _noise(record, hand, trim, way)
-        after = aim.expected(there) + length[trim] * noise**2
-        final = after
-        if not one_turn:
-            rest = aim.along(there, 1 - trim, est.box)
-            further = rest[1 - trim] - there[1 - trim]
-            wedge = 1.0 - (columns[0] @ columns[1]) ** 2 / (length[0] * length[1])
-            final = (
-                aim.expected(rest)
-                + length[trim] * wedge * noise**2
-                + length[1 - trim] * _noise(record, hand, 1 - trim, further) ** 2
-            )
-        cost = float(np.sqrt(final)) + (0.0 if one_turn else worth)
-        if thd_now - cost < worth:
-            continue
-        if best is None or cost < best[0]:
-            rises = after > now
-            reason = words.RISES if rises else words.NEARER
-            if after < (1.1 * est.floor_thd) ** 2 or final <= floor:
-                reason = words.LAST_BIT
-            best = (
-                cost,
-                Choice(
-                    trim,
-                    with_play(record, hand, trim, way),
-                    way,
-                    float(np.sqrt(after)),
-                    bool(rises),
-                    reason,
-                ),
-            )
-    return best
-
-
-def _noise(record: Record, hand: Hand, trim: int, way: float) -> float:
-    sigma = hand.sigma(way)
-    last = record.last_sense(trim)
-    if last and last != (1 if way > 0 else -1):
-        sigma = float(np.hypot(sigma, hand.backlash_sigma))
-    return sigma
+    plans = [(outlook.turns_after(t, way), t, way) for t in trims for way in outlook.ways(t)]
+    if not plans:
+        return None
+    _, trim, way = min(plans)
+    if not outlook.gains(trim, way):
+        return None
+    thd = outlook.thd_after(trim, way)
+    rises = thd > 1.02 * outlook.thd_now
+    reason = words.RISES if rises else words.NEARER
+    if thd < 1.1 * est.floor_thd:
+        reason = words.LAST_BIT
+    return Choice(trim, with_play(record, hand, trim, way), way, thd, rises, reason)

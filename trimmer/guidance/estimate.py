@@ -66,8 +66,7 @@ def estimate(record: Record, hand: Hand, kind: KindPrior | None) -> Estimate:
     found = _with_kind(walk, kind) if kind is not None else _general(walk, record)
     here = np.zeros(2)
     box = _box(record, found.places)
-    aim = Aim(found.belief)
-    best = aim.joint(here, box)
+    best = _best(found.belief, here, box)
     floor, sigma = _floor(found, best)
     return Estimate(
         found=found,
@@ -138,6 +137,14 @@ def _box(record: Record, places: Array) -> Box:
             low[move.trim] = max(low[move.trim], at)
             high[move.trim] = min(high[move.trim], at + 1.0)
     return Box(np.minimum(low, places[-1]), np.maximum(high, places[-1]))
+
+
+def _best(belief: FieldBelief, here: Array, box: Box) -> Array:
+    """Least distortion of the mean field, near where caution would go."""
+    cautious = Aim(belief).joint(here, box)
+    reach = 0.3 * np.abs(cautious - here) + 0.02
+    near = Box(np.maximum(box.low, cautious - reach), np.minimum(box.high, cautious + reach))
+    return Aim(belief, caution=0.0).joint(cautious, near)
 
 
 def _floor(found: Found, best: Array) -> tuple[float, float]:

@@ -24,9 +24,11 @@ SKEW_SHARE: Final = 0.1
 """Size of the effect on skew parts over that on crest parts (small unless the symmetry is far off)."""
 VALUE: Final = 0.2
 """Size of a part before anything is known (a bare triangle has 0.11)."""
-BEND: Final = 2.0
-"""Relative change of a column per travel."""
-CROSS: Final = 0.6
+BEND: Final = 1.2
+"""Relative change of a column's third-order part per travel."""
+BEND_GROWS: Final = 0.6
+"""Power by which that grows with the order: higher orders wind up faster."""
+CROSS: Final = 0.25
 """The same for a column as the other trim moves, over `BEND`."""
 TYPICAL: Final = 0.067
 """Length of a column with the sizes above, parts per travel."""
@@ -50,17 +52,12 @@ def general_belief(orders: int, gain: float = 1.0) -> FieldBelief:
         Length of the columns over the typical one: larger columns bend more per travel.
     """
     scale = column_scale(orders)
-    bend = BEND * gain
-    relative = np.array(
-        [
-            0.0,
-            *(1.5 * gain,) * 2,
-            *(gain * bend * c for c in (1.0, CROSS, 1.0)),
-            *(1.5 * gain * bend**2 * c for c in (1.0, CROSS, CROSS, 1.0)),
-        ]
-    )
-    sigma = np.outer(scale, relative)
+    bend = BEND * gain * (np.repeat(np.arange(2, orders + 1), 2) / 3.0) ** BEND_GROWS
+    sigma = np.empty((scale.size, FEATURES))
     sigma[:, 0] = VALUE
+    sigma[:, 1:3] = (1.5 * gain * scale)[:, None]
+    sigma[:, 3:6] = np.outer(gain * scale * bend, (1.0, CROSS, 1.0))
+    sigma[:, 6:] = np.outer(1.5 * gain * scale * bend**2, (1.0, CROSS, CROSS, 1.0))
     covariance = np.zeros((scale.size, FEATURES, FEATURES))
     index = np.arange(FEATURES)
     covariance[:, index, index] = sigma**2

@@ -11,6 +11,8 @@ import numpy as np
 from trimmer.guidance.field import Array
 from trimmer.measurement.reading import Reading
 
+FIXED_WANDERS = 0.15
+"""Share of the digitiser's own error that changes as the wave changes from turn to turn."""
 SMALLEST_SIGMA = 2e-6
 """No reading is taken as surer than this: what is left is the unit's own jitter."""
 
@@ -22,7 +24,9 @@ class Seen:
     parts: Array
     """Shape (2(K-1),)."""
     variance: Array
-    """Shape (2(K-1),)."""
+    """Shape (2(K-1),), variance of what changes from reading to reading."""
+    fixed: Array
+    """Shape (2(K-1),), variance of what is the same in every reading (the digitiser's own)."""
     thd: float
     """Ratio, noise-corrected."""
     thd_sigma: float
@@ -42,9 +46,12 @@ class Seen:
 
 def seen(reading: Reading) -> Seen:
     """Reduce a reading."""
+    own = np.maximum(np.diag(reading.random_covariance), SMALLEST_SIGMA**2)
+    fixed = np.diag(reading.systematic) if reading.systematic.size else np.zeros(own.size)
     return Seen(
         parts=np.array(reading.parts, dtype=np.float64),
-        variance=np.maximum(np.diag(reading.covariance), SMALLEST_SIGMA**2),
+        variance=own + FIXED_WANDERS**2 * fixed,
+        fixed=np.array(fixed, dtype=np.float64),
         thd=reading.thd.value,
         thd_sigma=reading.thd.sigma,
         fundamental_hz=reading.fundamental_hz,
@@ -63,6 +70,7 @@ def merged(readings: Sequence[Seen]) -> Seen:
     return Seen(
         parts=(weights * values).sum(axis=0) / total,
         variance=1.0 / total,
+        fixed=readings[-1].fixed[:size],
         thd=best.thd,
         thd_sigma=best.thd_sigma,
         fundamental_hz=best.fundamental_hz,
@@ -76,6 +84,7 @@ def seen_document(one: Seen) -> dict[str, Any]:
     return {
         "parts": one.parts.tolist(),
         "variance": one.variance.tolist(),
+        "fixed": one.fixed.tolist(),
         "thd": one.thd,
         "thd_sigma": one.thd_sigma,
         "fundamental_hz": one.fundamental_hz,
@@ -89,6 +98,7 @@ def seen_from(document: dict[str, Any]) -> Seen:
     return Seen(
         parts=np.array(document["parts"], dtype=np.float64),
         variance=np.array(document["variance"], dtype=np.float64),
+        fixed=np.array(document["fixed"], dtype=np.float64),
         thd=float(document["thd"]),
         thd_sigma=float(document["thd_sigma"]),
         fundamental_hz=float(document["fundamental_hz"]),

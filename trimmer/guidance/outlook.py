@@ -1,0 +1,147 @@
+"""What a turn promises: how many turns are still to be made after it, the hand's errors counted.
+
+Near the best setting `b` the squared distortion is ``f^2 + e' H e`` with ``e = x - b`` and H the inner
+products of the two columns. A setting counts as there when it is within a small share of the floor. A
+turn moves `e` along one axis, with the hand's scatter in size; what is not known of `b` scatters it in
+both. After it the place is read, so the turn after that starts from what was reached and not from what
+was meant. That is looked through to the second turn and valued beyond by what is then left.
+"""
+
+from __future__ import annotations
+
+from typing import Final
+
+import numpy as np
+from scipy.special import erf
+
+from trimmer.guidance.aim import Aim
+from trimmer.guidance.estimate import Estimate
+from trimmer.guidance.field import Array, features
+from trimmer.guidance.hand import Hand
+from trimmer.guidance.record import Record
+
+CLOSE_SHARE: Final = 0.03
+"""A setting is there when THD is within this share of the floor .."""
+CLOSE_THD: Final = 1.2e-4
+""".. or this much THD of it, whichever is more."""
+LONGEST_SHARE: Final = 0.35
+"""Longest turn ever asked for at once, share of the travel."""
+BEYOND: Final = 1.3
+"""Turns expected to be left after a second turn that did not get there."""
+NODES, WEIGHTS = np.polynomial.hermite_e.hermegauss(7)
+MASS: Final = WEIGHTS / WEIGHTS.sum()
+
+
+class Outlook:
+    """The problem of the next turn in the plane of the two trims."""
+
+    def __init__(self, est: Estimate, record: Record, hand: Hand, trims: tuple[int, ...]) -> None:
+        self.est = est
+        self.record = record
+        self.hand = hand
+        self.trims = trims
+        self.aim = Aim(est.belief)
+        self.best = est.best
+        self.away = est.here - est.best
+        columns = est.belief.columns(est.best)
+        self.h = columns @ columns.T
+        self.floor = est.floor_thd
+        close = self.floor + max(CLOSE_SHARE * self.floor, CLOSE_THD)
+        self.radius2 = close**2 - self.floor**2
+        self.doubt = self._doubt(columns)
+        self.thd_now = float(np.sqrt(self.floor**2 + self._energy(self.away)))
+
+    def _doubt(self, columns: Array) -> Array:
+        """Covariance of the best setting, shape (2, 2)."""
+        est = self.est
+        phi = features(est.best - est.belief.anchor)
+        own = np.einsum("f,kfg,g->k", phi, est.found.given_steps, phi)
+        shared = np.einsum("f,kfj->kj", phi, est.found.through_steps)
+        pull = np.linalg.solve(self.h, columns)
+        along = pull @ shared
+        result: Array = (pull * own) @ pull.T + along @ est.found.steps_covariance @ along.T
+        return result
+
+    def _energy(self, e: Array) -> Array:
+        result: Array = np.einsum("...a,ab,...b->...", e, self.h, e)
+        return result
+
+    def is_there(self) -> bool:
+        """Tell whether the present setting is close enough, what is not known of the best counted."""
+        doubt = float(np.sum(self.h * self.doubt))
+        return bool(self._energy(self.away) + 2.0 * doubt <= self.radius2)
+
+    def noise(self, trim: int, way: float) -> float:
+        """Give the standard deviation of a turn, share of the travel."""
+        sigma = self.hand.sigma(way)
+        last = self.record.last_sense(trim)
+        if last and last != (1 if way > 0 else -1):
+            sigma = float(np.hypot(sigma, self.hand.backlash_sigma))
+        return sigma
+
+    def ways(self, trim: int) -> list[float]:
+        """Give the turns of a trim worth weighing: to the joint best, to its own, and between."""
+        joint = -self.away[trim]
+        line = -float(self.h[trim] @ self.away) / float(self.h[trim, trim])
+        mixes = [joint, line, 0.5 * (joint + line)]
+        low = self.est.box.low[trim] - self.est.here[trim]
+        high = self.est.box.high[trim] - self.est.here[trim]
+        inside = [
+            float(np.clip(w, max(low, -LONGEST_SHARE), min(high, LONGEST_SHARE))) for w in mixes
+        ]
+        return [w for w in inside if abs(w) > 1e-4]
+
+    def _outcomes(self, trim: int, way: float) -> tuple[Array, Array]:
+        """Where a turn may end, relative to the best: shape (n, 2), and the chances, shape (n,)."""
+        sigma = self.noise(trim, way)
+        roots = np.linalg.cholesky(self.doubt + 1e-12 * np.eye(2))
+        made = way + sigma * NODES
+        ends, chances = [], []
+        for axis in (0, 1):
+            for side in (-1.0, 1.0):
+                e = np.tile(self.away, (NODES.size, 1))
+                e[:, trim] += made
+                ends.append(e + side * np.sqrt(2.0) * roots[:, axis])
+                chances.append(MASS / 4.0)
+        return np.concatenate(ends), np.concatenate(chances)
+
+    def turns_after(self, trim: int, way: float) -> float:
+        """Give the turns expected to be left once this one is made."""
+        ends, chances = self._outcomes(trim, way)
+        energy = self._energy(ends)
+        further = np.min([self._one_more(ends, energy, s) for s in self.trims], axis=0)
+        left = np.where(energy <= self.radius2, 0.0, further)
+        return float(chances @ left)
+
+    def _one_more(self, ends: Array, energy: Array, trim: int) -> Array:
+        """Turns left from each place when the next one is this trim's, to its own least."""
+        length = self.h[trim, trim]
+        way = -(ends @ self.h[trim]) / length
+        across = energy - length * way**2
+        sigma2 = (self.hand.scatter**2 + 0.05**2) * way**2 + self.hand.jitter**2
+        room = np.maximum(self.radius2 - across, 0.0)
+        chance = erf(np.sqrt(room / (2.0 * length * sigma2)))
+        rest = (np.maximum(across, 0.0) + length * sigma2) / self.radius2
+        result: Array = 1.0 + (1.0 - chance) * (BEYOND + 0.2 * np.log1p(rest))
+        return result
+
+    def thd_after(self, trim: int, way: float) -> float:
+        """Give the THD expected after a turn."""
+        there = self.est.here.copy()
+        there[trim] += way
+        parts = self.est.belief.at(there)
+        scatter = self.h[trim, trim] * self.noise(trim, way) ** 2
+        return float(np.sqrt(parts @ parts + scatter))
+
+    def gains(self, trim: int, way: float) -> bool:
+        """Tell whether a turn, and the one that may follow, promise to lower THD at all."""
+        ends, chances = self._outcomes(trim, way)
+        energy = self._energy(ends)
+        least = energy
+        for s in self.trims:
+            move = -(ends @ self.h[s]) / self.h[s, s]
+            sigma2 = (self.hand.scatter**2 + 0.05**2) * move**2 + self.hand.jitter**2
+            least = np.minimum(least, energy - self.h[s, s] * (move**2 - sigma2))
+        doubt = float(np.sum(self.h * self.doubt))
+        now = float(self._energy(self.away)) + doubt
+        return bool(float(chances @ least) < 0.9 * now)
