@@ -44,6 +44,9 @@ def reading(seed: int = 0, orders: int = 15, thd: float | None = None) -> Readin
         cycles=10.00001,
         bits=8,
         phase=figures[9],
+        systematic=0.25 * (covariance + covariance.T) / 2,
+        noise_power=abs(figures[11]) * 1e-9,
+        freedom=8123.0,
         extra={"hum_hz": 50.0, "drift_hz": figures[10] / 3},
     )
 

@@ -5,12 +5,16 @@
 from __future__ import annotations
 
 import json
+import math
 import zlib
+from collections.abc import Mapping
 from datetime import UTC, datetime
 from typing import Any
 
 import sqlalchemy as sa
 
+_MARK = "not_finite"
+_NOT_FINITE = {"nan": math.nan, "inf": math.inf, "-inf": -math.inf}
 _UNPACKED_BYTES = 64 * 1024 * 1024
 _UNSHOWABLE = dict.fromkeys((*range(32), 127, *range(0xD800, 0xE000)), "�")
 
@@ -32,8 +36,54 @@ def stamp(moment: datetime) -> str:
 
 
 def dumps(document: Any) -> str:
-    """Write a document as one line of strict JSON in ASCII; a number keeps its every bit."""
-    return json.dumps(document, ensure_ascii=True, allow_nan=False, separators=(",", ":"))
+    """Write a document as one line of strict JSON in ASCII; a number keeps its every bit.
+
+    JSON has no word for what is not finite. A figure that is not, which no sound document has, becomes
+    ``{"not_finite": "nan"}`` rather than cost the sheet it belongs to.
+    """
+    try:
+        return _strict(document)
+    except ValueError:
+        return _strict(_marked(document))
+
+
+def _strict(document: Any) -> str:
+    return json.dumps(
+        document, ensure_ascii=True, allow_nan=False, separators=(",", ":"), default=_numpy
+    )
+
+
+def _numpy(value: Any) -> Any:
+    """Give a number or an array of the numeric library as Python's own."""
+    if hasattr(value, "tolist"):
+        return value.tolist()
+    raise TypeError(f"a {type(value).__name__} cannot stand in a document")
+
+
+def loads(text: str | bytes) -> Any:
+    """Read what `dumps` wrote."""
+    document = json.loads(text)
+    mark = _MARK if isinstance(text, str) else _MARK.encode()
+    return unmarked(document) if mark in text else document  # type: ignore[operator]
+
+
+def _marked(value: Any) -> Any:
+    if hasattr(value, "tolist"):
+        value = value.tolist()
+    if isinstance(value, float):
+        return value if math.isfinite(value) else {_MARK: repr(value)}
+    if isinstance(value, Mapping):
+        return {key: _marked(v) for key, v in value.items()}
+    return [_marked(v) for v in value] if isinstance(value, list | tuple) else value
+
+
+def unmarked(value: Any) -> Any:
+    """Give a document its figures that are not finite."""
+    if isinstance(value, Mapping):
+        if value.keys() == {_MARK} and value[_MARK] in _NOT_FINITE:
+            return _NOT_FINITE[value[_MARK]]
+        return {key: unmarked(v) for key, v in value.items()}
+    return [unmarked(v) for v in value] if isinstance(value, list) else value
 
 
 def unpack(packed: bytes, limit: int = _UNPACKED_BYTES) -> bytes:
@@ -92,7 +142,7 @@ class Json(sa.types.TypeDecorator[Any]):
         return None if value is None else dumps(value)
 
     def process_result_value(self, value: str | None, dialect: sa.Dialect) -> Any:
-        return None if value is None else json.loads(value)
+        return None if value is None else loads(value)
 
 
 class PackedJson(sa.types.TypeDecorator[Any]):
@@ -105,4 +155,4 @@ class PackedJson(sa.types.TypeDecorator[Any]):
         return None if value is None else zlib.compress(dumps(value).encode("ascii"), 6)
 
     def process_result_value(self, value: bytes | None, dialect: sa.Dialect) -> Any:
-        return None if value is None else json.loads(unpack(bytes(value)))
+        return None if value is None else loads(unpack(bytes(value)))

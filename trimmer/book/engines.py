@@ -64,12 +64,40 @@ def _check_path(path: Path) -> None:
 
 
 def _open(path: Path, writes: bool) -> sqlite3.Connection:
-    """Open the file. `isolation_level` None leaves transactions to `_begin`, so that DDL is in them."""
-    mode = "rwc" if writes else "ro"
-    return _connect(path, f"mode={mode}")
+    if writes:
+        return _connect(path, "mode=rwc")
+    try:
+        connection = _connect(path, "mode=ro")
+        connection.execute("PRAGMA schema_version")
+    except sqlite3.OperationalError as error:
+        if not _untouched(path):
+            raise _unfinished(path) from error
+        return _connect(path, "mode=ro&immutable=1")
+    return connection
+
+
+def _untouched(path: Path) -> bool:
+    """Tell whether all of a book is in its main file, so that it can be read where it lies.
+
+    In a folder that may not be written, SQLite cannot share a WAL book; one that nobody has open, and
+    whose WAL is empty or gone, is complete in itself.
+    """
+    wal = path.with_name(path.name + "-wal")
+    return path.exists() and not (wal.exists() and wal.stat().st_size)
+
+
+def _unfinished(path: Path) -> BookError:
+    if not path.exists():
+        return BookError(f"There is no book {path}.", "Check the path given with `--book`.")
+    return BookError(
+        f"The book {path} lies in a folder that may not be written, with entries not yet merged.",
+        f"Copy {path.name} and {path.name}-wal to a folder that may, and open it there.",
+    )
 
 
 def _connect(path: Path, options: str) -> sqlite3.Connection:
+    """Connect by address. `isolation_level` None leaves transactions to `_begin`, so that changes of the
+    schema are inside them."""
     name = quote(os.fsencode(path.absolute()))
     return sqlite3.connect(
         f"file:{name}?{options}",

@@ -5,13 +5,14 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from datetime import datetime
-from typing import Any, Literal
+from typing import TYPE_CHECKING, Any, Literal
 
-import numpy as np
-from numpy.typing import NDArray
+if TYPE_CHECKING:
+    import numpy as np
+    from numpy.typing import NDArray
 
-from trimmer.guidance.advice import Advice, Done, Trim
-from trimmer.measurement.reading import Reading
+    from trimmer.guidance.advice import Advice, Done, Trim
+    from trimmer.measurement.reading import Reading
 
 Document = Mapping[str, Any]
 """A JSON-able mapping: text keys; text, numbers, booleans, None, lists and mappings as values."""

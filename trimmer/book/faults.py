@@ -63,6 +63,8 @@ def sqlite_name(error: BaseException | None) -> str:
 def is_lost(error: BaseException) -> bool:
     """Tell whether an error means that a server cannot be reached now: worth trying again later."""
     if isinstance(error, sa_exc.DBAPIError):
+        if isinstance(error.orig, sqlite3.Error):
+            return False
         if error.connection_invalidated:
             return True
         return isinstance(error, sa_exc.OperationalError | sa_exc.InterfaceError)

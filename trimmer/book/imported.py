@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import Annotated, Any, Literal, Union
+from typing import Annotated, Any, Literal, Self, Union
 
 import numpy as np
 from pydantic import (
@@ -14,15 +14,17 @@ from pydantic import (
     Field,
     StringConstraints,
     TypeAdapter,
+    model_validator,
 )
 
-from trimmer.book.columns import plain, stamp
+from trimmer.book.columns import plain, stamp, unmarked
 from trimmer.book.ids import is_id
 from trimmer.book.readings import from_document
 from trimmer.book.waveforms import pack
 from trimmer.guidance.advice import Advice, Cause, Verdict
 
 _ADVICE = TypeAdapter(Advice)
+_OPEN = ConfigDict(extra="ignore", strict=True, hide_input_in_errors=True)
 _CAUSES = TypeAdapter(list[Cause])
 
 
@@ -32,9 +34,88 @@ def _an_id(text: str) -> str:
     return text
 
 
+class FlagModel(BaseModel):
+    """A flag of a reading."""
+
+    model_config = _OPEN
+
+    code: str
+    message: str
+    remedy: str
+
+
+class IntervalModel(BaseModel):
+    """A figure with its interval."""
+
+    model_config = _OPEN
+
+    value: float
+    sigma: float
+    low: float
+    high: float
+
+
+class CrestsModel(BaseModel):
+    """How pointed the crests are."""
+
+    model_config = _OPEN
+
+    upper: float
+    lower: float
+    asymmetry: float
+    upper_sigma: float
+    lower_sigma: float
+    asymmetry_sigma: float
+
+
+class ReadingModel(BaseModel):
+    """The types of a reading's figures; fields of a newer program are let through."""
+
+    model_config = _OPEN
+
+    fundamental_hz: float
+    fundamental_sigma_hz: float
+    amplitude: float
+    amplitude_sigma: float
+    offset: float
+    offset_sigma: float
+    orders: Annotated[int, Field(ge=2, le=10_000)]
+    parts: list[float]
+    covariance: list[float]
+    systematic: list[float] = []
+    noise: float
+    thd: IntervalModel
+    thd_plus_noise: float
+    crests: CrestsModel
+    rise_share: float
+    rise_share_sigma: float
+    flags: list[FlagModel]
+    samples: Annotated[int, Field(ge=0)]
+    interval_s: float
+    cycles: float
+    bits: int | None = None
+    has_volts: bool = True
+    ac_coupled: bool = False
+    frames: int = 1
+    phase: float = 0.0
+    extra: dict[str, float] = {}
+
+    @model_validator(mode="after")
+    def _sizes_agree(self) -> Self:
+        size = 2 * (self.orders - 1)
+        triangle = size * (size + 1) // 2
+        if len(self.parts) != size or len(self.covariance) != triangle:
+            raise ValueError(f"parts and covariance do not fit {self.orders} orders")
+        if len(self.systematic) not in (0, triangle):
+            raise ValueError(f"the systematic covariance does not fit {self.orders} orders")
+        return self
+
+
 def _a_reading(document: dict[str, Any]) -> dict[str, Any]:
-    from_document(document)
-    return document
+    plain = unmarked(document)
+    ReadingModel.model_validate(plain)
+    from_document(plain)
+    return dict(plain)
 
 
 def _an_advice(document: dict[str, Any]) -> dict[str, Any]:
@@ -70,7 +151,7 @@ Notes = dict[Words, Words]
 Moment = Annotated[AwareDatetime, AfterValidator(_in_range)]
 Figure = Annotated[float, Field(allow_inf_nan=False)]
 Count = Annotated[int, Field(ge=0, le=2**31 - 1)]
-Anything = dict[str, Any]
+Anything = Annotated[dict[str, Any], AfterValidator(unmarked)]
 ReadingDocument = Annotated[dict[str, Any], AfterValidator(_a_reading)]
 
 

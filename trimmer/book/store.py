@@ -13,6 +13,7 @@ from sqlalchemy.dialects import postgresql, sqlite
 
 from trimmer.book import tables as t
 from trimmer.book.cards import refresh
+from trimmer.book.columns import dumps
 from trimmer.book.entries import Merged
 from trimmer.book.faults import guarded
 from trimmer.book.migrate import applied, check, migrate
@@ -56,6 +57,8 @@ class Store:
         with guarded(self.shown):
             if writes:
                 migrate(self.engine, self.shown)
+                with self.writing():
+                    pass  # takes the write lock once: a book that may only be read says so now
             else:
                 with self.engine.connect() as connection:
                     check(applied(connection), self.shown)
@@ -163,6 +166,8 @@ def _same(name: str, given: Any, there: Any) -> bool:
     if name == "waveform" and given is not None and there is not None:
         # The same samples may be packed otherwise by another version of the packer.
         return bool(np.array_equal(unpack_samples(given), unpack_samples(bytes(there))))
+    if isinstance(given, dict | list):
+        return dumps(given) == dumps(there)
     return bool(given == there)
 
 

@@ -29,7 +29,7 @@ class Words:
 
 WORDS: dict[Dialect, Words] = {
     "sqlite": Words(
-        "sqlite", "TEXT", "TEXT", "BLOB", "DOUBLE", "INTEGER PRIMARY KEY AUTOINCREMENT"
+        "sqlite", "TEXT", "TEXT", "BLOB", "DOUBLE", "INTEGER NOT NULL PRIMARY KEY AUTOINCREMENT"
     ),
     "postgresql": Words(
         "postgresql",
