@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import os
+
+os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")  # as the command itself does
 from pathlib import Path
 
 import pytest
@@ -20,7 +22,9 @@ def pytest_terminal_summary(terminalreporter: pytest.TerminalReporter) -> None:
     """Fail the run for a skip where `TRIMMER_NO_SKIPS` is set: the machine should have had all."""
     skipped = terminalreporter.stats.get("skipped", [])
     if skipped and os.environ.get("TRIMMER_NO_SKIPS"):
-        terminalreporter.write_line(f"{len(skipped)} skipped, and no skip is allowed here", red=True)
+        terminalreporter.write_line(
+            f"{len(skipped)} skipped, and no skip is allowed here", red=True
+        )
 
 
 @pytest.hookimpl(trylast=True)

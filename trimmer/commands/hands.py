@@ -41,6 +41,8 @@ class HandsOn:
                 case Followed(word=word) if self._turning and word.say in STOPS:
                     self._hand.stop()
                     self._turning = False
+                case Followed(word=word) if self._turning and word.say == "slow":
+                    self._hand.slow()
 
     def say(self, word: Word) -> None:
         """Pass a word on to the session."""

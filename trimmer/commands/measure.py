@@ -5,7 +5,7 @@ from __future__ import annotations
 import argparse
 import sys
 
-from drivers import SourceError, UnusableCapture
+from drivers import SourceError, UnusableCapture, clean
 from trimmer.commands.opening import opened
 from trimmer.commands.wording import reading_lines
 from trimmer.console import SIGNAL_UNUSABLE, SOURCE_FAILED, complain
@@ -44,10 +44,10 @@ def _one(word: str, options: argparse.Namespace) -> int:
         with opened(word, options) as source:
             taken = Intake(source.source, wanted(options, frames=4)).still()
     except (MeasurementError, UnusableCapture) as error:
-        complain(error, error.remedy)
+        complain(f"{clean(word)}: {error}", error.remedy)
         return SIGNAL_UNUSABLE
     except SourceError as error:
-        complain(error, error.remedy)
+        complain(f"{clean(word)}: {error}", error.remedy)
         return SOURCE_FAILED
     waveform = taken.waveform
     if options.json:

@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 
 from trimmer.guidance.advice import Advice, Done
-from trimmer.measurement.reading import Reading
+from trimmer.measurement.reading import Interval, Reading
 
 VERDICTS = {
     "at-floor": "Done: both trims are at their best",
@@ -22,14 +22,24 @@ def percent(ratio: float | None, sigma: float | None = None) -> str:
         return "not known"
     if sigma is None or not math.isfinite(sigma) or sigma <= 0:
         return f"{100 * ratio:.3g} %"
-    digits = min(6, max(0, 1 - math.floor(math.log10(100 * sigma))))
+    digits = _digits(100 * sigma)
     return f"{100 * ratio:.{digits}f} % \N{PLUS-MINUS SIGN} {100 * sigma:.{digits}f}"
+
+
+def _digits(sigma: float) -> int:
+    """Give the decimals that show two digits of a standard uncertainty."""
+    return min(6, max(0, 1 - math.floor(math.log10(sigma)))) if sigma > 0 else 3
+
+
+def between(thd: Interval) -> str:
+    """Write a 95 % interval in percent."""
+    digits = _digits(100 * thd.sigma)
+    return f"{100 * thd.low:.{digits}f} % to {100 * thd.high:.{digits}f} %"
 
 
 def frequency(hertz: float, sigma: float) -> str:
     """Write a frequency with as many digits as its standard uncertainty bears."""
-    digits = min(6, max(0, 1 - math.floor(math.log10(sigma)))) if sigma > 0 else 3
-    return f"{hertz:.{digits}f} Hz"
+    return f"{hertz:.{_digits(sigma)}f} Hz"
 
 
 def crest(name: str, value: float, sigma: float) -> str:
@@ -44,7 +54,7 @@ def reading_lines(source: str, reading: Reading, notes: tuple[str, ...] = ()) ->
     crests = reading.crests
     lines = [
         f"{source}: THD {percent(reading.thd.value, reading.thd.sigma)} "
-        f"(95 % between {percent(reading.thd.low)} and {percent(reading.thd.high)}), "
+        f"(95 % interval {between(reading.thd)}), "
         f"orders 2 to {reading.orders}, "
         f"at {frequency(reading.fundamental_hz, reading.fundamental_sigma_hz)}.",
         f"  {crest('upper', crests.upper, crests.upper_sigma)}; "
