@@ -2,7 +2,9 @@
 
 The noise of a capture of N samples with s/A noise over amplitude gives each part a standard deviation
 of ``sqrt(2/N) s/A`` (the Cramer-Rao bound for many cycles). The digitiser's integral non-linearity is
-a fixed error of the same unit, range and offset; a reading's covariance owns up to its size.
+a fixed error of the same unit, range and offset, here a curve of Chebyshev polynomials of order 2 to
+6, of which a sine makes harmonics of just these orders. No digitiser states its own, so a reading
+owns up to what the measurement assumes by default.
 """
 
 from __future__ import annotations
@@ -13,6 +15,7 @@ import numpy as np
 from numpy.random import Generator
 
 from tests.fleet.waves import Vector
+from trimmer.measurement.digitiser import default_nonlinearity
 from trimmer.measurement.reading import Crests, Flag, Interval, Reading
 
 AMPLITUDE_CODES = 100.0
@@ -29,11 +32,13 @@ class Scope:
     orders: int = 15
 
     def __post_init__(self) -> None:
-        k = np.repeat(np.arange(2, 16), 2)
-        shape = self.rng.standard_normal(28) / k
-        shape[1::2] *= 0.3
-        peak = np.sum(np.abs(shape)) / 2.0
-        self.fixed = self.nonlinearity_codes / AMPLITUDE_CODES * shape / peak
+        weights = np.concatenate(([0.0, 0.0], self.rng.standard_normal(5) / np.arange(2, 7)))
+        grid = np.linspace(-1.0, 1.0, 201)
+        curve = np.polynomial.chebyshev.chebval(grid, weights)
+        curve -= np.polyval(np.polyfit(grid, curve, 1), grid)
+        peak = self.nonlinearity_codes / AMPLITUDE_CODES
+        self.fixed = np.zeros(28)
+        self.fixed[0:10:2] = peak * weights[2:] / np.max(np.abs(curve))
 
     def sigma(self, longer: bool = False) -> float:
         """Give the standard deviation of a part by noise and quantisation."""
@@ -47,7 +52,8 @@ class Scope:
         sigma = self.sigma(longer)
         parts = (true + self.fixed)[:size] + sigma * self.rng.standard_normal(size)
         k = np.repeat(np.arange(2, self.orders + 1), 2)
-        own = np.diag((self.nonlinearity_codes / AMPLITUDE_CODES / 3.0 / k) ** 2)
+        peak = default_nonlinearity(8) / AMPLITUDE_CODES
+        own = np.diag((np.arange(size) % 2 == 0) * (0.5 * peak / k) ** 2)
         return reading_of(parts, sigma, own, flags)
 
 

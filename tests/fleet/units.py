@@ -10,6 +10,7 @@ from numpy.random import Generator
 from numpy.typing import NDArray
 from scipy.optimize import least_squares
 
+from tests.circuits.maps import Map
 from tests.fleet.circuits import Circuit, Diodes, Ladders, Pair, SquareLaw, parts
 from tests.fleet.waves import Vector
 
@@ -43,8 +44,8 @@ class Unit:
     """Crest and skew parts at electrical positions (0..1)."""
     pots: tuple[Pot, Pot]
     travel_turns: float = 0.75
-    labels_swapped: bool = False
-    """Whether the person calls the other trim upper."""
+    known_best: tuple[tuple[float, float], float] | None = None
+    """Electrical positions and THD of the best, where they are known beforehand."""
     _known: dict[tuple[float, float], Vector] = field(default_factory=dict, repr=False)
 
     def parts(self, screws: tuple[float, float]) -> Vector:
@@ -61,7 +62,9 @@ class Unit:
 
     def best(self) -> tuple[tuple[float, float], float]:
         """Find the least THD inside the travel, seeing no noise, from five starts."""
-        found: tuple[tuple[float, float], float] | None = None
+        found = self.known_best
+        if found is not None:
+            return found
         for start in ((0.5, 0.5), (0.25, 0.25), (0.25, 0.75), (0.75, 0.25), (0.75, 0.75)):
             answer = least_squares(
                 lambda p: self.respond(float(p[0]), float(p[1])),
@@ -218,4 +221,18 @@ def draw(kind: str, rng: Generator, senses: tuple[int, int] | None = None) -> Un
             circuit, loaded(u, loading), loaded(l, loading), lag
         ),
         pots=(pots[0], pots[1]),
+    )
+
+
+def from_simulator(unit: Map, rng: Generator, senses: tuple[int, int] | None = None) -> Unit:
+    """Put trims of our drawing on a unit whose harmonics a circuit simulator computed."""
+    pots = [pot(rng), pot(rng)]
+    if senses is not None:
+        pots = [replace(p, sense=s) for p, s in zip(pots, senses, strict=True)]
+    best = unit.best()
+    return Unit(
+        kind=unit.circuit,
+        respond=unit.parts,
+        pots=(pots[0], pots[1]),
+        known_best=((best.u, best.l), best.thd),
     )

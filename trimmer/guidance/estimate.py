@@ -13,6 +13,7 @@ from trimmer.guidance.hand import Hand
 from trimmer.guidance.memory import KindPrior
 from trimmer.guidance.path import Found, Walk, find_walk
 from trimmer.guidance.record import Record
+from trimmer.guidance.seen import Seen
 
 START_SIGMA = 0.3
 """Where a unit's trims stand from their best before anything is turned, share of the travel."""
@@ -67,7 +68,7 @@ def estimate(record: Record, hand: Hand, kind: KindPrior | None) -> Estimate:
     here = np.zeros(2)
     box = _box(record, found.places)
     best = _best(found.belief, here, box)
-    floor, sigma = _floor(found, best)
+    floor, sigma = _floor(found, best, record.here)
     return Estimate(
         found=found,
         here=here,
@@ -147,26 +148,27 @@ def _best(belief: FieldBelief, here: Array, box: Box) -> Array:
     return Aim(belief, caution=0.0).joint(cautious, near)
 
 
-def _floor(found: Found, best: Array) -> tuple[float, float]:
-    """Length of the parts at the best setting and its standard uncertainty.
+def _floor(found: Found, best: Array, last: Seen) -> tuple[float, float]:
+    """Length of the parts at the best setting, noise taken off, and its standard uncertainty.
 
     Only what lies outside the columns counts for the uncertainty: along them the setting is at its
-    least, and an error there changes the length in second order only.
+    least, and an error there changes the length in second order only. The digitiser's own error is
+    the same in all readings, so no number of them lowers its share.
     """
     belief = found.belief
     parts = belief.at(best)
-    length = float(np.linalg.norm(parts))
-    if length == 0.0:
-        return 0.0, float(np.sqrt(np.mean(belief.variance(best))))
     phi = features(best - belief.anchor)
     own = np.einsum("f,kfg,g->k", phi, found.given_steps, phi)
-    direction = parts / length
+    fixed = last.fixed[: parts.size]
+    square = float(parts @ parts)
+    noise = float(np.sum(np.minimum(own, last.variance[: parts.size]) + fixed))
+    length = float(np.sqrt(max(square - noise, 0.0)))
     tangent, _ = np.linalg.qr(belief.columns(best).T)
-    direction = direction - tangent @ (tangent.T @ direction)
-    size = float(np.linalg.norm(direction))
-    if size < 1e-9:
-        return length, float(np.sqrt(np.max(own)))
-    direction /= size
-    shared = direction @ np.einsum("f,kfj->kj", phi, found.through_steps)
-    variance = float(direction**2 @ own + shared @ found.steps_covariance @ shared)
+    across = parts - tangent @ (tangent.T @ parts)
+    size = float(np.linalg.norm(across))
+    if size**2 <= noise:
+        return length, float(np.sqrt(noise / parts.size))
+    across /= size
+    shared = across @ np.einsum("f,kfj->kj", phi, found.through_steps)
+    variance = across**2 @ (own + fixed) + shared @ found.steps_covariance @ shared
     return length, float(np.sqrt(variance))
