@@ -1,0 +1,235 @@
+"""From bytes and a preamble to volts: pure arithmetic on what the instrument sent."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from drivers.contract import SourceRefused, UnusableCapture
+from drivers.visa.dialect import Codes, Dialect
+from drivers.visa.formula import Formula, FormulaError
+
+Fields = Mapping[str, Any]
+
+_SENTINEL_SHARE = 1e-5
+"""Two values that mark out of range are the same within this; they travel as 32-bit floats."""
+
+
+@dataclass(frozen=True, slots=True)
+class Reading:
+    """How the bytes of a frame are read as numbers."""
+
+    signed: bool | None = None
+    """Two's complement; None as the dialect says."""
+    big_endian: bool | None = None
+    """Most significant byte first; None as the dialect says."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Converted:
+    """A frame in volts."""
+
+    volts: NDArray[np.float64]
+    """Shape (N,)."""
+    interval_s: float
+    """Seconds between samples."""
+    bits: int | None
+    """Bits of the codes."""
+    code: float | None
+    """Volts a code."""
+    low_rail: float | None
+    """Volts of the lowest code."""
+    high_rail: float | None
+    """Volts of the highest code."""
+    clipped: int
+    """Samples at a rail or marked as out of range."""
+    averaged: int
+    """Frames averaged."""
+
+
+def convert(dialect: Dialect, fields: Fields, payload: bytes, reading: Reading) -> Converted:
+    """Turn a frame into volts.
+
+    Parameters
+    ----------
+    dialect
+        Whose formulas apply.
+    fields
+        The preamble.
+    payload
+        The bytes of the samples.
+    reading
+        What was settled about sign and byte order.
+
+    Raises
+    ------
+    UnusableCapture
+        It is no plain waveform: peak detect, holes, all out of range.
+    SourceRefused
+        Preamble and data do not fit together.
+    """
+    try:
+        return _convert(dialect, fields, payload, reading)
+    except FormulaError as error:
+        raise SourceRefused(f"the preamble cannot be used: {error}") from error
+
+
+def values_of(codes: Codes, fields: Fields, payload: bytes, reading: Reading) -> NDArray[Any]:
+    """Read bytes as codes or values.
+
+    Returns
+    -------
+    ndarray
+        Shape (N,), in the type they were sent in.
+
+    Raises
+    ------
+    SourceRefused
+        The count of bytes does not fit the count of points.
+    """
+    width = int(codes.width.number(fields))
+    kinds = ("f4", "f8") if codes.kind == "float" else ("i1", "i2", "i4")
+    if f"i{width}" not in kinds and f"f{width}" not in kinds:
+        raise SourceRefused(f"the preamble speaks of values of {width} bytes")
+    if codes.points is not None:
+        points = int(codes.points.number(fields))
+        if points * width != len(payload):
+            raise SourceRefused(
+                f"the preamble speaks of {points} points of {width} bytes, but "
+                f"{len(payload)} bytes came"
+            )
+    elif len(payload) % width:
+        raise SourceRefused(f"{len(payload)} bytes are no whole number of {width}-byte values")
+    if not payload:
+        raise UnusableCapture(
+            "the instrument sent no samples", "Check that the channel is on and the trigger runs."
+        )
+    big = reading.big_endian
+    order = ">" if (bool(codes.big_endian(fields)) if big is None else big) else "<"
+    if codes.kind == "float":
+        letter = "f"
+    else:
+        signed = bool(codes.signed(fields)) if reading.signed is None else reading.signed
+        letter = "i" if signed else "u"
+    return np.frombuffer(payload, dtype=np.dtype(f"{order}{letter}{width}"))
+
+
+def _convert(dialect: Dialect, fields: Fields, payload: bytes, reading: Reading) -> Converted:
+    for refuse in dialect.refuse:
+        if refuse.when(fields):
+            raise UnusableCapture(refuse.why, refuse.remedy)
+    values = values_of(dialect.codes, fields, payload, reading)
+    known = {**fields, "points_read": float(values.size)}
+    interval_s = dialect.scale.interval_s.number(known)
+    if interval_s <= 0.0:
+        raise SourceRefused(f"the preamble gives {interval_s:g} s between samples")
+    averaged = max(1, int(dialect.scale.averaged.number(known)))
+    scaled = _floats if dialect.codes.kind == "float" else _integers
+    return scaled(dialect, known, values, interval_s, averaged)
+
+
+def _integers(
+    dialect: Dialect, fields: Fields, codes: NDArray[Any], interval_s: float, averaged: int
+) -> Converted:
+    limits = np.iinfo(codes.dtype)
+    low = _whole(dialect.codes.low, fields, int(limits.min))
+    high = _whole(dialect.codes.high, fields, int(limits.max))
+    hole = _whole(dialect.codes.hole, fields, None)
+    if hole is not None:
+        _refuse_holes(int(np.count_nonzero(codes == hole)), codes.size)
+    step = code_step(codes[(codes > low) & (codes < high)])
+    top = high // step * step if step else high
+    bottom = -(-low // step) * step if step else low
+    clipped = int(np.count_nonzero(codes >= top) + np.count_nonzero(codes <= bottom))
+    volts = np.asarray(dialect.scale.volts({**fields, "code": codes.astype(np.float64)}))
+    if volts.shape != codes.shape or not np.isfinite(volts).all():
+        raise SourceRefused("the preamble gives no finite volts")
+    low_v, high_v = sorted(_volts(dialect, fields, code) for code in (bottom, top))
+    one = abs(_volts(dialect, fields, step or 1) - _volts(dialect, fields, 0))
+    bits = _bits(dialect, fields, codes, step)
+    return Converted(volts, interval_s, bits, one, low_v, high_v, clipped, averaged)
+
+
+def _floats(
+    dialect: Dialect, fields: Fields, values: NDArray[Any], interval_s: float, averaged: int
+) -> Converted:
+    volts = np.array(values, dtype=np.float64)
+    over = _marked(volts, dialect.codes.high, fields) | np.isposinf(volts)
+    under = _marked(volts, dialect.codes.low, fields) | np.isneginf(volts)
+    holes = (_marked(volts, dialect.codes.hole, fields) & ~over) | np.isnan(volts)
+    _refuse_holes(int(np.count_nonzero(holes)), volts.size)
+    good = ~(over | under)
+    if not good.any():
+        raise UnusableCapture(
+            "every sample is out of range", "Choose a larger range, then measure again."
+        )
+    volts[over], volts[under] = volts[good].max(), volts[good].min()
+    volts = np.asarray(dialect.scale.volts({**fields, "code": volts}), dtype=np.float64)
+    code = None
+    if dialect.scale.code is not None:
+        try:
+            code = abs(dialect.scale.code.number(fields)) or None
+        except FormulaError:
+            code = None
+    bits = _bits(dialect, fields, None, 0)
+    clipped = int(np.count_nonzero(over) + np.count_nonzero(under))
+    return Converted(volts, interval_s, bits, code, None, None, clipped, averaged)
+
+
+def code_step(codes: NDArray[Any]) -> int:
+    """Find the step between codes: 256 where 8 bits were shifted into 16.
+
+    Parameters
+    ----------
+    codes
+        Shape (N,), integers, without marks.
+
+    Returns
+    -------
+    int
+        The largest power of two that divides all differences; 0 where all codes are equal.
+    """
+    if codes.size == 0:
+        return 0
+    unsigned = codes.astype(np.int64)
+    differing = int(np.bitwise_or.reduce(unsigned ^ unsigned[0]))
+    return differing & -differing
+
+
+def _bits(dialect: Dialect, fields: Fields, codes: NDArray[Any] | None, step: int) -> int | None:
+    if dialect.codes.bits is not None:
+        try:
+            return int(dialect.codes.bits.number(fields))
+        except FormulaError:
+            pass
+    if codes is None or step == 0:
+        return None if codes is None else 8 * codes.dtype.itemsize
+    return 8 * codes.dtype.itemsize - int(math.log2(step))
+
+
+def _volts(dialect: Dialect, fields: Fields, code: float) -> float:
+    return dialect.scale.volts.number({**fields, "code": float(code)})
+
+
+def _whole(formula: Formula | None, fields: Fields, otherwise: Any) -> Any:
+    return otherwise if formula is None else int(formula.number(fields))
+
+
+def _marked(values: NDArray[np.float64], mark: Formula | None, fields: Fields) -> NDArray[np.bool_]:
+    if mark is None:
+        return np.zeros(values.shape, dtype=np.bool_)
+    value = mark.number(fields)
+    return np.asarray(np.abs(values - value) <= _SENTINEL_SHARE * abs(value))
+
+
+def _refuse_holes(holes: int, samples: int) -> None:
+    if holes:
+        raise UnusableCapture(
+            f"{holes} of {samples} samples are marked as missing",
+            "Set a plain real-time acquisition and a range that holds the signal, then measure again.",
+        )
