@@ -1,6 +1,6 @@
 """The crest frame: harmonics relative to the fundamental, seen from its positive crest.
 
-``Z_k = X_k exp(-j k arg X_1) / |X_1| = c_k - j s_k``. With ``rho - `` and ``phi`` the relative error
+``Z_k = X_k exp(-j k arg X_1) / |X_1| = c_k - j s_k``. With ``rho`` and ``phi`` the relative error
 of length and the error of phase of ``X_1``, and ``u_k`` the error of ``X_k`` in the crest frame,
 ``dZ_k = u_k - Z_k drho - j k Z_k dphi`` to first order: all parts share the error of ``X_1``.
 """
@@ -35,25 +35,29 @@ class CrestFrame:
     """Variance of ``|X_1|``, scaled unit squared."""
 
 
-def line_covariance(fit: Fit, orders: int, variance: float) -> Array:
-    """Covariance of ``a_1 .. a_K, b_1 .. b_K``, shape (2K, 2K), for a noise of that variance."""
-    even = slice(1, orders + 1)
-    odd = slice(0, orders)
-    tilt = np.concatenate((fit.even_tilt[even], fit.odd_tilt[odd]))
+def line_covariance(fit: Fit, orders: int, colour: Array) -> Array:
+    """Covariance of ``a_1 .. a_K, b_1 .. b_K``, shape (2K, 2K), scaled unit squared.
+
+    `colour`, shape (K,), is the noise around each order over white noise.
+    """
+    own = slice(1, orders + 1)
+    tilt = fit.tilt[:, own].ravel()
     covariance = np.multiply.outer(tilt, tilt) / fit.stiffness
-    covariance[:orders, :orders] += fit.even_inverse[even, even]
-    covariance[orders:, orders:] += fit.odd_inverse[odd, odd]
-    return variance * covariance
+    corner = fit.unit_covariance(orders + 1)
+    covariance[:orders, :orders] += corner[0, own, own]
+    covariance[orders:, orders:] += corner[1, own, own]
+    factor = np.sqrt(fit.variance * np.concatenate((colour, colour)))
+    return covariance * np.multiply.outer(factor, factor)
 
 
-def crest_frame(fit: Fit, orders: int) -> CrestFrame:
-    """Turn a fit's first `orders` orders into the crest frame."""
+def crest_frame(fit: Fit, orders: int, colour: Array) -> CrestFrame:
+    """Turn a fit's first `orders` orders into the crest frame (`colour` as in `line_covariance`)."""
     phasors = fit.phasors[1 : orders + 1]
     amplitude, phase = abs(complex(phasors[0])), math.atan2(phasors[0].imag, phasors[0].real)
     k = np.arange(1, orders + 1)
     turned = phasors * np.exp(-1j * k * phase) / amplitude
     crest, skew = turned.real, -turned.imag
-    lines = line_covariance(fit, orders, fit.variance)
+    lines = line_covariance(fit, orders, colour)
     jacobian = _jacobian(crest, skew, phase) / amplitude
     covariance = jacobian @ lines @ jacobian.T
     parts = np.empty(2 * (orders - 1))

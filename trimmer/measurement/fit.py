@@ -21,7 +21,11 @@ _BLUR = 2e-5
 """Turn of the highest order within half a block (rad) below which moments carry the sums exactly:
 the neglected term is a sixth of its square."""
 _STEPS = 30
-_STAGES = (1, 3, 8, 20)
+_STAGES = (2, 8)
+"""Orders fitted on the way: the more orders, the narrower the way to the minimum."""
+_ROUGH, _FINE = 1e-2, 1e-7
+"""A frequency counts as settled when the next step turns the highest order by less than this (rad)
+over half the record. The step is still taken, and what it leaves is its square."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -42,14 +46,8 @@ class Fit:
     """Sum of the squared residuals."""
     power: float
     """Sum of the squared samples, mean taken off."""
-    even_inverse: Array
-    """Shape (L, L), inverse Gram matrix of the cosines."""
-    odd_inverse: Array
-    """Shape (L-1, L-1), inverse Gram matrix of the sines."""
-    even_tilt: Array
-    """Shape (L,), change of ``a`` per change of ``w``: ``-G^-1 g`` of the even block."""
-    odd_tilt: Array
-    """Shape (L-1,), the same of the odd block."""
+    tilt: Array
+    """Shape (2, L), change of ``a`` and ``b`` per change of ``w``: ``-G^-1 g``."""
     stiffness: float
     """Information on ``w`` once the amplitudes are free: ``1 / stiffness`` times the noise's variance
     is the variance of ``w``."""
@@ -70,6 +68,34 @@ class Fit:
         """Variance of the noise of one sample, scaled unit."""
         return self.residual_power / max(self.freedom, 1)
 
+    def unit_covariance(self, lines: int) -> Array:
+        """Covariance of the first `lines` amplitudes at a fixed `w`, over the noise's variance.
+
+        Shape (2, lines, lines): that corner of the inverse Gram matrices.
+        """
+        unit = np.zeros((2, self.lines.count, lines))
+        unit[:, range(lines), range(lines)] = 1.0
+        return _solution(self.normal.gram, unit)[:, :lines]
+
+    def room(self, cross: Array, itself: Array) -> Array:
+        """Say what of other basis functions the fit cannot imitate.
+
+        Parameters
+        ----------
+        cross
+            Shape (2, C, L), their products with the fit's cosines and sines.
+        itself
+            Shape (2, C), their squares.
+
+        Returns
+        -------
+        Array
+            Shape (2, C), what is left of `itself`.
+        """
+        spent = np.einsum("ijk,ikj->ij", cross, _solution(self.normal.gram, cross.swapaxes(1, 2)))
+        left: Array = itself - spent
+        return left
+
     @property
     def phasors(self) -> Complex:
         """Shape (L,), ``X_i = a_i - j b_i`` about the middle of the record."""
@@ -82,98 +108,102 @@ class _Solved:
     """The amplitudes at one frequency, and the Gauss-Newton step for the frequency."""
 
     normal: Normal
-    cosines: Array
-    sines: Array
-    even_inverse: Array
-    odd_inverse: Array
-    even_tilt: Array
-    odd_tilt: Array
+    amplitudes: Array
+    tilt: Array
     explained: float
     stiffness: float
     step: float
 
 
-def solve(projections: Projections, w: float, orders: int | None = None) -> _Solved:
+def _solve(projections: Projections, w: float, orders: int | None = None) -> _Solved:
     """Solve for all amplitudes at the fundamental `w`, and for the next step of `w`.
 
-    Parameters
-    ----------
-    projections
-        The data.
-    w
-        Fundamental, radians per sample.
-    orders
-        Fit only the offset and this many orders; None takes all lines.
+    `orders` fits only the offset and that many orders; None takes all lines.
     """
     lines = projections.lines if orders is None else Lines(orders, np.empty(0))
     normal = normal_equations(projections.samples, lines, w)
     first, second = projections.totals(w, orders)
-    even_data, odd_data = first.real, -first.imag[1:]
-    even_inverse, odd_inverse = _inverse(normal.even), _inverse(normal.odd)
-    cosines = even_inverse @ even_data
-    sines = np.concatenate(([0.0], odd_inverse @ odd_data))
-    k = lines.multiples()
-    k_cos, k_sin = k * cosines, k * sines
+    data = np.stack((first.real, -first.imag))
+    data[1, 0] = 0.0
+    amplitudes = _solution(normal.gram, data)
+    k_cos, k_sin = lines.multiples() * amplitudes
     # derivative of the model: t (-k a sin + k b cos); its products with basis, itself and data
-    even_g = -(normal.even_slope @ k_cos)
-    odd_g = (normal.odd_slope @ k_sin)[1:]
-    own = k_cos @ normal.sine_curve @ k_cos + k_sin @ normal.cosine_curve @ k_sin
-    data_g = k_cos @ second.imag + k_sin @ second.real
-    even_tilt, odd_tilt = -(even_inverse @ even_g), -(odd_inverse @ odd_g)
-    stiffness = float(own + even_g @ even_tilt + odd_g @ odd_tilt)
-    score = float(data_g - cosines @ even_g - sines[1:] @ odd_g)
+    with_basis = np.stack((-(normal.even_slope @ k_cos), normal.odd_slope @ k_sin))
+    itself = k_cos @ normal.sine_curve @ k_cos + k_sin @ normal.cosine_curve @ k_sin
+    with_data = k_cos @ second.imag + k_sin @ second.real
+    tilt = -_solution(normal.gram, with_basis)
+    stiffness = float(itself + np.vdot(with_basis, tilt))
+    score = float(with_data - np.vdot(amplitudes, with_basis))
     step = score / stiffness if stiffness > 0.0 else 0.0
     return _Solved(
         normal=normal,
-        cosines=cosines,
-        sines=sines,
-        even_inverse=even_inverse,
-        odd_inverse=odd_inverse,
-        even_tilt=even_tilt,
-        odd_tilt=odd_tilt,
-        explained=float(cosines @ even_data + sines[1:] @ odd_data),
+        amplitudes=amplitudes,
+        tilt=tilt,
+        explained=float(np.vdot(amplitudes, data)),
         stiffness=stiffness,
         step=step if math.isfinite(step) else 0.0,
     )
 
 
-def _inverse(gram: Array) -> Array:
-    """Invert a Gram matrix; where two lines cannot be told apart, share between them."""
+def _solution(gram: Array, right: Array) -> Array:
+    """Solve both Gram systems; where two lines cannot be told apart, share between them.
+
+    `right` has shape (2, L) or (2, L, R).
+    """
+    columns = right if right.ndim == 3 else right[:, :, None]
     try:
-        inverse: Array = np.linalg.inv(gram)
+        solution: Array = np.linalg.solve(gram, columns)
     except np.linalg.LinAlgError:
-        inverse = np.linalg.pinv(gram, hermitian=True)
-    return inverse
+        solution = np.linalg.pinv(gram, hermitian=True) @ columns
+    return solution if right.ndim == 3 else solution[:, :, 0]
 
 
-def refine(projections: Projections, w: float, orders: int | None = None) -> tuple[float, bool]:
+def _refine(
+    projections: Projections, w: float, orders: int | None, tolerance: float
+) -> tuple[float, bool, _Solved]:
     """Gauss-Newton for the frequency on given projections.
 
-    A step is bounded by half a resolution cell, and halved until the residual no longer grows.
+    A step is bounded by half a resolution cell, and halved while it makes the fit worse.
 
     Returns
     -------
     tuple
-        The frequency, and whether it settled.
+        The frequency, whether it settled, and the solution that the last step started from.
     """
     cell = math.pi / projections.samples
-    solved = solve(projections, w, orders)
+    small = tolerance * 2.0 / (projections.samples * (orders or projections.lines.orders))
+    solved = _solve(projections, w, orders)
     for _ in range(_STEPS):
         step = max(-cell, min(cell, solved.step))
-        if abs(step) <= 1e-9 * cell / max(orders or projections.lines.orders, 1):
-            return w + step, True
+        if abs(step) <= small:
+            return w + step, True, solved
+        tried = _solve(projections, w + step, orders)
         for _ in range(6):
-            tried = solve(projections, w + step, orders)
             if tried.explained >= solved.explained * (1.0 - 1e-13):
                 break
             step *= 0.5
+            tried = _solve(projections, w + step, orders)
         w, solved = w + step, tried
-        if w <= 0.0:
+        if not 0.0 < w < math.pi:
             break
-    return w, False
+    return w, False, solved
 
 
-def fit(record: Record, lines: Lines, w: float, *, staged: bool = True) -> Fit:
+def approach(record: Record, orders: int, w: float) -> float:
+    """Bring a coarse frequency to within the reach of a fit with all orders.
+
+    Few orders are fitted first, more are taken in as the frequency gets better.
+    """
+    stages = [stage for stage in _STAGES if stage < orders] or [orders]
+    projections = project(record, Lines(stages[-1], np.empty(0)), w)
+    for stage in stages:
+        w, _, _ = _refine(projections, w, stage, _ROUGH)
+        if not 0.0 < w < math.pi / stages[-1]:
+            return 0.0
+    return w
+
+
+def fit(record: Record, lines: Lines, w: float) -> Fit:
     """Fit `lines` to a record, starting from the fundamental `w` (radians per sample).
 
     Parameters
@@ -183,40 +213,31 @@ def fit(record: Record, lines: Lines, w: float, *, staged: bool = True) -> Fit:
     lines
         Orders and nuisance lines to fit.
     w
-        Start, within about a quarter of ``2 pi / N`` of the truth.
-    staged
-        True to fit few orders first and take in more as the frequency gets better: the more orders
-        the narrower the way to the minimum.
+        Start, as `approach` gives it.
     """
-    projections = project(record, lines, w)
-    if staged:
-        for orders in (*[stage for stage in _STAGES if stage < lines.orders], lines.orders):
-            w, _ = refine(projections, w, orders)
-    converged = False
     for _ in range(4):
-        if projections.blur(w) > _BLUR:
-            projections = project(record, lines, w)
-        w, converged = refine(projections, w)
-        if converged and projections.blur(w) <= _BLUR:
+        projections = project(record, lines, w)
+        w, converged, solved = _refine(projections, w, None, _FINE)
+        if projections.blur(w) <= _BLUR or not 0.0 < w < math.pi:
             break
-    return _finished(projections, w, converged)
+    return _finished(projections, solved, w, converged)
 
 
-def _finished(projections: Projections, w: float, converged: bool) -> Fit:
-    solved = solve(projections, w)
+def _finished(projections: Projections, solved: _Solved, w: float, converged: bool) -> Fit:
+    """Take stock of a fit; the amplitudes follow the last, tiny step of the frequency."""
+    step = solved.step if converged else 0.0
     grain = np.finfo(np.float64).eps * projections.power
+    gained = 0.5 * solved.stiffness * step * step
+    amplitudes = solved.amplitudes + step * solved.tilt
     return Fit(
         samples=projections.samples,
         lines=projections.lines,
         w=w,
-        cosines=solved.cosines,
-        sines=solved.sines,
-        residual_power=max(projections.power - solved.explained, grain),
+        cosines=amplitudes[0],
+        sines=amplitudes[1],
+        residual_power=max(projections.power - solved.explained - gained, grain),
         power=projections.power,
-        even_inverse=solved.even_inverse,
-        odd_inverse=solved.odd_inverse,
-        even_tilt=solved.even_tilt,
-        odd_tilt=solved.odd_tilt,
+        tilt=solved.tilt,
         stiffness=max(solved.stiffness, np.finfo(np.float64).tiny),
         converged=converged,
         projections=projections,

@@ -38,18 +38,43 @@ def dirichlet(samples: int, w: Array) -> tuple[Array, Array, Array]:
     tuple
         ``D``, ``D'``, ``D''``, each of the shape of `w`.
     """
-    count = float(samples)
-    near = np.abs(w) * count < _TAYLOR_BELOW
-    safe = np.where(near, 1.0, w)
-    sine, cosine = np.sin(0.5 * safe), np.cos(0.5 * safe)
-    angle = 0.5 * count * safe
-    kernel = np.sin(angle) / sine
-    slope = (0.5 * count * np.cos(angle) - 0.5 * kernel * cosine) / sine
-    curve = 0.25 * (1.0 - count * count) * kernel - slope * cosine / sine
-    if near.any():
-        second = count * (count * count - 1.0) / 12.0
-        fourth = second * (3.0 * count * count - 7.0) / 20.0
-        kernel = np.where(near, count - 0.5 * second * w * w, kernel)
-        slope = np.where(near, -second * w + fourth * w**3 / 6.0, slope)
-        curve = np.where(near, -second + 0.5 * fourth * w * w, curve)
+    near = np.abs(w) * samples < _TAYLOR_BELOW
+    if not near.any():
+        return _closed(float(samples), w)
+    kernel, slope, curve = _closed(float(samples), np.where(near, 1.0, w))
+    taylor = _taylor(float(samples), w)
+    return (
+        np.where(near, taylor[0], kernel),
+        np.where(near, taylor[1], slope),
+        np.where(near, taylor[2], curve),
+    )
+
+
+def multiples(samples: int, w: float, most: int) -> tuple[Array, Array, Array]:
+    """Give the kernels at ``0, w, 2 w, .., most w``, each of shape (most + 1,); ``w`` not near 0."""
+    kernel, slope, curve = (np.empty(most + 1) for _ in range(3))
+    kernel[0], slope[0], curve[0] = samples, 0.0, -_second(float(samples))
+    kernel[1:], slope[1:], curve[1:] = _closed(float(samples), np.arange(1, most + 1) * w)
     return kernel, slope, curve
+
+
+def _closed(count: float, w: Array) -> tuple[Array, Array, Array]:
+    half = 0.5 * w
+    over_sine = 1.0 / np.sin(half)
+    cotangent = np.cos(half) * over_sine
+    angle = count * half
+    kernel = np.sin(angle) * over_sine
+    slope = (0.5 * count) * np.cos(angle) * over_sine - 0.5 * kernel * cotangent
+    curve = 0.25 * (1.0 - count * count) * kernel - slope * cotangent
+    return kernel, slope, curve
+
+
+def _second(count: float) -> float:
+    """Sum of ``t^2``."""
+    return count * (count * count - 1.0) / 12.0
+
+
+def _taylor(count: float, w: Array) -> tuple[Array, Array, Array]:
+    second = _second(count)
+    fourth = second * (3.0 * count * count - 7.0) / 20.0
+    return count - 0.5 * second * w * w, -second * w + fourth * w**3 / 6.0, -second + 0.5 * fourth * w * w

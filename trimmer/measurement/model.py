@@ -15,7 +15,7 @@ from functools import lru_cache
 import numpy as np
 from numpy.typing import NDArray
 
-from trimmer.measurement.kernels import Array, dirichlet
+from trimmer.measurement.kernels import Array, dirichlet, multiples
 
 Complex = NDArray[np.complex128]
 
@@ -44,20 +44,20 @@ class Lines:
 
 
 @lru_cache(maxsize=32)
-def _indices(orders: int) -> tuple[NDArray[np.intp], NDArray[np.intp]]:
-    """Give ``|i - j|`` and ``i + j`` for orders 0..K: the Toeplitz and the Hankel index."""
+def _indices(orders: int) -> tuple[NDArray[np.intp], NDArray[np.intp], Array]:
+    """Give ``|l - i|``, ``l + i`` (the Toeplitz and the Hankel index) and the sign of ``l - i``."""
     k = np.arange(orders + 1)
-    return np.abs(k[:, None] - k[None, :]), k[:, None] + k[None, :]
+    apart = k[:, None] - k[None, :]
+    return np.abs(apart), k[:, None] + k[None, :], np.sign(apart).astype(np.float64)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Normal:
     """Normal equations of a set of lines at one fundamental frequency."""
 
-    even: Array
-    """Shape (L, L), sums of products of cosines."""
-    odd: Array
-    """Shape (L-1, L-1), sums of products of sines (the offset has none)."""
+    gram: Array
+    """Shape (2, L, L), sums of products of cosines, and of sines. The offset has no sine: its place
+    holds a 1 on the diagonal, so that its amplitude comes out as 0."""
     even_slope: Array
     """Shape (L, L), sums of ``cos_l * t sin_i``."""
     odd_slope: Array
@@ -72,9 +72,13 @@ def normal_equations(samples: int, lines: Lines, w: float) -> Normal:
     """Build the Gram matrices of `lines` at fundamental `w` (radians per sample) in closed form."""
     minus, plus = _kernels(samples, lines, w)
     (d_minus, s_minus, c_minus), (d_plus, s_plus, c_plus) = minus, plus
+    gram = np.empty((2, *d_minus.shape))
+    np.add(d_minus, d_plus, out=gram[0])
+    np.subtract(d_minus, d_plus, out=gram[1])
+    gram *= 0.5
+    gram[1, 0, 0] = 1.0
     return Normal(
-        even=0.5 * (d_minus + d_plus),
-        odd=0.5 * (d_minus - d_plus)[1:, 1:],
+        gram=gram,
         # cos_l t sin_i = t [sin(w_i + w_l) + sin(w_i - w_l)] / 2; `s_minus` is taken at w_l - w_i
         even_slope=-0.5 * (s_plus - s_minus),
         odd_slope=-0.5 * (s_plus + s_minus),
@@ -89,9 +93,8 @@ Kernels = tuple[Array, Array, Array]
 def _kernels(samples: int, lines: Lines, w: float) -> tuple[Kernels, Kernels]:
     """Give the kernels at all ``w_l - w_i`` and ``w_l + w_i`` (row l, column i)."""
     k = lines.orders
-    table = dirichlet(samples, np.arange(2 * k + 1) * w)
-    near, far = _indices(k)
-    sign = np.sign(np.arange(k + 1)[:, None] - np.arange(k + 1)[None, :]).astype(np.float64)
+    table = multiples(samples, w, 2 * k)
+    near, far, sign = _indices(k)
     minus = (table[0][near], sign * table[1][near], table[2][near])
     plus = (table[0][far], table[1][far], table[2][far])
     if not lines.fixed.size:
@@ -111,3 +114,27 @@ def _kernels(samples: int, lines: Lines, w: float) -> tuple[Kernels, Kernels]:
             built.append(full)
         whole.append((built[0], built[1], built[2]))
     return whole[0], whole[1]
+
+
+def cross_products(samples: int, w: Array, w_i: Array) -> Array:
+    """Give the sums of products of cosines, and of sines, of two sets of lines.
+
+    Parameters
+    ----------
+    samples
+        N.
+    w, w_i
+        Shapes (A,) and (B,), or shapes that broadcast when `w` gets a last axis; radians per sample.
+
+    Returns
+    -------
+    Array
+        Shape (2, A, B).
+    """
+    minus, _, _ = dirichlet(samples, w[:, None] - w_i)
+    plus, _, _ = dirichlet(samples, w[:, None] + w_i)
+    products = np.empty((2, *minus.shape))
+    np.add(minus, plus, out=products[0])
+    np.subtract(minus, plus, out=products[1])
+    products *= 0.5
+    return products

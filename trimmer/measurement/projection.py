@@ -122,7 +122,9 @@ def project(record: Record, lines: Lines, w: float) -> Projections:
         if piece.size < (last - first) * length:  # zeros add nothing to any sum
             piece = np.concatenate((piece, np.zeros((last - first) * length - piece.size)))
         np.matmul(piece.reshape(last - first, length), basis, out=found[first:last])
-    cosines, sines, t_cosines, t_sines = np.split(found, 4, axis=1)
+    count = lines.count
+    cosines, sines = found[:, :count], found[:, count : 2 * count]
+    t_cosines, t_sines = found[:, 2 * count : 3 * count], found[:, 3 * count :]
     centres = np.arange(blocks) * float(length) + 0.5 * (length - 1) - 0.5 * (samples - 1)
     return Projections(
         samples=samples,

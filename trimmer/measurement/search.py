@@ -137,3 +137,19 @@ def zoom(record: Record, w: float) -> float:
     power = np.roll(spectrum.real**2 + spectrum.imag**2, padded // 2)
     bin_ = _largest_line(power, 1.0, 1.0) - padded // 2
     return w + 2.0 * math.pi * bin_ / (padded * projections.length)
+
+
+def nearest_line(record: Record, w: float, reach: float) -> float:
+    """Find the strongest line within `reach` of `w`, both in radians per sample."""
+    projections = project(record, Lines(1, np.empty(0)), w)
+    beat = projections.sums[:, 1] * np.exp(-1j * w * projections.centres)
+    padded = _padded(beat.size, 4.0)
+    spectrum = np.fft.fft(beat * _hann(beat.size), padded)
+    power = np.roll(spectrum.real**2 + spectrum.imag**2, padded // 2)
+    bins = max(2, math.ceil(reach * padded * projections.length / (2.0 * math.pi)))
+    start = max(0, padded // 2 - bins)
+    window = power[start : padded // 2 + bins + 1]
+    bin_ = _largest_line(window, 1.0, 1.0)
+    if bin_ <= 0.0:
+        return w
+    return w + 2.0 * math.pi * (bin_ + start - padded // 2) / (padded * projections.length)

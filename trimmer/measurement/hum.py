@@ -1,0 +1,132 @@
+"""Lines that do not belong to the unit: hum, its sidebands, and a wandering offset.
+
+They are looked for in what the fit leaves, and those that are there for certain are fitted along
+with the orders, so that they do not leak into them.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from trimmer.measurement.fit import Fit
+from trimmer.measurement.kernels import Array
+from trimmer.measurement.model import Lines, cross_products
+from trimmer.measurement.projection import Record, project
+from trimmer.measurement.reading import Flag
+from trimmer.measurement.search import nearest_line
+
+MAINS_HZ = (50.0, 60.0)
+_CERTAIN = 32.0
+"""Chi-square with 2 degrees of freedom above which a line is there: chance 1e-7."""
+_APART = 0.7
+"""Lines closer than this many cycles of the record cannot be told apart."""
+_SLOW = 0.25
+"""Cycles of the record of the line that stands for a wandering offset: nearly a parabola."""
+_TOLD = 2e-4
+"""Ratio to the fundamental from which hum is worth a flag."""
+_UNSTEADY_HZ = 0.5
+"""Mains may be off its nominal frequency by this much."""
+
+
+@dataclass(frozen=True, slots=True)
+class Foreign:
+    """A line that may be in the record."""
+
+    name: str
+    """``mains``, ``sideband`` or ``slow``."""
+    mains_hz: float
+    """Mains frequency it belongs to; 0 for the wandering offset."""
+    w: float
+    """Radians per sample."""
+
+
+def candidates(record: Record, fit: Fit, interval_s: float, mains_hz: float | None) -> list[Foreign]:
+    """List the lines that could be told apart in this record, nearest kin only once."""
+    cell = 2.0 * math.pi / fit.samples
+    wanted = [Foreign("slow", 0.0, _SLOW * cell)]
+    for mains in (mains_hz,) if mains_hz else MAINS_HZ:
+        w = 2.0 * math.pi * mains * interval_s
+        if w < _SLOW * cell or w > 0.3 * math.pi:
+            continue
+        if w * fit.samples > 2.0 * math.pi * mains / _UNSTEADY_HZ * 0.2:
+            w = nearest_line(record, w, w * _UNSTEADY_HZ / mains)
+        wanted += [Foreign("mains", mains, multiple * w) for multiple in (1, 2, 3)]
+        wanted += [Foreign("sideband", mains, fit.w + shift * w) for shift in (-1, 1, -2, 2)]
+    own = fit.w * np.arange(fit.lines.orders + 2)
+    found: list[Foreign] = []
+    for line in wanted:
+        near_own = float(np.abs(own - line.w)[1:].min()) < _APART * cell
+        rivals = [other.w for other in found if other.mains_hz in (0.0, line.mains_hz)]
+        near_other = any(abs(w - line.w) < 0.5 * _APART * cell for w in rivals)
+        slow = line.w < _APART * cell
+        if line.w <= 0.0 or line.w > 0.95 * math.pi or near_own or near_other:
+            continue
+        if slow and line.name != "slow" and not (line.name == "mains" and line.w > _SLOW * cell):
+            continue
+        found.append(line)
+    return found
+
+
+def certain_lines(record: Record, fit: Fit, lines: Sequence[Foreign]) -> list[Foreign]:
+    """Keep those lines that the residual holds for certain; of two mains frequencies, the better."""
+    if not lines:
+        return []
+    scores = _scores(record, fit, np.array([line.w for line in lines]))
+    totals: dict[float, float] = {}
+    for line, score in zip(lines, scores, strict=True):
+        if line.mains_hz:
+            totals[line.mains_hz] = max(totals.get(line.mains_hz, 0.0), float(score))
+    best = max(totals, key=lambda mains: totals[mains]) if totals else 0.0
+    kept = [
+        (float(score), line)
+        for line, score in zip(lines, scores, strict=True)
+        if score > _CERTAIN and line.mains_hz in (0.0, best)
+    ]
+    return [line for _, line in sorted(kept, key=lambda item: -item[0])]
+
+
+def _scores(record: Record, fit: Fit, w: Array) -> Array:
+    """Chi-square of each line in the residual, shape of `w`."""
+    data, _ = project(record, Lines(1, w), fit.w).totals(fit.w)
+    cross = cross_products(fit.samples, w, fit.lines.frequencies(fit.w))
+    cross[1, :, 0] = 0.0
+    itself = cross_products(fit.samples, w, w[:, None])[:, :, 0]
+    left = np.stack((data.real[2:], -data.imag[2:]))
+    left -= (cross @ np.stack((fit.cosines, fit.sines))[:, :, None])[:, :, 0]
+    room = fit.room(cross, itself)
+    usable = room > 1e-5 * fit.samples
+    scores = np.where(usable, left**2 / np.where(usable, room, 1.0), 0.0).sum(axis=0)
+    scaled: Array = scores / fit.variance
+    return scaled
+
+
+def hum_report(fit: Fit, lines: Sequence[Foreign]) -> tuple[dict[str, float], list[Flag]]:
+    """Tell what the fitted foreign lines amount to, as ratios to the fundamental."""
+    sizes = np.hypot(fit.cosines, fit.sines)
+    ratios = sizes[fit.lines.orders + 1 :] / sizes[1]
+    extra: dict[str, float] = {}
+    flags = []
+    for name in ("mains", "sideband", "slow"):
+        held = [float(r) for r, line in zip(ratios, lines, strict=True) if line.name == name]
+        if held:
+            extra[f"{name}_ratio"] = math.sqrt(sum(r * r for r in held))
+    hum = math.hypot(extra.get("mains_ratio", 0.0), extra.get("sideband_ratio", 0.0))
+    if hum > 0.0:
+        mains = max(line.mains_hz for line in lines)
+        extra["mains_hz"] = mains
+        extra["hum_ratio"] = hum
+        if hum > _TOLD:
+            where = "mains frequency" if "mains_ratio" in extra else "sidebands of the fundamental"
+            flags.append(
+                Flag(
+                    "hum",
+                    f"Hum of {100 * hum:.2g} % of the fundamental ({mains:g} Hz and multiples, at the "
+                    f"{where}).",
+                    "Shorten the probe's ground, keep mains cables away, and check the unit's supply.",
+                )
+            )
+    return extra, flags
