@@ -35,8 +35,11 @@ def run(options: argparse.Namespace) -> int:
             if not text.strip():
                 continue
             try:
-                bench.turn(*parse_turn(text))
+                trim, turns = parse_turn(text)
+                bench.turn(trim, turns)
             except ValueError as error:
                 complain(error, "Write a trim and its screw turns, such as: upper 0.06")
+            else:
+                print(f"{trim} {turns:+.4f}", flush=True)  # tells a script that it is done
         while True:  # the end of stdin leaves the instrument running, as a power switch would
             time.sleep(3600.0)
