@@ -214,6 +214,8 @@ class Scripted:
     """Whether it stays open after the last report until it is stopped or told to quit."""
     heard: list[Word] = field(default_factory=list)
     """Words said, in order."""
+    said: bool = False
+    """Whether all reports have been handed over."""
     ended: bool = False
     """Whether `run` has come to its end."""
     _words: SimpleQueue[Word] = field(default_factory=SimpleQueue)
@@ -235,6 +237,7 @@ class Scripted:
                 step()
             else:
                 yield step
+        self.said = True
         while self.holds and not stop() and "quit" not in self.heard:
             time.sleep(0.005)
         self.ended = True

@@ -34,6 +34,11 @@ class Mailbox:
                 self._reports.append(report)
             return first
 
+    @property
+    def empty(self) -> bool:
+        """Whether nothing lies in it. Safe from any thread."""
+        return not self._reports
+
     def take(self) -> list[Report]:
         """Empty the box, oldest first. Safe from any thread."""
         with self._lock:

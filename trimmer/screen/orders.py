@@ -71,7 +71,7 @@ def _awaited(awaiting: Awaiting) -> Order:
 
 def _turning(advice: Advice, word: Follow | None) -> Order:
     """Say the turn, or the word for the hand that is making it."""
-    say = "turn" if word is None else word.say
+    say = "turn" if word is None else "wait" if word.still else word.say
     if say == "slow":
         return Order(
             "slow", (("SLOW",),), _left(advice, word), advice.trim, advice.sense,

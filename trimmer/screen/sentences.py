@@ -38,7 +38,7 @@ def expectation(view: View) -> str:
         return view.awaiting.remedy + ("" if left is None else f" Given up in {left:.0f} s.")
     said = []
     if view.reading is not None:
-        said.append(f"THD {100.0 * view.reading.thd.value:.2f} %")
+        said.append(f"THD {100.0 * view.reading.thd.value:.2f} % now")
     advice = view.advice
     if advice is not None and advice.expected_thd is not None:
         rise = ", up before it comes down" if advice.rises_first else ""
@@ -131,4 +131,4 @@ def kept(view: View) -> str:
     if view.opened is None:
         return "book not open yet"
     count = len(view.steps)
-    return f"sheet {view.opened.sheet}: {count} kept"
+    return f"sheet {view.opened.sheet}: {count} in the book"

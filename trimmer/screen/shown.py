@@ -88,13 +88,12 @@ def keys(view: View, hand: KeyedHand | None, silent: bool) -> tuple[Key, ...]:
     listed: list[Key] = []
     turning = view.advice is not None and not view.over
     if hand is not None:
-        where = f"on {hand.trim}"
         other = "lower" if hand.trim == "upper" else "upper"
         coarse, fine = hand.degrees(fine=False), hand.degrees(fine=True)
         listed += [
-            Key("↑↓", where, f"screen.hold('{other}')"),
+            Key("↑↓", "other trim", f"screen.hold('{other}')"),
             Key("←", "", "screen.turn('counter-clockwise', False)"),
-            Key("→", f"{coarse:.2g}°", "screen.turn('clockwise', False)"),
+            Key("→", f"turn {hand.trim} {coarse:.2g}°", "screen.turn('clockwise', False)"),
             Key(",", "", "screen.turn('counter-clockwise', True)"),
             Key(".", f"{fine:.2g}°", "screen.turn('clockwise', True)"),
         ]

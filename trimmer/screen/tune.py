@@ -32,6 +32,9 @@ FRAME_S = 1 / 20
 """The shortest time between two frames."""
 
 
+PANES_S = 0.25
+"""The shortest time between two pictures of the panes while the hand turns: a slow line has no room
+for more, and the eyes are on the bar."""
 BESIDE_S = 20.0
 """How long the cautions stand beside a session on the simulated unit."""
 
@@ -88,6 +91,7 @@ class TuneScreen(Screen[None]):
         self._frame_at = 0.0
         self._frame_due = False
         self._beside_until = 0.0
+        self._panes_due = 0.0
 
     def compose(self) -> ComposeResult:
         """Lay out: the turn, the bar, why, the panes, what matters, where things stand, keys."""
@@ -143,6 +147,11 @@ class TuneScreen(Screen[None]):
         if self.view.over:
             self.post_message(self.Over(self.view, self.leaving))
 
+    @property
+    def caught_up(self) -> bool:
+        """Whether everything the session has said is on the screen."""
+        return self._mailbox.empty and not self._frame_due
+
     def ring(self, before: View) -> None:
         """Ring for the change from `before` to now."""
         bell = None if self.silent else rung(before, self.view)
@@ -157,12 +166,19 @@ class TuneScreen(Screen[None]):
         self.query_one(WordsWidget).order = value.order
         self._show_lines(value)
         self._show_bar(value)
-        self.query_one(ShapeWidget).trace = self.view.trace
-        self.query_one(ShapeWidget).dots = self.dots
+        self._show_panes(now)
+        self.query_one(KeysWidget).keys = value.keys
+
+    def _show_panes(self, now: float) -> None:
+        """Show shape, parts and course; while the hand turns less often than the bar."""
+        if self.view.word is not None and now < self._panes_due:
+            return
+        self._panes_due = now + PANES_S
+        shape = self.query_one(ShapeWidget)
+        shape.trace, shape.dots = self.view.trace, self.dots
         self.query_one(PartsWidget).split = self.view.parts
         course = self.query_one(CourseWidget)
         course.steps, course.floor = self.view.steps, self.view.floor
-        self.query_one(KeysWidget).keys = value.keys
 
     def _show_lines(self, value: Shown) -> None:
         self.query_one(WordyWidget).sentences = value.why
@@ -205,6 +221,7 @@ class TuneScreen(Screen[None]):
     def action_glyphs(self) -> None:
         """Draw curves in braille or in block characters."""
         self.dots = Dots.BLOCK if self.dots is Dots.BRAILLE else Dots.BRAILLE
+        self._panes_due = 0.0
         self.display_view()
 
     def leave(self) -> None:

@@ -10,12 +10,10 @@ import numpy as np
 from trimmer.guidance.advice import Sense, Trim
 from trimmer.screen.pictures.raster import Canvas, Mask, Point
 
-Sign = Literal[
-    "turn", "slow", "stop", "wrong-trim", "wrong-way", "wait", "look", "lost", "done", "ended"
-]
+Sign = Literal["turn", "slow", "stop", "wrong-trim", "wrong-way", "wait", "lost", "done", "ended"]
 
 
-def screw(canvas: Canvas, sense: Sense, angle: float, broken: bool = False) -> Mask:
+def screw(canvas: Canvas, sense: Sense, angle: float) -> Mask:
     """Draw a trim from the screwdriver's side: its slotted screw, and round it the way to turn.
 
     Parameters
@@ -26,31 +24,53 @@ def screw(canvas: Canvas, sense: Sense, angle: float, broken: bool = False) -> M
         Which way the arrow goes round.
     angle
         How far the slot stands from upright, radians clockwise.
-    broken
-        Draw the arrow in pieces: the way is still right, the haste is not.
     """
-    radius = min(canvas.columns / 2, 2 * canvas.rows / 1.82) - 0.2
-    centre = (canvas.columns / 2, radius + (2 * canvas.rows - 1.82 * radius) / 2)
-    thick = max(1.5, 0.22 * radius)
-    middle = radius - thick / 2 - 0.4 * thick
-    tip = math.radians(82)
-    body = canvas.arc(centre, middle - thick / 2, middle + thick / 2, math.radians(-132), tip)
-    if broken:
-        x, y = canvas.grid()
-        turned = np.arctan2(x - centre[0], centre[1] - y)
-        body &= np.sin(turned * 7.0) > -0.35
-    at = (centre[0] + middle * math.sin(tip), centre[1] - middle * math.cos(tip))
-    arrow = body | _head(canvas, at, (math.cos(tip), math.sin(tip)), 1.6 * thick)
-    if sense == "counter-clockwise":
-        arrow = arrow[:, ::-1]
-    inner = middle - thick / 2 - max(1.0, 0.12 * radius)
+    centre, radius, inner = _rings(canvas)
     across: Point = (math.sin(angle) * radius, -math.cos(angle) * radius)
     slot = canvas.stroke(
         (centre[0] - across[0], centre[1] - across[1]),
         (centre[0] + across[0], centre[1] + across[1]),
         max(1.0, 0.3 * inner),
     )
-    return np.asarray(arrow | (canvas.disc(centre, inner) & ~slot))
+    return np.asarray(_round(canvas, sense, 0.0) | (canvas.disc(centre, inner) & ~slot))
+
+
+def slowing(canvas: Canvas, sense: Sense) -> Mask:
+    """The way to turn in short pieces, and upright bars where the screw was: slowly now."""
+    centre, _, inner = _rings(canvas)
+    bars = np.zeros((1, 1), dtype=bool)
+    for place in (-0.72, 0.0, 0.72):
+        x = centre[0] + place * inner
+        bars = bars | canvas.stroke(
+            (x, centre[1] - 0.8 * inner), (x, centre[1] + 0.8 * inner), max(1.0, 0.3 * inner)
+        )
+    return np.asarray(_round(canvas, sense, 0.55) | bars)
+
+
+def _rings(canvas: Canvas) -> tuple[Point, float, float]:
+    """Give the centre, the arrow's outer radius and the screw's."""
+    radius = min(canvas.columns / 2, 2 * canvas.rows / 1.82) - 0.2
+    centre = (canvas.columns / 2, radius + (2 * canvas.rows - 1.82 * radius) / 2)
+    return centre, radius, radius - 1.4 * _thick(radius) - max(1.0, 0.12 * radius)
+
+
+def _thick(radius: float) -> float:
+    return max(1.5, 0.22 * radius)
+
+
+def _round(canvas: Canvas, sense: Sense, gaps: float) -> Mask:
+    """An arrow round the screw, left out for so much of its way in even gaps."""
+    centre, radius, _ = _rings(canvas)
+    thick = _thick(radius)
+    middle, tip = radius - 0.9 * thick, math.radians(82)
+    body = canvas.arc(centre, middle - thick / 2, middle + thick / 2, math.radians(-132), tip)
+    if gaps:
+        x, y = canvas.grid()
+        turned = np.arctan2(x - centre[0], centre[1] - y)
+        body &= (turned * 3.5 / math.pi) % 1.0 > gaps
+    at = (centre[0] + middle * math.sin(tip), centre[1] - middle * math.cos(tip))
+    arrow = body | _head(canvas, at, (math.cos(tip), math.sin(tip)), 1.6 * thick)
+    return np.asarray(arrow if sense == "clockwise" else arrow[:, ::-1])
 
 
 def _head(canvas: Canvas, at: Point, along: Point, half: float) -> Mask:
@@ -182,12 +202,11 @@ def sign(
     canvas = Canvas(max(4, columns), max(2, rows))
     masks = {
         "turn": lambda: screw(canvas, sense, angle),
-        "slow": lambda: screw(canvas, sense, angle, broken=True),
+        "slow": lambda: slowing(canvas, sense),
         "stop": lambda: octagon(canvas),
         "wrong-trim": lambda: crossed(canvas, trim),
         "wrong-way": lambda: turn_round(canvas, sense),
         "wait": lambda: hourglass(canvas),
-        "look": lambda: hourglass(canvas),
         "lost": lambda: gap(canvas),
         "done": lambda: tick(canvas),
         "ended": lambda: square(canvas),

@@ -94,8 +94,7 @@ def drawn(curve: Curve, low: float, high: float, rows: int, dots: Dots) -> Mask:
     """
     at = _pixel(curve, low, high, rows, dots)
     before = np.concatenate([at[:1], at[:-1]])
-    half = (at + before) // 2
-    far = np.where(at > before, half + 1, half)
+    far = before + np.sign(at - before)
     line = np.arange(rows * dots.value[1])[:, None]
     return np.asarray((line >= np.minimum(at, far)) & (line <= np.maximum(at, far)))
 

@@ -19,12 +19,19 @@ _TILES: dict[Ground, tuple[str, str]] = {
     "checks": ("▀▄", "▀▄"),
     "slants": ("╱", "╱"),
 }
-_ROLES: dict[Ground, Role] = {
+_GROUNDS: dict[Ground, Role] = {
     "bare": "strong",
     "bars": "care",
     "solid": "halt",
     "checks": "halt",
     "slants": "halt",
+}
+_INKS: dict[Ground, Role] = {
+    "bare": "strong",
+    "bars": "strong",
+    "solid": "halt",
+    "checks": "strong",
+    "slants": "strong",
 }
 _INVERSE = str.maketrans(" ▘▝▀▖▌▞▛▗▚▐▜▄▙▟█", "█▟▙▄▜▐▚▗▛▞▌▖▀▝▘ ")
 
@@ -80,57 +87,39 @@ def words(ways: Ways, aside: str, width: int, height: int, ground: Ground = "bar
     """
     margin = 0 if ground == "bare" else 2
     chosen = setting(ways, width - 2 * margin, height)
-    lines = [line for text, size in chosen for line in [*letters(text, size), *[""] * size.air]][
-        : -chosen[-1][1].air or None if chosen else None
-    ]
-    if not chosen:
-        lines = [fitted(" ".join(ways[0]), width)]
-    small = [aside] if aside and len(lines) + 1 <= height else []
-    left = max(0, width - max(map(len, [*lines, *small]), default=0)) // 2
+    lines = _lines(chosen) if chosen else [fitted(" ".join(ways[0]), width)]
+    small = [fitted(aside, width - 2).rstrip()] if aside and len(lines) < height else []
     top = max(0, height - len(lines) - len(small)) // 2
+    left = max(0, width - max(map(len, [*lines, *small]))) // 2 if ground == "bare" else None
     rows: list[Row] = []
     for y in range(height):
         at = y - top
         if 0 <= at < len(lines):
-            rows.append(_laid(lines[at], width, y, ground, left if ground == "bare" else None))
+            inked = lines[at].translate(_INVERSE) if ground == "solid" else lines[at]
+            rows.append(_laid(inked, _INKS[ground], width, y, ground, left))
         elif small and at == len(lines):
-            rows.append(_noted(small[0], width, y, ground, left))
+            rows.append(_laid(small[0], "plain", width, y, ground, left))
         else:
-            rows.append(_laid("", width, y, ground, 0))
+            rows.append(_laid("", "plain", width, y, ground, 0))
     return tuple(rows)
 
 
-def _laid(line: str, width: int, y: int, ground: Ground, left: int | None) -> Row:
-    """Lay a line of letters on its ground, a cell of air to each side of it."""
-    role = _ROLES[ground]
-    inked = line.translate(_INVERSE) if ground == "solid" else line
-    start = (width - len(line)) // 2 if left is None else left
-    air = 1 if line and ground not in ("bare", "solid") else 0
-    begin = _tiled(0, max(0, start - air), y, ground)
-    end = _tiled(start + len(line) + air, width, y, ground)
-    space = " " * air
-    return (Run(begin, role), Run(f"{space}{inked}{space}", _ink(ground)), Run(end, role))
+def _lines(chosen: tuple[tuple[str, Size], ...]) -> list[str]:
+    """Draw the lines with the air they need between them."""
+    drawn = [[*letters(text, size), *[""] * size.air] for text, size in chosen]
+    lines = [line for block in drawn for line in block]
+    return lines[: len(lines) - chosen[-1][1].air]
 
 
-def _noted(text: str, width: int, y: int, ground: Ground, left: int) -> Row:
-    """Lay the small line."""
-    shown = text if len(text) <= width - 2 else fitted(text, width - 2)
-    start = left if ground == "bare" else (width - len(shown)) // 2
-    air = 0 if ground == "bare" else 1
-    begin = _tiled(0, max(0, start - air), y, ground)
-    end = _tiled(start + len(shown) + air, width, y, ground)
-    return (
-        Run(begin, _ROLES[ground]),
-        Run(f"{' ' * air}{shown}{' ' * air}", "plain"),
-        Run(end, _ROLES[ground]),
-    )
-
-
-def _ink(ground: Ground) -> Role:
-    return "halt" if ground == "solid" else "strong"
-
-
-def _tiled(begin: int, end: int, y: int, ground: Ground) -> str:
-    """Give a stretch of the ground, in step with its neighbours."""
+def _laid(text: str, role: Role, width: int, y: int, ground: Ground, left: int | None) -> Row:
+    """Lay a text on its ground, a cell of air to each side of it; in the middle where `left` is None."""
+    air = " " if text and ground not in ("bare", "solid") else ""
+    shown = f"{air}{text}{air}"[:width]
+    start = (width - len(shown)) // 2 if left is None else left
     tile = _TILES[ground][y % 2]
-    return "".join(tile[x % len(tile)] for x in range(begin, end))
+    field = (tile * (width // len(tile) + 1))[:width]
+    return (
+        Run(field[:start], _GROUNDS[ground]),
+        Run(shown, role),
+        Run(field[start + len(shown) :], _GROUNDS[ground]),
+    )
