@@ -22,13 +22,14 @@ class Courier:
     ----------
     outbox
         What is to be delivered.
-    prepared
-        True where the server's schema was brought up to date already.
+    lost
+        Why the server could not be reached when the book was opened; None where it answered and its
+        schema is up to date.
     """
 
-    def __init__(self, outbox: Outbox, *, prepared: bool) -> None:
+    def __init__(self, outbox: Outbox, lost: BookError | None) -> None:
         self._outbox = outbox
-        self._prepared = prepared
+        self._prepared = lost is None
         self._change = threading.Condition()
         self._state: State = "working"
         self._wanted = True
@@ -36,6 +37,8 @@ class Courier:
         self._away = False
         self._notices: list[Notice] = []
         self._refusals = 0
+        if lost is not None:
+            self._gone(lost)
         self._thread = threading.Thread(target=self._run, name="book-courier", daemon=True)
         self._thread.start()
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from itertools import islice
 from pathlib import Path
-from typing import Any
+from typing import BinaryIO
 
 from pydantic import ValidationError
 
@@ -45,16 +45,19 @@ def import_book(book: Book, path: Path) -> Merged:
         ) from error
 
 
-def _lines(file: Any) -> Iterator[tuple[int, bytes]]:
+def _lines(file: BinaryIO) -> Iterator[tuple[int, bytes]]:
     """Give the rows' texts with their line numbers, without the array's brackets and commas."""
-    number = 0
+    number, last = 0, b""
     while line := file.readline(_LONGEST_LINE + 1):
         number += 1
         if len(line) > _LONGEST_LINE:
             raise BookError(f"Line {number} is longer than any row of a book.", _REMEDY)
-        text = line.strip().removesuffix(b",")
+        last = line.strip()
+        text = last.removesuffix(b",")
         if text and text not in (b"[", b"]"):
             yield number, text
+    if last != b"]":
+        raise BookError(f"The export is cut short after line {number}.", _REMEDY)
 
 
 def _entries(lines: Iterator[tuple[int, bytes]], path: Path) -> Iterator[Row]:

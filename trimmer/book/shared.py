@@ -39,15 +39,15 @@ class SharedBook(Book):
         The file on this machine.
     server
         The server.
-    prepared
-        True where the server answered and its schema is up to date.
+    lost
+        Why the server could not be reached; None where it answered and its schema is up to date.
     """
 
-    def __init__(self, local: Store, server: Store, *, prepared: bool) -> None:
+    def __init__(self, local: Store, server: Store, lost: BookError | None) -> None:
         super().__init__(local)
         self._server = server
         self._outbox = Outbox(local, server)
-        self._courier = Courier(self._outbox, prepared=prepared)
+        self._courier = Courier(self._outbox, lost)
 
     @property
     def location(self) -> str:
@@ -177,4 +177,4 @@ def open_shared(place: Place) -> SharedBook:
             local.close()
             raise
         lost = error
-    return SharedBook(local, server, prepared=lost is None)
+    return SharedBook(local, server, lost)

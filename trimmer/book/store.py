@@ -107,9 +107,7 @@ class Store:
         sheets = rows = new = 0
         with guarded(self.shown), self.writing() as connection:
             for batch in batches:
-                known = _known(connection, batch)
-                fresh = [row for row in batch if row.values["id"] not in known]
-                new += insert(connection, fresh, waits=waits)
+                new += insert(connection, _fresh(connection, batch), waits=waits)
                 sheets += sum(row.table is t.sheet for row in batch)
                 rows += len(batch)
         return Merged(sheets, rows, new)
@@ -146,20 +144,35 @@ def insert(connection: sa.Connection, rows: Sequence[Row], *, waits: bool = Fals
     return added
 
 
-def _known(connection: sa.Connection, batch: Sequence[Row]) -> set[str]:
-    """Give the ids of the rows that are there already and say the same."""
-    known: set[str] = set()
+def _fresh(connection: sa.Connection, batch: Sequence[Row]) -> list[Row]:
+    """Give the rows that are not there yet, each once.
+
+    Raises
+    ------
+    BookError
+        Two rows with one id say different things.
+    """
+    there: dict[str, Row] = {}
     for table in {row.table for row in batch}:
-        given = {row.values["id"]: row for row in batch if row.table is table}
-        for each, there in by_id(connection, table, given).items():
-            for name in given[each].values:
-                if not _same(name, given[each].values[name], there.values[name]):
-                    raise BookError(
-                        f"The {table.name} {each} says another {name} than the book does.",
-                        "Find out which bench changed it; nothing was taken in.",
-                    )
-            known.add(each)
-    return known
+        there |= by_id(connection, table, {r.values["id"] for r in batch if r.table is table})
+    fresh = []
+    for row in batch:
+        known = there.get(row.values["id"])
+        if known is None:
+            there[row.values["id"]] = row
+            fresh.append(row)
+        else:
+            _check_same(row, known)
+    return fresh
+
+
+def _check_same(row: Row, known: Row) -> None:
+    for name, value in row.values.items():
+        if row.table is not known.table or not _same(name, value, known.values[name]):
+            raise BookError(
+                f"The {row.table.name} {row.values['id']} says another {name} than the one known.",
+                "Find out which bench changed it; nothing was taken in.",
+            )
 
 
 def _same(name: str, given: Any, there: Any) -> bool:

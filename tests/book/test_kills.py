@@ -1,0 +1,19 @@
+"""A program killed at any moment has kept every turn it acknowledged; the campaign does 200."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+from tests.book.kills import kill_once
+
+
+def test_a_killed_program_has_kept_what_it_acknowledged(tmp_path: Path) -> None:
+    kills = [kill_once(tmp_path / str(seed), seed) for seed in range(5)]
+    assert all(kill.kept >= kill.acknowledged for kill in kills)
+    assert sum(kill.acknowledged for kill in kills) > 0
+    assert any(kill.resumed for kill in kills)
+
+
+def test_a_book_survives_one_kill_after_another(tmp_path: Path) -> None:
+    kept = [kill_once(tmp_path, seed).kept for seed in range(100, 103)]
+    assert kept == sorted(kept)
