@@ -8,7 +8,7 @@ the bits below (W. R. Bennett, *Spectra of quantized signals*, Bell System Techn
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from math import ceil, log2, pi
 
 import numpy as np
@@ -26,6 +26,8 @@ MOST_AVERAGED = 1024
 MOST_POINTS = 2_000_000
 MOST_WORK = 50_000_000
 """Points times averaged frames that one acquisition may take."""
+PEAK_FINER = 4
+"""How much finer peak detection samples than it hands out."""
 COUPLING_HZ = 7.0
 """Corner of the input when AC-coupled."""
 
@@ -46,6 +48,8 @@ class Settings:
     """Frames averaged into one."""
     ac: bool = False
     """True when the input is AC-coupled."""
+    peak: bool = False
+    """True for peak detection: the least and the largest of each interval, one after the other."""
 
     @property
     def code_v(self) -> float:
@@ -139,7 +143,7 @@ class Converter:
         low, high = self._rails
         total: NDArray[np.float32] | None = None
         for _ in range(settings.average):
-            codes = self._sample(table, wave, settings, start, rng)
+            codes = self._codes(table, wave, settings, start, rng)
             np.rint(codes, out=codes)
             np.clip(codes, low, high, out=codes)
             total = codes if total is None else np.add(total, codes, out=total)
@@ -162,6 +166,26 @@ class Converter:
         # The curve bends over many codes, so it may be put on before noise and rounding.
         codes += np.interp(codes, self._grid, self._nonlinearity)
         return np.append(codes, codes[0]).astype(np.float32)
+
+    def _codes(
+        self,
+        table: NDArray[np.float32],
+        wave: Wave,
+        settings: Settings,
+        start: float,
+        rng: np.random.Generator,
+    ) -> NDArray[np.float32]:
+        if not settings.peak:
+            return self._sample(table, wave, settings, start, rng)
+        fine = replace(
+            settings,
+            points=settings.points * PEAK_FINER,
+            interval_s=settings.interval_s / PEAK_FINER,
+        )
+        samples = self._sample(table, wave, fine, start, rng)
+        pairs = samples[: samples.size // (2 * PEAK_FINER) * 2 * PEAK_FINER]
+        pairs = pairs.reshape(-1, 2 * PEAK_FINER)
+        return np.stack([pairs.min(axis=1), pairs.max(axis=1)], axis=1).ravel()
 
     def _sample(
         self,

@@ -101,6 +101,7 @@ class Instrument:
         self.commands = Commands()
         self._add_common()
         self.add_commands()
+        self._first_state: State = self._state
 
     # -- for the speakers ---------------------------------------------------------------------
 
@@ -210,6 +211,14 @@ class Instrument:
             self._initial = settings
             self.settings = settings
 
+    def stand(self) -> None:
+        """Be switched on without acquiring, memory empty."""
+        self._state = STOPPED
+
+    def note(self, code: int) -> None:
+        """Keep an error."""
+        self.status.fail(code)
+
     # -- common commands ----------------------------------------------------------------------
 
     def _add_common(self) -> None:
@@ -237,7 +246,7 @@ class Instrument:
         """Come up as after switching on."""
         with self.lock:
             self.reset()
-            self._state = RUNNING
+            self._state = self._first_state
             self.status = Status()
 
     def _next_error(self, _: Call) -> str:
@@ -279,7 +288,8 @@ class Instrument:
                 try:
                     reply, path = self._carry_out(header, arguments, path)
                 except ScpiError as error:
-                    self.status.fail(error.code)
+                    if error.code:
+                        self.note(error.code)
                     break  # IEEE 488.2, 6.1.6.1.1: the rest of a faulty message is not carried out
                 if reply is not None:
                     replies.append(reply)

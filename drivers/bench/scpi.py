@@ -11,6 +11,8 @@ from collections import deque
 from collections.abc import Callable
 from dataclasses import dataclass
 
+import numpy as np
+
 QUEUE_LENGTH = 16
 """Errors kept; the last place then says that more were lost (SCPI-1999, 21.8)."""
 LONGEST_MESSAGE = 1 << 16
@@ -42,6 +44,7 @@ class ScpiError(Exception):
 
     def __init__(self, code: int) -> None:
         super().__init__(f'{code},"{MESSAGES[code]}"')
+        # 0 stands for an error that its speaker has noted already.
         self.code = code
 
 
@@ -129,6 +132,12 @@ SCALES = {"": 1.0, "N": 1e-9, "U": 1e-6, "M": 1e-3, "K": 1e3, "G": 1e9}
 Handler = Callable[[Call], "Reply | None"]
 
 
+def real(value: float) -> str:
+    """Print a number with all the digits that count, and no more: twelve at most (NR3)."""
+    rounded = float(f"{value:.12g}") + 0.0  # turns a negative zero into a plain one
+    return np.format_float_scientific(rounded, unique=True, min_digits=6, exp_digits=2, sign=True)
+
+
 def short_form(node: str) -> str:
     """Give the short form of a keyword written in the mixed case of SCPI."""
     return re.sub(r"[a-z]+", "", node).upper()
@@ -171,7 +180,8 @@ class Commands:
     def _search(self, header: str) -> tuple[Handler, tuple[int, ...]] | None:
         query = header.endswith("?")
         name = header.removesuffix("?").lstrip(":") + ":"
-        for pattern, is_query, handler in self._known:
+        # The latest comes first, so that a dialect can replace a common command.
+        for pattern, is_query, handler in reversed(self._known):
             if is_query is query and (match := pattern.fullmatch(name)):
                 return handler, tuple(int(n or 1) for n in match.groups())
         return None

@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 
 from drivers.bench.digitiser import CODES, MOST_POINTS, Frame, Settings
 from drivers.bench.instrument import ARMED, RUNNING, STOPPED, Instrument
-from drivers.bench.scpi import Block, Call, Reply, ScpiError
+from drivers.bench.scpi import Block, Call, Reply, ScpiError, real
 
 Points = NDArray[np.uint16]
 DIVISIONS = 10
@@ -21,11 +21,6 @@ DIVISIONS = 10
 SCALE_DIVISIONS = 8
 """Of the voltage axis."""
 OTHER_CHANNELS = 4
-
-
-def real(value: float) -> str:
-    """Print a number in the shortest form that loses nothing of it (NR3)."""
-    return np.format_float_scientific(value, unique=True, min_digits=6, exp_digits=2, sign=True)
 
 
 class TenField(Instrument):
@@ -89,7 +84,7 @@ class TenField(Instrument):
         add("TIMebase:SCALe", lambda call: self.set_record_s(DIVISIONS * call.number(1e-9, 50.0)))
         add("TIMebase:SCALe?", lambda _: real(self._record_s() / DIVISIONS))
         add("ACQuire:TYPE", self._set_type)
-        add("ACQuire:TYPE?", lambda _: "AVER" if self.settings.average > 1 else "NORM")
+        add("ACQuire:TYPE?", lambda _: ("NORM", "PEAK", "AVER")[self.acquisition_type()])
         add("ACQuire:SRATe?", lambda _: real(1.0 / self.settings.interval_s))
 
     def _record_s(self) -> float:
@@ -120,10 +115,13 @@ class TenField(Instrument):
         return self.settings.offset_v
 
     def _set_type(self, call: Call) -> None:
-        if call.word("NORMal", "AVERage") == "NORM":
-            self.set_to(average=1)
-        elif self.settings.average == 1:
-            self.set_to(average=8)
+        kind = call.word("NORMal", "AVERage", "PEAK")
+        count = max(self.settings.average, 8) if kind == "AVER" else 1
+        self.set_to(average=count, peak=kind == "PEAK")
+
+    def acquisition_type(self) -> int:
+        """Number of the kind of acquisition: normal 0, peak detect 1, average 2."""
+        return 1 if self.settings.peak else 2 if self.settings.average > 1 else 0
 
     # -- waveform data ------------------------------------------------------------------------
 
@@ -145,9 +143,9 @@ class TenField(Instrument):
         if self._channel != 1:
             raise ScpiError(-221)  # only the first channel is switched on
 
-    def preamble_type(self, _settings: Settings) -> int:
-        """Give the second field: normal 0, average 2."""
-        return 2 if _settings.average > 1 else 0
+    def preamble_type(self, settings: Settings) -> int:
+        """Give the second field: normal 0, peak detect 1, average 2."""
+        return 1 if settings.peak else 2 if settings.average > 1 else 0
 
     def y_scale(self, settings: Settings) -> tuple[float, float, int]:
         """Give y increment, origin and reference for codes as they are handed out."""
