@@ -10,6 +10,8 @@ from drivers.bench.hand import Hand
 from trimmer.reports import Advised, Conversation, Followed, Report, Word
 
 SIGN = {"clockwise": 1.0, "counter-clockwise": -1.0}
+BY_EYE_S = 1.5
+"""How long the hand takes over a turn that it judges by eye."""
 STOPS = ("stop", "wrong-trim", "wrong-way")
 
 
@@ -35,6 +37,10 @@ class HandsOn:
                     self._hand.make(advice.trim, SIGN[advice.sense] * advice.turns)
                     at_stop = self._bench.at_stop(advice.trim)
                     self._session.say("at-stop" if at_stop else "moved")
+                case Advised(advice=advice, follows=True) if advice.expected_thd is None:
+                    # Nothing can say stop yet: the hand goes by eye, as a person does.
+                    turns = SIGN[advice.sense] * advice.turns
+                    self._hand.make(advice.trim, turns, seconds=BY_EYE_S)
                 case Advised(advice=advice, follows=True):
                     self._hand.start(advice.trim, SIGN[advice.sense])
                     self._turning = True
