@@ -84,8 +84,8 @@ class Confirm(Part):
     """Queries, tried in order until one is answered."""
     matches: Pattern | None = None
     """The answer, a line, matches this."""
-    block_begins: str | None = None
-    """The answer is a block, and its bytes begin with this text."""
+    carries_preamble: bool = False
+    """The answer is a block that carries a sound preamble of this dialect."""
 
 
 class Find(Part):
@@ -99,6 +99,8 @@ class Find(Part):
     """The answer has at least so many numbers."""
     matches: Pattern | None = None
     """The answer matches this."""
+    carries_preamble: bool = False
+    """The answer is a block that carries a sound preamble of this dialect."""
     plausible: FormulaText | None = None
     """Of the fields of a numeric answer: true where this dialect is likely to be meant."""
     confirm: list[Confirm] = []
@@ -187,6 +189,8 @@ class PrefixPreamble(Part):
     shape: Literal["prefix"]
     fields: dict[Name, str] = Field(min_length=1)
     """Name here, and key there, whatever its case."""
+    optional: dict[Name, str] = {}
+    """The same, for keys that may be missing."""
 
 
 class Place(Part):
@@ -209,6 +213,8 @@ class DescriptorPreamble(Part):
     """First byte of the data."""
     data_bytes: FormulaText
     """Bytes of data; 0 means to the end of the block."""
+    sound: FormulaText = Field(default_factory=lambda: Formula("True"))
+    """Of the fields: false where a block happens to be long enough, but is no descriptor."""
 
 
 Preamble = Annotated[
@@ -246,9 +252,9 @@ class Codes(Part):
     hole: FormulaText | None = None
     """Code, or value, that means no sample."""
     low: FormulaText | None = None
-    """Lowest code; or value that means under range."""
+    """Lowest code, where that is not the type's; or value that means under range."""
     high: FormulaText | None = None
-    """Highest code; or value that means over range."""
+    """Highest code, where that is not the type's; or value that means over range."""
 
 
 class Scale(Part):
@@ -269,10 +275,10 @@ class Length(Part):
 
     send: list[Annotated[str, _command("points")]] = []
     """Asks for `{points}` samples."""
-    default: Annotated[int, Field(ge=100)] = 10_000
-    """Asked for when nobody says."""
-    whole: bool = True
-    """True where the whole record is thinned to so many; false where its beginning is sent."""
+    default: Annotated[int, Field(ge=100)] | None = None
+    """Asked for when nobody says; without it nothing is asked for then."""
+    keep: list[Command] = []
+    """Settings touched where this changes the acquisition itself; put back at the end."""
     slice: list[Annotated[str, _command("first", "last")]] = []
     """Asks for samples `{first}` to `{last}`, counted from 1, each slice a block of its own."""
     slice_points: Annotated[int, Field(ge=100)] = 250_000
@@ -282,6 +288,8 @@ class Length(Part):
 class Average(Part):
     """How the instrument is asked to average."""
 
+    attempt: list[Annotated[str, _command("count")]] = Field(default=[], alias="try")
+    """Sent first, where they exist."""
     send: list[Annotated[str, _command("count")]] = Field(min_length=1)
     """Asks for `{count}` frames."""
     keep: list[Command]
@@ -366,8 +374,11 @@ def faults_between_parts(dialect: Dialect) -> list[tuple[str, str]]:
     faults = []
     for index, preamble in enumerate(dialect.preamble):
         known = BUILT_IN | set(preamble.fields) | set(dialect.also)
+        if isinstance(preamble, PrefixPreamble):
+            known |= set(preamble.optional)
         if isinstance(preamble, DescriptorPreamble):
-            for key in ("data_start", "data_bytes"):
+            known |= {"big_endian"}
+            for key in ("data_start", "data_bytes", "sound"):
                 missing = getattr(preamble, key).names - set(preamble.fields)
                 faults += [(f"preamble[{index}].{key}", f"no field {m!r}") for m in sorted(missing)]
         for place, formula, extra in dialect.formulas():
@@ -387,6 +398,11 @@ def faults_between_parts(dialect: Dialect) -> list[tuple[str, str]]:
             )
         if acquire.poll is None and acquire.finish is None:
             faults.append((f"acquire[{index}]", "needs `finish` or `poll`"))
-    if dialect.find is not None and dialect.find.numbers is None and dialect.find.matches is None:
-        faults.append(("find", "needs `numbers` or `matches`"))
+    find = dialect.find
+    if find is not None:
+        if find.numbers is None and find.matches is None and not find.carries_preamble:
+            faults.append(("find", "needs `numbers`, `matches` or `carries_preamble`"))
+        for index, confirm in enumerate(find.confirm):
+            if confirm.matches is None and not confirm.carries_preamble:
+                faults.append((f"find.confirm[{index}]", "needs `matches` or `carries_preamble`"))
     return list(dict.fromkeys(faults))

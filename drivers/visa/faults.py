@@ -60,7 +60,8 @@ def translate(error: BaseException, what: str, *, opening: bool = False) -> Sour
         kind = SourceNotFound
     elif kind is SourceNotFound and not opening:
         kind = SourceLost
-    message = f"{what}: {clean(_words(error))}"
+    said = "no answer in time" if kind is SourceTimeout else clean(_words(error))
+    message = f"{what}: {said}"
     if kind is SourceNotFound:
         return kind(message, _MISSING)
     if kind is SourceRefused and getattr(error, "errno", None) in _NOT_ALLOWED:

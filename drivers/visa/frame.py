@@ -136,23 +136,37 @@ def _convert(dialect: Dialect, fields: Fields, payload: bytes, reading: Reading)
 def _integers(
     dialect: Dialect, fields: Fields, codes: NDArray[Any], interval_s: float, averaged: int
 ) -> Converted:
-    limits = np.iinfo(codes.dtype)
-    low = _whole(dialect.codes.low, fields, int(limits.min))
-    high = _whole(dialect.codes.high, fields, int(limits.max))
-    hole = _whole(dialect.codes.hole, fields, None)
+    low, high = _limits(dialect.codes, fields, codes)
+    hole = _whole(dialect.codes.hole, fields)
     if hole is not None:
         _refuse_holes(int(np.count_nonzero(codes == hole)), codes.size)
-    step = code_step(codes[(codes > low) & (codes < high)])
-    top = high // step * step if step else high
-    bottom = -(-low // step) * step if step else low
-    clipped = int(np.count_nonzero(codes >= top) + np.count_nonzero(codes <= bottom))
+    inside = codes if low is None or high is None else codes[(codes > low) & (codes < high)]
+    step = code_step(inside)
+    bits = _bits(dialect, fields, codes, step)
     volts = np.asarray(dialect.scale.volts({**fields, "code": codes.astype(np.float64)}))
     if volts.shape != codes.shape or not np.isfinite(volts).all():
         raise SourceRefused("the preamble gives no finite volts")
-    low_v, high_v = sorted(_volts(dialect, fields, code) for code in (bottom, top))
     one = abs(_volts(dialect, fields, step or 1) - _volts(dialect, fields, 0))
-    bits = _bits(dialect, fields, codes, step)
+    if low is None or high is None:
+        return Converted(volts, interval_s, bits, one, None, None, 0, averaged)
+    # Where 8 bits were shifted into 16, the highest code that occurs is 0xFF00.
+    top = high // step * step if step else high
+    bottom = -(-low // step) * step if step else low
+    clipped = int(np.count_nonzero(codes >= top) + np.count_nonzero(codes <= bottom))
+    low_v, high_v = sorted(_volts(dialect, fields, code) for code in (bottom, top))
     return Converted(volts, interval_s, bits, one, low_v, high_v, clipped, averaged)
+
+
+def _limits(
+    codes: Codes, fields: Fields, values: NDArray[Any]
+) -> tuple[int, int] | tuple[None, None]:
+    """Give the lowest and the highest code, where they are known and hold."""
+    kind = np.iinfo(values.dtype)
+    low = int(kind.min) if codes.low is None else _whole(codes.low, fields)
+    high = int(kind.max) if codes.high is None else _whole(codes.high, fields)
+    if low is None or high is None or values.min() < min(low, 0 if codes.hole else low):
+        return None, None
+    return (None, None) if values.max() > high else (low, high)
 
 
 def _floats(
@@ -202,22 +216,27 @@ def code_step(codes: NDArray[Any]) -> int:
 
 
 def _bits(dialect: Dialect, fields: Fields, codes: NDArray[Any] | None, step: int) -> int | None:
-    if dialect.codes.bits is not None:
-        try:
-            return int(dialect.codes.bits.number(fields))
-        except FormulaError:
-            pass
-    if codes is None or step == 0:
-        return None if codes is None else 8 * codes.dtype.itemsize
-    return 8 * codes.dtype.itemsize - int(math.log2(step))
+    """Give the bits of the codes: those told, or fewer where the codes show that they are."""
+    told = _whole(dialect.codes.bits, fields)
+    if codes is None:
+        return told
+    width = 8 * codes.dtype.itemsize
+    seen = width - int(math.log2(step)) if step else width
+    return seen if told is None else min(told, seen)
 
 
 def _volts(dialect: Dialect, fields: Fields, code: float) -> float:
     return dialect.scale.volts.number({**fields, "code": float(code)})
 
 
-def _whole(formula: Formula | None, fields: Fields, otherwise: Any) -> Any:
-    return otherwise if formula is None else int(formula.number(fields))
+def _whole(formula: Formula | None, fields: Fields) -> int | None:
+    """Work out a whole number, None where its fields are not known."""
+    if formula is None:
+        return None
+    try:
+        return round(formula.number(fields))
+    except FormulaError:
+        return None
 
 
 def _marked(values: NDArray[np.float64], mark: Formula | None, fields: Fields) -> NDArray[np.bool_]:

@@ -53,6 +53,7 @@ class Guard:
         """A call did not come back by its deadline."""
         self._thread: threading.Thread | None = None
         if self._sockets:
+            self._bell, self._button = socket.socketpair()
             self._thread = threading.Thread(target=self._watch, name="link guard", daemon=True)
             self._thread.start()
 
@@ -68,8 +69,11 @@ class Guard:
     def close(self) -> None:
         """End the watch; the sockets are left to their owner."""
         self._done.set()
-        if self._thread is not None and self._thread is not threading.current_thread():
+        if self._thread is not None:
+            self._button.close()  # wakes the watch
             self._thread.join(timeout=1.0)
+            self._bell.close()
+            self._thread = None
 
     def _watch(self) -> None:
         while not self._done.is_set():
@@ -84,17 +88,16 @@ class Guard:
                 return
 
     def _hung_up(self) -> bool:
-        """Sleep until a peer hangs up, or the next look."""
+        """Sleep until a peer hangs up, the watch is to end, or the next look."""
         if not _HANG_UP:
-            self._done.wait(_LOOK_S)
+            select.select([self._bell], [], [], _LOOK_S)
             return False
         poller = select.poll()
-        for watched in self._sockets:
-            if watched.fileno() < 0:
-                self._done.wait(_LOOK_S)
-                return False
-            poller.register(watched, _HANG_UP)
-        return bool(poller.poll(_LOOK_S * 1000.0))
+        poller.register(self._bell, select.POLLIN)
+        watched = {used.fileno() for used in self._sockets} - {-1}
+        for number in watched:
+            poller.register(number, _HANG_UP)
+        return any(number in watched for number, _ in poller.poll(_LOOK_S * 1000.0))
 
     def _end_after(self, moment: float) -> None:
         """Leave a reader the bytes that came before the hang-up, then cut it off."""

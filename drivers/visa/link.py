@@ -146,11 +146,19 @@ class Link:
 
     # Ends ----------------------------------------------------------------------------------
 
-    def clear(self, deadline: float) -> None:
-        """Ask the library for a device clear: what is pending on both sides is dropped."""
-        with self._bounded(deadline, "clearing the device"):
-            self._wait_at_most(deadline)
-            self._visa.clear(self._handle)
+    def freshen(self, deadline: float) -> None:
+        """After opening again: drop what is pending from before, as far as this link can.
+
+        A new connection over a network has nothing pending. A serial line may; over USB and
+        GPIB a device clear drops it, where the library has one.
+        """
+        if self.kind == "ASRL":
+            self.drain()
+        elif self.kind in ("USB", "GPIB"):
+            with contextlib.suppress(SourceError), self._bounded(deadline, "clearing the device"):
+                self._wait_at_most(deadline)
+                self._visa.clear(self._handle)
+            self.resume()
 
     def close(self) -> None:
         """Close; safe twice, from any thread, and never longer than a moment."""

@@ -127,9 +127,12 @@ def fields_in_block(preamble: Preamble, block: Block) -> tuple[dict[str, Any], b
             missing = [key for key in preamble.fields.values() if key.lower() not in given]
             if missing:
                 raise SourceRefused(f"the header before the data has no {missing[0]!r}", _REMEDY)
-            fields = {
+            fields: dict[str, Any] = {
                 name: answers.field(given[key.lower()]) for name, key in preamble.fields.items()
             }
+            for name, key in preamble.optional.items():
+                told = given.get(key.lower())
+                fields[name] = None if told is None else answers.field(told)
             return fields, block.payload
         case DescriptorPreamble():
             return _descriptor(preamble, block.payload)
@@ -142,6 +145,8 @@ def _descriptor(preamble: DescriptorPreamble, payload: bytes) -> tuple[dict[str,
     fields = {name: _place(payload, place, letter) for name, place in preamble.fields.items()}
     fields["big_endian"] = not order
     try:
+        if not preamble.sound(fields):
+            raise SourceRefused("the block before the samples is no descriptor", _REMEDY)
         start = int(preamble.data_start.number(fields))
         length = int(preamble.data_bytes.number(fields))
     except FormulaError as error:
@@ -169,9 +174,15 @@ def _place(payload: bytes, place: Place, order: str) -> float:
     return float(value)
 
 
-def block_begins(block: Block, text: str) -> bool:
-    """Say whether the bytes of a block begin with a text."""
-    return block.payload.startswith(text.encode("latin-1", "replace"))
+def carries(preamble: Preamble, block: Block) -> bool:
+    """Say whether a block carries a sound preamble of this shape."""
+    if not isinstance(preamble, PrefixPreamble | DescriptorPreamble):
+        return False
+    try:
+        fields_in_block(preamble, block)
+    except SourceRefused:
+        return False
+    return True
 
 
 def matches(answer: str, pattern: str) -> bool:

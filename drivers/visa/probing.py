@@ -13,13 +13,13 @@ from pathlib import Path
 
 from drivers.contract import SourceError, SourceRefused, SourceTimeout, clean
 from drivers.visa import answers
-from drivers.visa.blocks import BlockError
+from drivers.visa.blocks import Block, BlockError
 from drivers.visa.conversation import WRONG_STATE, Conversation
-from drivers.visa.dialect import Confirm, Dialect, Find
+from drivers.visa.dialect import Confirm, Dialect
 from drivers.visa.formula import FormulaError
 from drivers.visa.kept import KeptSettings
 from drivers.visa.memory import Known, recall, remember
-from drivers.visa.preamble import block_begins, matches
+from drivers.visa.preamble import carries, matches
 from drivers.visa.shelf import chosen, shelf
 from drivers.visa.speaker import PROBE_S, Speaker
 
@@ -27,6 +27,9 @@ _LONGEST_S = 25.0
 """Seconds after which finding out is given up."""
 
 _SETTING_UP_S = 10.0
+
+_MOST_BYTES = 1 << 24
+"""Longest block read while finding out."""
 
 NOTHING_FITS = (
     "Name the dialect with `--dialect`, or teach the instrument by a file: see docs/dialects.md."
@@ -58,6 +61,7 @@ class _Asked:
     talk: Conversation
     deadline: float
     given: dict[str, str | None] = field(default_factory=dict)
+    blocks: dict[str, Block | None] = field(default_factory=dict)
     wrong_state: list[str] = field(default_factory=list)
 
     def answer(self, query: str) -> str | None:
@@ -68,6 +72,18 @@ class _Asked:
                 self.wrong_state.append(query)
             self.given[query] = answer
         return self.given[query]
+
+    def block(self, query: str) -> Block | None:
+        """Ask once for a block; None where none comes."""
+        if query not in self.blocks:
+            self.blocks[query] = None
+            try:
+                self.talk.tell(query, self.deadline)
+                brief = min(self.deadline, time.monotonic() + 2.0 * PROBE_S)
+                self.blocks[query] = self.talk.link.block(brief, most=_MOST_BYTES)
+            except (SourceTimeout, BlockError):
+                self.talk.step_in(self.deadline)
+        return self.blocks[query]
 
 
 def find_dialect(
@@ -166,42 +182,35 @@ def _candidates(asked: _Asked, dialects: dict[str, Dialect]) -> list[Dialect]:
 def _fits(asked: _Asked, dialect: Dialect) -> bool:
     find = dialect.find
     assert find is not None
-    answered = any(_says(find, asked.answer(asked.talk.filled(query))) for query in find.ask)
-    return answered and all(_confirmed(asked, confirm) for confirm in find.confirm)
+    if find.carries_preamble:
+        answered = _carried(asked, dialect, find.ask)
+    else:
+        answers_given = (asked.answer(asked.talk.filled(query)) for query in find.ask)
+        answered = any(_says(answer, find.numbers, find.matches) for answer in answers_given)
+    return answered and all(_confirmed(asked, dialect, confirm) for confirm in find.confirm)
 
 
-def _says(find: Find, answer: str | None) -> bool:
+def _says(answer: str | None, count: int | None, pattern: str | None) -> bool:
     if answer is None:
         return False
-    if find.numbers is not None:
+    if count is not None:
         try:
-            return len(answers.numbers(answer)) >= find.numbers
+            return len(answers.numbers(answer)) >= count
         except answers.AnswerError:
             return False
-    return find.matches is not None and matches(answer, find.matches)
+    return pattern is not None and matches(answer, pattern)
 
 
-def _confirmed(asked: _Asked, confirm: Confirm) -> bool:
-    for query in confirm.ask:
-        if confirm.block_begins is not None:
-            if _block_begins(asked, query, confirm.block_begins):
-                return True
-        else:
-            answer = asked.answer(asked.talk.filled(query))
-            if answer is not None and matches(answer, confirm.matches or ""):
-                return True
-    return False
+def _confirmed(asked: _Asked, dialect: Dialect, confirm: Confirm) -> bool:
+    if confirm.carries_preamble:
+        return _carried(asked, dialect, confirm.ask)
+    given = (asked.answer(asked.talk.filled(query)) for query in confirm.ask)
+    return any(_says(answer, None, confirm.matches) for answer in given)
 
 
-def _block_begins(asked: _Asked, query: str, text: str) -> bool:
-    talk = asked.talk
-    try:
-        talk.tell(query, asked.deadline)
-        block = talk.link.block(min(asked.deadline, time.monotonic() + 2.0 * PROBE_S))
-    except (SourceTimeout, BlockError):
-        talk.step_in(asked.deadline)
-        return False
-    return block_begins(block, text)
+def _carried(asked: _Asked, dialect: Dialect, queries: list[str]) -> bool:
+    blocks = (asked.block(asked.talk.filled(query)) for query in queries)
+    return any(block is not None and carries(dialect.preamble[0], block) for block in blocks)
 
 
 def plausible(dialect: Dialect, asked: _Asked) -> bool:

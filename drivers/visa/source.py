@@ -37,6 +37,9 @@ _MOST_TRIES = 4
 
 _LEAVING_S = 1.0
 
+_GRACE_S = 0.5
+"""Seconds past the deadline to ask why nothing came."""
+
 _NOT_CERTAIN = (
     "the form of the preamble was told by plausible values: an offset in volts may be wrong, "
     "ratios are not affected"
@@ -179,13 +182,13 @@ class InstrumentSource:
         """Take frames until one is new and the instrument has no fault to tell of."""
         why: SourceError | None = None
         for _ in range(_MOST_TRIES):
-            frame = speaker.take(deadline)
+            try:
+                frame = speaker.take(deadline)
+            except SourceTimeout as silence:
+                raise self._explained(speaker, silence) from silence
             faults = speaker.faults(deadline)
             if faults:
-                why = SourceRefused(
-                    f"the instrument reports {faults[0]}",
-                    "Look at the instrument's screen, clear what it complains of, and try again.",
-                )
+                why = _reported(faults)
                 continue
             self._settle(speaker, frame, deadline)
             converted = speaker.convert(frame)
@@ -195,6 +198,19 @@ class InstrumentSource:
             why = SourceTimeout("the instrument keeps sending the frame of before")
         assert why is not None
         raise why
+
+    def _explained(self, speaker: Speaker, silence: SourceTimeout) -> SourceError:
+        """After a silence, ask in the little time left whether the instrument refused."""
+        try:
+            grace = time.monotonic() + _GRACE_S
+            speaker.talk.step_in(grace)
+            faults = speaker.faults(grace)
+        except SourceError:
+            return silence
+        finally:
+            # Half of a waveform may still be on its way: this link is not used again.
+            self._link.broken = True
+        return _reported(faults) if faults else silence
 
     def _settle(self, speaker: Speaker, frame: Frame, deadline: float) -> None:
         """Tell rivals apart, once a frame comes that they read differently."""
@@ -232,7 +248,7 @@ class InstrumentSource:
         self._link = open_link(self._resource, left, again=True)
         try:
             talk = Conversation(self._link, {"channel": self._channel})
-            self._link.drain()
+            self._link.freshen(deadline)
             identity = identify(talk, deadline)
             if not same_instrument(identity, self._identity):
                 raise SourceRefused(
@@ -273,6 +289,13 @@ def _coupling(word: Any) -> Coupling:
     """Read a coupling: `AC`, `A1M`, `ACLIMIT` are AC; `DC`, `D50` and the like DC."""
     first = str(word or "").strip().upper()[:1]
     return "AC" if first == "A" else "DC" if first == "D" else "unknown"
+
+
+def _reported(faults: list[str]) -> SourceRefused:
+    return SourceRefused(
+        f"the instrument reports {faults[0]}",
+        "Look at the instrument's screen, clear what it complains of, and try again.",
+    )
 
 
 def _wait_until(moment: float | None, deadline: float) -> None:

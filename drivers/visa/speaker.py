@@ -106,7 +106,7 @@ class Speaker:
         if self.known.acquire is None:
             self._find_acquire(deadline)
         self._points = None
-        if self.dialect.length is not None:
+        if self.dialect.length is not None and self.dialect.length.default is not None:
             self.ask_points(self.dialect.length.default, deadline)
         self.known = self.known.changed(asks_errors=self.talk.asks_errors)
 
@@ -115,6 +115,8 @@ class Speaker:
         length = self.dialect.length
         if length is None or not length.send or points == self._points:
             return
+        for setting in length.keep:
+            self.kept.keep(self.talk, setting, deadline)
         for command in length.send:
             self.talk.tell(command, deadline, points=points)
         self.talk.faults(self.dialect.errors, deadline)  # an instrument may have fewer
@@ -140,6 +142,9 @@ class Speaker:
             return
         for setting in average.keep:
             self.kept.keep(self.talk, setting, deadline)
+        for command in average.attempt:
+            self.talk.tell(command, deadline, count=wanted)
+        self.talk.faults(self.dialect.errors, deadline)
         for command in average.send:
             self.talk.tell(command, deadline, count=wanted)
         if self.talk.faults(self.dialect.errors, deadline):
