@@ -15,8 +15,13 @@ from trimmer.guidance.path import Found, Walk, find_walk
 from trimmer.guidance.record import Record
 from trimmer.guidance.seen import Seen
 
+KIND_UNEVEN = 0.1
+"""Relative scatter of a turn in the scale of a kind: units differ in how their tracks are wound."""
 START_SIGMA = 0.3
 """Where a unit's trims stand from their best before anything is turned, share of the travel."""
+
+_AXIS = np.linspace(-0.9, 0.9, 25)
+_GRID = np.stack(np.meshgrid(_AXIS, _AXIS), axis=-1).reshape(-1, 2)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -105,14 +110,22 @@ def _with_kind(walk: Walk, kind: KindPrior) -> Found:
         variance=walk.variance,
         steps=steps,
         expected=np.concatenate((np.zeros(2), walk.expected)),
-        sigma=np.concatenate((np.full(2, START_SIGMA), walk.sigma)),
+        sigma=np.concatenate(
+            (np.full(2, START_SIGMA), np.hypot(walk.sigma, KIND_UNEVEN * walk.expected))
+        ),
     )
     start = wide.expected.copy()
-    columns = prior.mean[:, 1:3]
-    weight = 1.0 / (prior.covariance[:, 0, 0] + walk.variance[0])
-    normal = (columns.T * weight) @ columns + np.eye(2) / START_SIGMA**2
-    start[:2] = np.linalg.solve(normal, (columns.T * weight) @ (walk.parts[0] - prior.mean[:, 0]))
-    return find_walk(wide, prior, start, rounds=20)
+    start[:2] = _likely_start(walk.parts[0], walk.variance[0], prior)
+    return find_walk(wide, prior, start, rounds=20, marginal=True)
+
+
+def _likely_start(parts: Array, variance: Array, prior: FieldBelief) -> Array:
+    """Find where on a kind's field a first reading most likely stands, on a grid."""
+    phi = features(_GRID)
+    spread = phi**2 @ np.einsum("kff->kf", prior.covariance).T + variance
+    miss = (parts - phi @ prior.mean.T) ** 2 / spread + np.log(spread)
+    cost = miss.sum(axis=1) + np.sum(_GRID**2, axis=1) / START_SIGMA**2
+    return np.asarray(_GRID[int(np.argmin(cost))])
 
 
 def _known(record: Record, belief: FieldBelief, kind: bool) -> tuple[bool, bool]:

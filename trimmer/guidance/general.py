@@ -51,6 +51,13 @@ def general_belief(orders: int, gain: float = 1.0) -> FieldBelief:
     gain
         Length of the columns over the typical one: larger columns bend more per travel.
     """
+    sigma = general_sigma(orders, gain)
+    mean = np.zeros_like(sigma)
+    return FieldBelief(np.zeros(2), mean, sigma[:, :, None] ** 2 * np.eye(FEATURES))
+
+
+def general_sigma(orders: int, gain: float = 1.0) -> Array:
+    """Give the size of each weight of a unit of which nothing is known; shape (2(orders-1), 10)."""
     scale = column_scale(orders)
     bend = BEND * gain * (np.repeat(np.arange(2, orders + 1), 2) / 3.0) ** BEND_GROWS
     sigma = np.empty((scale.size, FEATURES))
@@ -58,7 +65,4 @@ def general_belief(orders: int, gain: float = 1.0) -> FieldBelief:
     sigma[:, 1:3] = (1.5 * gain * scale)[:, None]
     sigma[:, 3:6] = np.outer(gain * scale * bend, (1.0, CROSS, 1.0))
     sigma[:, 6:] = np.outer(1.5 * gain * scale * bend**2, (1.0, CROSS, CROSS, 1.0))
-    covariance = np.zeros((scale.size, FEATURES, FEATURES))
-    index = np.arange(FEATURES)
-    covariance[:, index, index] = sigma**2
-    return FieldBelief(np.zeros(2), np.zeros((scale.size, FEATURES)), covariance)
+    return sigma

@@ -20,7 +20,7 @@ from trimmer.guidance.choice import (
     worse_crest,
 )
 from trimmer.guidance.estimate import Estimate, estimate
-from trimmer.guidance.field import Array
+from trimmer.guidance.field import Array, shift_matrix
 from trimmer.guidance.following import Following, Lag
 from trimmer.guidance.hand import Hand, hand_for
 from trimmer.guidance.memory import KindPrior, Learned
@@ -198,10 +198,13 @@ class Guide:
         if est is None or not all(est.known):
             return None
         belief = est.belief.moved_to(est.best)
+        shift = shift_matrix(est.best)
+        own = np.einsum("fg,kgh,fh->kf", shift, est.found.given_steps, shift)
         return Learned(
             orders=self._record.orders,
             weights=belief.mean,
-            covariance=belief.covariance,
+            sigma=np.sqrt(own),
+            columns_sigma=np.sqrt(belief.covariance[:, [1, 2], [1, 2]].T),
             travel_turns=self.travel_turns,
             fundamental_hz=self._record.here.fundamental_hz,
         )
@@ -329,20 +332,20 @@ class Guide:
         if before is None or not self._record.moves:
             return
         last = self._record.moves[-1]
-        surprise = est.found.cost - before.found.cost
+        surprise = est.found.misfit - before.found.misfit
         if len(self._record.places[-1]) > 1 or last.dead or surprise < 3.0 * est.here.size + 90.0:
             return
         self._other_explanation(est, last, kind)
 
     def _other_explanation(self, est: Estimate, last: Move, kind: KindPrior | None) -> None:
         """See whether another trim, another sense or another kind of unit explains a surprise."""
-        tried = [(est.found.cost, last, est, self._kind_holds)]
+        tried = [(est.found.misfit, last, est, self._kind_holds)]
         for move in other_ways(last):
             other = estimate(with_last(self._record, move), self._hand, kind)
-            tried.append((other.found.cost + 12.0, move, other, self._kind_holds))
+            tried.append((other.found.misfit + 12.0, move, other, self._kind_holds))
         if kind is not None:
             other = estimate(self._record, self._hand, None)
-            tried.append((other.found.cost + 40.0, last, other, False))
+            tried.append((other.found.misfit + 40.0, last, other, False))
         _, move, best, holds = min(tried, key=lambda t: t[0])
         if self._kind_holds and not holds:
             self._notice = words.KIND_DIFFERS

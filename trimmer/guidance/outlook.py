@@ -20,9 +20,9 @@ from trimmer.guidance.field import Array, features
 from trimmer.guidance.hand import Hand
 from trimmer.guidance.record import Record
 
-CLOSE_SHARE: Final = 0.03
+CLOSE_SHARE: Final = 0.02
 """A setting is there when THD is within this share of the floor .."""
-CLOSE_THD: Final = 1.2e-4
+CLOSE_THD: Final = 8e-5
 """.. or this much THD of it, whichever is more."""
 LONGEST_SHARE: Final = 0.35
 """Longest turn ever asked for at once, share of the travel."""

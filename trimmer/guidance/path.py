@@ -7,7 +7,9 @@ by Gauss-Newton on the logarithm of their joint probability,
 
 where `s` holds the start and the turns and `x_i` is their running sum. Parts are taken as independent
 of each other given the turns, so the weights fall into one small system for each part and only the few
-turns couple them (a Schur complement). No reading is forgotten: one taken far away counts for less by
+turns couple them (a Schur complement). With `marginal` the field is integrated out, not chosen along
+with the steps: the logarithm of the determinants of those small systems is added. It keeps a start
+that is not known from drifting to where the field may be anything. No reading is forgotten: one taken far away counts for less by
 itself, since the belief lets the field bend in between.
 """
 
@@ -66,14 +68,19 @@ class Found:
     """Shape (n, 2), positions of the readings, last place at 0."""
     last: Array
     """Shape (2,), the last place in the coordinates of the prior."""
-    cost: float
-    """Minus twice the logarithm of the joint probability, up to a constant."""
+    misfit: float
+    """Sum of squares over variances of all that was read, believed and asked."""
     converged: bool
     """Whether the search came to rest."""
 
 
 def find_walk(
-    walk: Walk, prior: FieldBelief, start: Array | None = None, rounds: int = 12
+    walk: Walk,
+    prior: FieldBelief,
+    start: Array | None = None,
+    rounds: int = 12,
+    *,
+    marginal: bool = False,
 ) -> Found:
     """Find the most probable steps and field.
 
@@ -87,10 +94,12 @@ def find_walk(
         Shape (s,), steps to start the search from; the expected ones where None.
     rounds
         Most Gauss-Newton rounds.
+    marginal
+        Whether to integrate the field out.
     """
     precision = np.asarray(np.linalg.inv(prior.covariance), dtype=np.float64)
     steps = walk.expected.copy() if start is None else start.copy()
-    problem = _Problem(walk, prior, precision)
+    problem = _Problem(walk, prior, precision, marginal)
     weights, cost = problem.weights(steps)
     converged = walk.expected.size == 0
     for _ in range(0 if converged else rounds):
@@ -109,13 +118,14 @@ def find_walk(
         if gained < 1e-3:
             converged = True
             break
-    return problem.found(steps, weights, cost, converged)
+    return problem.found(steps, weights, converged)
 
 
 class _Problem:
     """The joint problem with its fixed arrays at hand."""
 
-    def __init__(self, walk: Walk, prior: FieldBelief, precision: Array) -> None:
+    def __init__(self, walk: Walk, prior: FieldBelief, precision: Array, marginal: bool) -> None:
+        self.marginal = marginal
         self.walk = walk
         self.prior = prior
         self.precision = precision
@@ -134,16 +144,23 @@ class _Problem:
         """Give the best weights for given steps, and the cost."""
         phi = self._features(steps)
         right = (self.weight * self.walk.parts).T @ phi + self.pull
-        best = np.linalg.solve(self._normal(phi), right[..., None])[..., 0]
-        miss = self.walk.parts - phi @ best.T
-        off = best - self.prior.mean
+        normal = self._normal(phi)
+        best = np.linalg.solve(normal, right[..., None])[..., 0]
+        cost = self.misfit(steps, best)
+        if self.marginal:
+            cost += float(np.sum(np.linalg.slogdet(normal)[1]))
+        return best, cost
+
+    def misfit(self, steps: Array, weights: Array) -> float:
+        """Give the sum of squares of the joint problem."""
+        miss = self.walk.parts - self._features(steps) @ weights.T
+        off = weights - self.prior.mean
         slip = (steps - self.walk.expected) / self.walk.sigma
-        cost = float(
+        return float(
             np.sum(self.weight * miss * miss)
             + np.einsum("kf,kfg,kg->", off, self.precision, off)
             + slip @ slip
         )
-        return best, cost
 
     def _coupled(self, steps: Array, weights: Array) -> tuple[Array, Array, Array, Array]:
         """Give inverse normal matrices, their coupling to the steps, the Schur complement, D."""
@@ -164,13 +181,19 @@ class _Problem:
 
     def newton(self, steps: Array, weights: Array) -> Array:
         """Give the Gauss-Newton change of the steps (weights already at their best for them)."""
-        _, _, schur, weighted = self._coupled(steps, weights)
-        miss = self.walk.parts - self._features(steps) @ weights.T
+        inverse, _, schur, weighted = self._coupled(steps, weights)
+        phi = self._features(steps)
+        miss = self.walk.parts - phi @ weights.T
         slope = np.einsum("ik,ikj->j", miss, weighted)
         slope -= (steps - self.walk.expected) / self.walk.sigma**2
+        if self.marginal:
+            turn = slopes(self.walk.steps @ steps - self.prior.anchor)
+            held = np.einsum("ik,kfg->ifg", self.weight, inverse)
+            by_place = np.einsum("if,ifg,iag->ia", phi, held, turn)
+            slope -= np.einsum("ia,iaj->j", by_place, self.walk.steps)
         return np.asarray(np.linalg.solve(schur, slope))
 
-    def found(self, steps: Array, weights: Array, cost: float, converged: bool) -> Found:
+    def found(self, steps: Array, weights: Array, converged: bool) -> Found:
         """Put the result together."""
         inverse, through, schur, _ = self._coupled(steps, weights)
         spread = np.asarray(np.linalg.inv(schur), dtype=np.float64)
@@ -189,6 +212,6 @@ class _Problem:
             steps_covariance=spread,
             places=places - places[-1],
             last=places[-1],
-            cost=cost,
+            misfit=self.misfit(steps, weights),
             converged=converged,
         )
