@@ -43,9 +43,8 @@ def line_covariance(fit: Fit, orders: int, colour: Array) -> Array:
     own = slice(1, orders + 1)
     tilt = fit.tilt[:, own].ravel()
     covariance = np.multiply.outer(tilt, tilt) / fit.stiffness
-    corner = fit.unit_covariance(orders + 1)
-    covariance[:orders, :orders] += corner[0, own, own]
-    covariance[orders:, orders:] += corner[1, own, own]
+    covariance[:orders, :orders] += fit.inverse[0, own, own]
+    covariance[orders:, orders:] += fit.inverse[1, own, own]
     factor = np.sqrt(fit.variance * np.concatenate((colour, colour)))
     return covariance * np.multiply.outer(factor, factor)
 

@@ -52,7 +52,9 @@ def look_at(record: Record, digitiser: Digitiser) -> Digitised:
     """See how a record was digitised."""
     values = record.samples
     low, high = float(values.min()), float(values.max())
-    code = _stated_code(digitiser) or _seen_code(values)
+    code = _stated_code(digitiser)
+    if code is None or not 0.0 < code <= 0.5 * (high - low):  # a code larger than the wave is none
+        code = _seen_code(values)
     step = code if code else 0.0
     return Digitised(
         code=code,
@@ -64,10 +66,10 @@ def look_at(record: Record, digitiser: Digitiser) -> Digitised:
 
 
 def _stated_code(digitiser: Digitiser) -> float | None:
-    if digitiser.code is not None and digitiser.code > 0.0:
+    if digitiser.code is not None and math.isfinite(digitiser.code):
         return float(digitiser.code)
     low, high, bits = digitiser.low_rail, digitiser.high_rail, digitiser.bits
-    if low is None or high is None or not bits or bits > 60 or not high > low:
+    if low is None or high is None or not bits or not 0 < bits <= 60 or not 0.0 < high - low < math.inf:
         return None
     return (high - low) / (2.0**bits - 1.0)
 
@@ -150,7 +152,9 @@ def systematic_variances(
     k = np.arange(2, size // 2 + 2)
     peak = digitiser.nonlinearity_codes
     if peak is None:
-        peak = default_nonlinearity(digitiser.bits, digitiser.averaged) if digitiser.bits else 0.0
+        known = digitiser.bits is not None and digitiser.bits > 0
+        peak = default_nonlinearity(digitiser.bits or 0, digitiser.averaged) if known else 0.0
+    peak = peak if math.isfinite(peak) else 0.0
     bend = (0.5 * peak * code / amplitude / k) ** 2
     dither = max(noise**2 - code**2 / 12.0, 0.0) / code**2
     rounding = code**3 / (math.pi**4 * amplitude**3) * math.exp(-4.0 * math.pi**2 * dither)

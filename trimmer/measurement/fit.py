@@ -17,13 +17,15 @@ from trimmer.measurement.kernels import Array
 from trimmer.measurement.model import Complex, Lines, Normal, normal_equations
 from trimmer.measurement.projection import Projections, Record, project
 
-_BLUR = 2e-5
+_BLUR = 3e-6
 """Turn of the highest order within half a block (rad) below which moments carry the sums exactly:
 the neglected term is a sixth of its square."""
 _STEPS = 30
+_ROUNDS = 8
+_GRAIN = 1e-14
 _STAGES = (2, 8)
 """Orders fitted on the way: the more orders, the narrower the way to the minimum."""
-_ROUGH, _FINE = 1e-2, 1e-7
+_ROUGH, _NEAR, _FINE = 1e-2, 1e-3, 1e-7
 """A frequency counts as settled when the next step turns the highest order by less than this (rad)
 over half the record. The step is still taken, and what it leaves is its square."""
 
@@ -46,6 +48,8 @@ class Fit:
     """Sum of the squared residuals."""
     power: float
     """Sum of the squared samples, mean taken off."""
+    inverse: Array
+    """Shape (2, L, L), inverse Gram matrices of the cosines and of the sines."""
     tilt: Array
     """Shape (2, L), change of ``a`` and ``b`` per change of ``w``: ``-G^-1 g``."""
     stiffness: float
@@ -68,15 +72,6 @@ class Fit:
         """Variance of the noise of one sample, scaled unit."""
         return self.residual_power / max(self.freedom, 1)
 
-    def unit_covariance(self, lines: int) -> Array:
-        """Covariance of the first `lines` amplitudes at a fixed `w`, over the noise's variance.
-
-        Shape (2, lines, lines): that corner of the inverse Gram matrices.
-        """
-        unit = np.zeros((2, self.lines.count, lines))
-        unit[:, range(lines), range(lines)] = 1.0
-        return _solution(self.normal.gram, unit)[:, :lines]
-
     def room(self, cross: Array, itself: Array) -> Array:
         """Say what of other basis functions the fit cannot imitate.
 
@@ -92,8 +87,7 @@ class Fit:
         Array
             Shape (2, C), what is left of `itself`.
         """
-        spent = np.einsum("ijk,ikj->ij", cross, _solution(self.normal.gram, cross.swapaxes(1, 2)))
-        left: Array = itself - spent
+        left: Array = itself - ((cross @ self.inverse) * cross).sum(axis=2)
         return left
 
     @property
@@ -108,6 +102,7 @@ class _Solved:
     """The amplitudes at one frequency, and the Gauss-Newton step for the frequency."""
 
     normal: Normal
+    inverse: Array
     amplitudes: Array
     tilt: Array
     explained: float
@@ -115,28 +110,33 @@ class _Solved:
     step: float
 
 
-def _solve(projections: Projections, w: float, orders: int | None = None) -> _Solved:
+def _solve(
+    projections: Projections, w: float, orders: int | None, near: Array | None = None
+) -> _Solved:
     """Solve for all amplitudes at the fundamental `w`, and for the next step of `w`.
 
-    `orders` fits only the offset and that many orders; None takes all lines.
+    `orders` fits only the offset, that many orders and the nuisance lines; None takes all. `near` is the inverse
+    Gram matrix at a frequency nearby, where there is one.
     """
-    lines = projections.lines if orders is None else Lines(orders, np.empty(0))
+    lines = projections.lines if orders is None else Lines(orders, projections.lines.fixed)
     normal = normal_equations(projections.samples, lines, w)
     first, second = projections.totals(w, orders)
     data = np.stack((first.real, -first.imag))
     data[1, 0] = 0.0
-    amplitudes = _solution(normal.gram, data)
+    inverse = _inverse(normal.gram) if near is None else near
+    amplitudes = _solution(normal.gram, inverse, data)
     k_cos, k_sin = lines.multiples() * amplitudes
     # derivative of the model: t (-k a sin + k b cos); its products with basis, itself and data
     with_basis = np.stack((-(normal.even_slope @ k_cos), normal.odd_slope @ k_sin))
     itself = k_cos @ normal.sine_curve @ k_cos + k_sin @ normal.cosine_curve @ k_sin
     with_data = k_cos @ second.imag + k_sin @ second.real
-    tilt = -_solution(normal.gram, with_basis)
+    tilt = -_solution(normal.gram, inverse, with_basis)
     stiffness = float(itself + np.vdot(with_basis, tilt))
     score = float(with_data - np.vdot(amplitudes, with_basis))
     step = score / stiffness if stiffness > 0.0 else 0.0
     return _Solved(
         normal=normal,
+        inverse=inverse,
         amplitudes=amplitudes,
         tilt=tilt,
         explained=float(np.vdot(amplitudes, data)),
@@ -145,21 +145,38 @@ def _solve(projections: Projections, w: float, orders: int | None = None) -> _So
     )
 
 
-def _solution(gram: Array, right: Array) -> Array:
-    """Solve both Gram systems; where two lines cannot be told apart, share between them.
+def _solution(gram: Array, inverse: Array, right: Array) -> Array:
+    """Solve both Gram systems by an inverse that is nearly right, then by what it left.
 
-    `right` has shape (2, L) or (2, L, R).
+    Each round takes the error down by as much as the inverse is good: a change of frequency within
+    a resolution cell's hundredth costs one or two rounds, a matrix inversion costs fifty.
     """
-    columns = right if right.ndim == 3 else right[:, :, None]
+    right = right[:, :, None]
+    solution = inverse @ right
+    size = float(np.abs(solution).max())
+    for _ in range(_ROUNDS):
+        change = inverse @ (right - gram @ solution)
+        solution += change
+        if float(np.abs(change).max()) <= _GRAIN * size:
+            break
+    return solution[:, :, 0]
+
+
+def _inverse(gram: Array) -> Array:
+    """Invert; where two lines cannot be told apart, share between them."""
     try:
-        solution: Array = np.linalg.solve(gram, columns)
+        inverse: Array = np.linalg.inv(gram)
     except np.linalg.LinAlgError:
-        solution = np.linalg.pinv(gram, hermitian=True) @ columns
-    return solution if right.ndim == 3 else solution[:, :, 0]
+        inverse = np.linalg.pinv(gram, hermitian=True)
+    return inverse
 
 
 def _refine(
-    projections: Projections, w: float, orders: int | None, tolerance: float
+    projections: Projections,
+    w: float,
+    orders: int | None,
+    tolerance: float,
+    near: Array | None = None,
 ) -> tuple[float, bool, _Solved]:
     """Gauss-Newton for the frequency on given projections.
 
@@ -172,12 +189,14 @@ def _refine(
     """
     cell = math.pi / projections.samples
     small = tolerance * 2.0 / (projections.samples * (orders or projections.lines.orders))
-    solved = _solve(projections, w, orders)
+    solved = _solve(projections, w, orders, near)
+    close = 0.02 * cell / (orders or projections.lines.orders)
     for _ in range(_STEPS):
         step = max(-cell, min(cell, solved.step))
         if abs(step) <= small:
             return w + step, True, solved
-        tried = _solve(projections, w + step, orders)
+        near = solved.inverse if abs(step) < close else None
+        tried = _solve(projections, w + step, orders, near)
         for _ in range(6):
             if tried.explained >= solved.explained * (1.0 - 1e-13):
                 break
@@ -189,18 +208,34 @@ def _refine(
     return w, False, solved
 
 
-def approach(record: Record, orders: int, w: float) -> float:
+def approach(record: Record, orders: int, w: float) -> tuple[float, float]:
     """Bring a coarse frequency to within the reach of a fit with all orders.
 
-    Few orders are fitted first, more are taken in as the frequency gets better.
+    Few orders are fitted first, more are taken in as the frequency gets better. A slow line stands
+    for a wandering offset, which would pull at few periods.
+
+    Returns
+    -------
+    tuple
+        The frequency (0 where it runs away), and the slow line over the fundamental.
     """
     stages = [stage for stage in _STAGES if stage < orders] or [orders]
-    projections = project(record, Lines(stages[-1], np.empty(0)), w)
+    slow = np.array([slow_line(record.count)])
+    projections = project(record, Lines(stages[-1], slow), w)
     for stage in stages:
-        w, _, _ = _refine(projections, w, stage, _ROUGH)
+        w, _, solved = _refine(projections, w, stage, _ROUGH)
         if not 0.0 < w < math.pi / stages[-1]:
-            return 0.0
-    return w
+            return 0.0, 0.0
+    sizes = np.hypot(*solved.amplitudes)
+    return w, float(sizes[-1]) / max(float(sizes[1]), 1e-300)
+
+
+def slow_line(samples: int) -> float:
+    """Frequency of the line that stands for a wandering offset: a quarter period in the record.
+
+    Its sine is nearly a straight line there, its cosine nearly a parabola.
+    """
+    return 0.5 * math.pi / samples
 
 
 def fit(record: Record, lines: Lines, w: float) -> Fit:
@@ -215,9 +250,12 @@ def fit(record: Record, lines: Lines, w: float) -> Fit:
     w
         Start, as `approach` gives it.
     """
+    projections = project(record, lines, w)
+    w, _, solved = _refine(projections, w, None, _NEAR)
     for _ in range(4):
-        projections = project(record, lines, w)
-        w, converged, solved = _refine(projections, w, None, _FINE)
+        if projections.blur(w) > _BLUR:
+            projections = project(record, lines, w)
+        w, converged, solved = _refine(projections, w, None, _FINE, solved.inverse)
         if projections.blur(w) <= _BLUR or not 0.0 < w < math.pi:
             break
     return _finished(projections, solved, w, converged)
@@ -237,6 +275,7 @@ def _finished(projections: Projections, solved: _Solved, w: float, converged: bo
         sines=amplitudes[1],
         residual_power=max(projections.power - solved.explained - gained, grain),
         power=projections.power,
+        inverse=solved.inverse,
         tilt=solved.tilt,
         stiffness=max(solved.stiffness, np.finfo(np.float64).tiny),
         converged=converged,

@@ -12,7 +12,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from trimmer.measurement.fit import Fit
+from trimmer.measurement.fit import Fit, slow_line
 from trimmer.measurement.kernels import Array
 from trimmer.measurement.model import Lines, cross_products
 from trimmer.measurement.projection import Record, project
@@ -24,8 +24,6 @@ _CERTAIN = 32.0
 """Chi-square with 2 degrees of freedom above which a line is there: chance 1e-7."""
 _APART = 0.7
 """Lines closer than this many cycles of the record cannot be told apart."""
-_SLOW = 0.25
-"""Cycles of the record of the line that stands for a wandering offset: nearly a parabola."""
 _TOLD = 2e-4
 """Ratio to the fundamental from which hum is worth a flag."""
 _UNSTEADY_HZ = 0.5
@@ -47,10 +45,11 @@ class Foreign:
 def candidates(record: Record, fit: Fit, interval_s: float, mains_hz: float | None) -> list[Foreign]:
     """List the lines that could be told apart in this record, nearest kin only once."""
     cell = 2.0 * math.pi / fit.samples
-    wanted = [Foreign("slow", 0.0, _SLOW * cell)]
+    slow = slow_line(fit.samples)
+    wanted = [] if fit.lines.fixed.size else [Foreign("slow", 0.0, slow)]
     for mains in (mains_hz,) if mains_hz else MAINS_HZ:
         w = 2.0 * math.pi * mains * interval_s
-        if w < _SLOW * cell or w > 0.3 * math.pi:
+        if w < slow or w > 0.3 * math.pi:
             continue
         if w * fit.samples > 2.0 * math.pi * mains / _UNSTEADY_HZ * 0.2:
             w = nearest_line(record, w, w * _UNSTEADY_HZ / mains)
@@ -62,19 +61,21 @@ def candidates(record: Record, fit: Fit, interval_s: float, mains_hz: float | No
         near_own = float(np.abs(own - line.w)[1:].min()) < _APART * cell
         rivals = [other.w for other in found if other.mains_hz in (0.0, line.mains_hz)]
         near_other = any(abs(w - line.w) < 0.5 * _APART * cell for w in rivals)
-        slow = line.w < _APART * cell
-        if line.w <= 0.0 or line.w > 0.95 * math.pi or near_own or near_other:
-            continue
-        if slow and line.name != "slow" and not (line.name == "mains" and line.w > _SLOW * cell):
+        too_slow = line.w < _APART * cell and line.name == "sideband"
+        if not 0.0 < line.w < 0.95 * math.pi or near_own or near_other or too_slow:
             continue
         found.append(line)
     return found
 
 
 def certain_lines(record: Record, fit: Fit, lines: Sequence[Foreign]) -> list[Foreign]:
-    """Keep those lines that the residual holds for certain; of two mains frequencies, the better."""
+    """Keep those lines that the residual holds for certain; of two mains frequencies, the better.
+
+    A slow line that is fitted already stays, first.
+    """
+    held = [Foreign("slow", 0.0, float(w)) for w in fit.lines.fixed]
     if not lines:
-        return []
+        return held
     scores = _scores(record, fit, np.array([line.w for line in lines]))
     totals: dict[float, float] = {}
     for line, score in zip(lines, scores, strict=True):
@@ -86,7 +87,7 @@ def certain_lines(record: Record, fit: Fit, lines: Sequence[Foreign]) -> list[Fo
         for line, score in zip(lines, scores, strict=True)
         if score > _CERTAIN and line.mains_hz in (0.0, best)
     ]
-    return [line for _, line in sorted(kept, key=lambda item: -item[0])]
+    return [*held, *(line for _, line in sorted(kept, key=lambda item: -item[0]))]
 
 
 def _scores(record: Record, fit: Fit, w: Array) -> Array:

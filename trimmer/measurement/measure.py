@@ -20,7 +20,7 @@ from trimmer.measurement.figures import (
     rise_share_of,
     thd_plus_noise_of,
 )
-from trimmer.measurement.fit import Fit, approach, fit
+from trimmer.measurement.fit import Fit, approach, fit, slow_line
 from trimmer.measurement.hum import candidates, certain_lines, hum_report
 from trimmer.measurement.leftover import block_residuals, frequency_drift, noise_colour
 from trimmer.measurement.model import Complex, Lines
@@ -51,6 +51,8 @@ _BURIED = 0.7
 """A residual of more than this share of the fundamental (both rms) is no signal."""
 _CHANCE = 14.0
 """Logarithm of the odds against noise passing for a fundamental."""
+_WANDERS = 0.05
+"""An offset that wanders by this share of the fundamental is fitted along from the start."""
 _AC_COUPLED_BELOW_HZ = 100.0
 
 
@@ -108,9 +110,10 @@ def measure(
     found = _fitted(record, float(interval_s), orders, hint_hz)
     foreign = candidates(record, found, float(interval_s), _known_mains(mains_hz))
     foreign = certain_lines(record, found, foreign)
-    if foreign:
+    if len(foreign) > found.lines.fixed.size:
         fixed = np.array([line.w for line in foreign])
         found = fit(record, Lines(found.lines.orders, fixed), found.w)
+        _check_reach(record, found.w, orders, slack=1e-3)
     _check_signal(found)
     left = block_residuals(found, _kept(orders, found.w))
     frame = crest_frame(found, left.shape[1], noise_colour(found, left))
@@ -164,12 +167,15 @@ def _fit_from(record: Record, w: float, orders: int) -> Fit | None:
     most = min(most, (record.count - 4) // 3)
     if most < FEWEST_ORDERS:
         return None
-    near = approach(record, most, w)
+    near, wander = approach(record, most, w)
     if near <= 0.0:
         return None
     most = min(most, max(_kept(max(MOST_ORDERS, orders), near), FEWEST_ORDERS))
-    found = fit(record, Lines(most, np.empty(0)), near)
-    return found if 0.0 < found.w * most < math.pi and np.isfinite(found.phasors).all() else None
+    slow = [slow_line(record.count)] if wander > _WANDERS else []
+    found = fit(record, Lines(most, np.array(slow)), near)
+    usable = 0.0 < found.w * most < math.pi and bool(np.isfinite(found.phasors).all())
+    firm = 1e-6 * abs(complex(found.phasors[1])) ** 2 * record.count**3 / 24.0
+    return found if usable and found.stiffness > firm else None
 
 
 def _is_plausible(found: Fit) -> bool:
@@ -276,7 +282,7 @@ def _reading(
         "piled_lower": digitised.piled_low,
     }
     middle = 0.5 * (record.count - 1) * found.w
-    offset_variance = found.variance * float(found.unit_covariance(1)[0, 0, 0])
+    offset_variance = found.variance * float(found.inverse[0, 0, 0])
     chain_thd = math.sqrt(float(chain.sum()))
     return Reading(
         fundamental_hz=found.w * hz,

@@ -34,6 +34,10 @@ class Lines:
         """Number of lines, the offset included."""
         return self.orders + 1 + self.fixed.size
 
+    def kept(self, orders: int) -> NDArray[np.intp]:
+        """Indices of the offset, the first `orders` orders, and the nuisance lines."""
+        return np.concatenate((np.arange(orders + 1), np.arange(self.orders + 1, self.count)))
+
     def multiples(self) -> Array:
         """Shape (count,), derivative of each line's frequency with respect to the fundamental's."""
         return np.concatenate((np.arange(self.orders + 1.0), np.zeros(self.fixed.size)))

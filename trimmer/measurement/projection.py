@@ -67,11 +67,11 @@ class Projections:
         """Give ``sum x exp(-j w_i t)`` and ``sum t x exp(-j w_i t)`` at the fundamental `w`.
 
         Exact at `self.w`; away from it the error is of the order of ``(K (w - self.w) B)^2 / 24``.
-        `orders` keeps only the lines 0..orders.
+        `orders` keeps only that many orders, besides the offset and the nuisance lines.
         """
-        keep = slice(None) if orders is None else slice(0, orders + 1)
+        keep = slice(None) if orders is None else self.lines.kept(orders)
         k = self.lines.multiples()[keep]
-        turn = twists(self.centres, self.lines, w, keep)
+        turn = twists(self.centres, self.lines, w)[:, keep]
         moments = self.moments[:, keep]
         shift = w - self.w
         sums = self.sums[:, keep] if shift == 0.0 else self.sums[:, keep] - 1j * shift * k * moments
@@ -84,20 +84,18 @@ class Projections:
         return 0.5 * abs(w - self.w) * self.lines.orders * self.length
 
 
-def twists(t: Array, lines: Lines, w: float, keep: slice = slice(None)) -> Complex:
-    """Give ``exp(-j w_i t)`` for each line; shape (len(t), lines kept).
+def twists(t: Array, lines: Lines, w: float) -> Complex:
+    """Give ``exp(-j w_i t)`` for each line; shape (len(t), L).
 
     Orders are built from products of two short sets of powers, which costs two multiplications
     where an exponential costs forty.
     """
-    stop = lines.count if keep.stop is None else keep.stop
-    orders = min(lines.orders, stop - 1)
     step = 8
     low = np.exp(np.multiply.outer(t, -1j * w * np.arange(step)))
-    high = np.exp(np.multiply.outer(t, -1j * w * step * np.arange(orders // step + 1)))
-    powers = (high[:, :, None] * low[:, None, :]).reshape(t.size, -1)[:, : orders + 1]
-    if stop <= lines.orders + 1 or not lines.fixed.size:
-        return np.ascontiguousarray(powers)
+    high = np.exp(np.multiply.outer(t, -1j * w * step * np.arange(lines.orders // step + 1)))
+    powers = (high[:, :, None] * low[:, None, :]).reshape(t.size, -1)[:, : lines.orders + 1]
+    if not lines.fixed.size:
+        return powers
     return np.concatenate((powers, np.exp(np.multiply.outer(t, -1j * lines.fixed))), axis=1)
 
 

@@ -157,7 +157,8 @@ def check_clipping(values: NDArray[np.float64], digitiser: Digitiser) -> None:
     MeasurementError
         ``clipped``.
     """
-    margin = 0.5 * digitiser.code if digitiser.code else 0.0
+    code = digitiser.code
+    margin = 0.5 * code if code is not None and 0.0 < code < math.inf else 0.0
     at_rail = 0
     if digitiser.high_rail is not None:
         at_rail += int(np.count_nonzero(values >= digitiser.high_rail - margin))
