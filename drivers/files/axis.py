@@ -94,12 +94,12 @@ def from_times(
     interval = float(times[-1] - times[0]) / steps
     straight = times[0] + interval * np.arange(times.size)
     off = np.abs(times - straight)
-    print_steps = fineness.steps_s(times[[0, -1]], factor)
-    doubt = float(print_steps.max()) / steps + 4 * math.ulp(float(np.abs(times).max())) / steps
+    slack = _slack(times, fineness, factor)
+    doubt = float(max(slack[0], slack[-1])) / steps
     notes = []
     if off.max() <= EVEN * interval:
         kept: NDArray[np.float64] | None = times - times[0]
-    elif np.all(off <= _explained(times, fineness, factor)):
+    elif np.all(off <= np.maximum(slack, max(slack[0], slack[-1]))):
         kept = None
         notes.append(
             f"times are printed with too few digits for steps of {interval:.4g} s: "
@@ -137,14 +137,13 @@ def _check(times: NDArray[np.float64]) -> None:
         raise UnusableCapture("the time column stands still", ASK)
 
 
-def _explained(times: NDArray[np.float64], fineness: Print, factor: float) -> NDArray[np.float64]:
+def _slack(times: NDArray[np.float64], fineness: Print, factor: float) -> NDArray[np.float64]:
     """Give how far printing and storing may move each time from a straight line, seconds."""
     steps = fineness.steps_s(times, factor)
-    ends = float(steps[[0, -1]].max())
     largest = float(np.abs(times).max())
     single = np.all(np.abs(times.astype(np.float32) - times) <= 0.51 * steps)
     stored = math.ulp(largest) + (2 * SINGLE * largest if single else 0.0)
-    return np.asarray(1.001 * np.maximum(steps, ends) + stored)
+    return np.asarray(1.001 * steps + stored)
 
 
 def _round_within(value: float, doubt: float) -> float:

@@ -22,7 +22,8 @@ _BLANKS = (
 )
 _NUMBER = re.compile(
     rf"^(?P<sign>[+\-\N{{MINUS SIGN}}]?)\s*(?P<body>[0-9.,{_BLANKS}]*[0-9.,])"
-    r"(?P<exponent>[eEdD][+\-\N{MINUS SIGN}]?[0-9]{1,4})?\s*(?P<suffix>[^\s0-9.,+\-][^0-9]{0,12})?$"
+    r"(?P<exponent>(?:[eEdD]| [eE](?=[+\-]))[+\-\N{MINUS SIGN}]?[0-9]{1,4})?\s*"
+    r"(?P<suffix>[^\s0-9.,+\-][^0-9]{0,12})?$"
 )
 _DATE = re.compile(r"^\d{1,4}[./\-]\d{1,2}[./\-]\d{1,4}$")
 _CLOCK = re.compile(
@@ -66,8 +67,8 @@ def parse_cell(cell: str, convention: Convention) -> Number | None:
     found = _NUMBER.match(cell)
     if found is None or (digits := _plain(found["body"], convention)) is None:
         return None
-    exponent = (found["exponent"] or "").replace("\N{MINUS SIGN}", "-").upper().replace("D", "E")
-    value = float(digits + exponent)
+    exponent = _exponent(found["exponent"])
+    value = float(f"{digits}e{exponent}")
     if found["sign"] in ("-", "\N{MINUS SIGN}"):
         value = -value
     return _with_suffix(value, found["suffix"])
@@ -142,9 +143,12 @@ def last_place(cell: str, convention: Convention) -> tuple[int, int] | None:
     if found is None or (digits := _plain(found["body"], convention)) is None:
         return None
     fraction = digits.partition(".")[2]
-    exponent = (found["exponent"] or "e0").replace("\N{MINUS SIGN}", "-")[1:]
     significant = len(digits.replace(".", "").lstrip("0")) or 1
-    return int(exponent) - len(fraction), significant
+    return _exponent(found["exponent"]) - len(fraction), significant
+
+
+def _exponent(text: str | None) -> int:
+    return int(text.strip()[1:].replace("\N{MINUS SIGN}", "-")) if text else 0
 
 
 def find_convention(cells: Iterable[str]) -> Convention | None:

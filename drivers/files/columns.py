@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import math
+import re
 from dataclasses import dataclass
 
 import numpy as np
@@ -15,6 +17,8 @@ from drivers.files.layout import Layout
 NO_SPECTRUM = "Save the waveform itself: voltage over time."
 ENVELOPE = "Set the instrument's acquisition to plain sampling (no peak detect, no envelope) and save again."
 CHOOSE = "Choose the column of values with `--channel N`."
+_LOW = re.compile(r"(?:^|[\W_])min(?:imum)?(?:$|[\W_])", re.IGNORECASE)
+_HIGH = re.compile(r"(?:^|[\W_])max(?:imum)?(?:$|[\W_])", re.IGNORECASE)
 
 
 @dataclass(frozen=True, slots=True)
@@ -29,8 +33,8 @@ class Roles:
     """1-based number of the column among the columns of values."""
     bare: bool
     """True where the time column has neither name nor unit and was known by its even steps."""
-    counted: bool
-    """True where a column of the file counts its rows."""
+    counter_step: float | None
+    """Step of the column that counts the rows, where there is one; NaN where it is uneven."""
     notes: tuple[str, ...]
     """What was taken of what."""
 
@@ -49,62 +53,65 @@ def assign(header: Header, block: Block, layout: Layout, channel: int | None) ->
         No column of values, no such channel, a spectrum, an envelope, or several nameless ones.
     """
     columns = list(header.columns)
-    if columns[0].is_frequency and len(columns) > 1:
-        raise UnusableCapture(
-            "the first column is frequency: a spectrum, not a waveform", NO_SPECTRUM
-        )
-    clocks = [
-        column for column, at in zip(columns, layout.columns, strict=True) if at in layout.clocks
-    ]
-    times = [column for column in columns if column.is_time]
-    if any(column not in clocks for column in times):
-        clocks_left = clocks
-    else:
-        clocks_left, times = [], times or clocks
-    counted = [column for column in columns if column not in times and _counts(column, block)]
-    others = [
-        column for column in columns if column not in (*times, *counted, *clocks_left, *clocks)
-    ]
-    bare = False
-    if not times and not counted and len(others) > 1 and _even(others[0], block):
-        times, others, bare = [others[0]], others[1:], True
-    values = _without_codes(others, block)
-    if not values and counted and not times:
-        raise UnusableCapture("the only column counts its rows", "Save the values too.")
+    _refuse_kinds(columns)
+    parts = _sorted_out(columns, block, layout)
+    values = _without_codes(parts.others, block)
     if not values:
-        raise UnusableCapture(
-            "the file has no column of values beside time", "Save the values too."
-        )
-    _refuse_envelope(values)
-    place = _place(values, channel, named=any(column.name for column in columns) or bool(times))
+        raise UnusableCapture("the file has no column of values", "Save the values too.")
+    named = bool(parts.times) or any(column.name for column in columns)
+    place = _place(values, channel, named=named)
     chosen = values[place - 1]
-    time = max((item for item in times if item.place < chosen.place), key=_at, default=None)
+    before = [column for column in parts.times if column.place < chosen.place]
     return Roles(
-        time or next(iter(times), None),
-        chosen,
-        place,
-        bare,
-        bool(counted),
-        _said(values, chosen, place),
+        time=before[-1] if before else next(iter(parts.times), None),
+        values=chosen,
+        place=place,
+        bare=parts.bare,
+        counter_step=_step(parts.counters, block),
+        notes=_said(values, chosen, place),
     )
 
 
-def _at(column: Column) -> int:
-    return column.place
+@dataclass(frozen=True, slots=True)
+class _Parts:
+    """Columns by kind, each in the file's order."""
+
+    times: list[Column]
+    bare: bool
+    counters: list[Column]
+    others: list[Column]
+
+
+def _sorted_out(columns: list[Column], block: Block, layout: Layout) -> _Parts:
+    """Tell times, counters of rows, and the rest apart.
+
+    A time in numbers goes before a time of day, which is often printed coarser.
+    """
+    clocks = [column for column in columns if layout.columns[column.place] in layout.clocks]
+    times = [column for column in columns if column.is_time and column not in clocks] or clocks
+    rest = [column for column in columns if column not in times and column not in clocks]
+    counters = [column for column in rest if _counts(column, block)]
+    others = [column for column in rest if column not in counters]
+    if not times and not counters and len(others) > 1 and _even(others[0], block):
+        return _Parts(others[:1], True, [], others[1:])
+    return _Parts(times, False, counters, others)
 
 
 def _counts(column: Column, block: Block) -> bool:
     """Say whether a column counts the rows: whole numbers in steps of one."""
-    if (
-        column.is_time
-        or column.is_volts
-        or (column.name and not column.is_index and column.word != "x")
-    ):
-        return False
-    numbers = block.numbers[:, column.place]
     if column.is_index:
         return True
-    return column.place == 0 and numbers.size > 2 and bool(np.all(np.diff(numbers) == 1.0))
+    if column.is_volts or column.place != 0 or column.word not in ("", "x"):
+        return False
+    numbers = block.numbers[:, 0]
+    return numbers.size > 2 and bool(np.all(np.diff(numbers) == 1.0))
+
+
+def _step(counted: list[Column], block: Block) -> float | None:
+    if not counted or len(block.numbers) < 2:
+        return None
+    steps = np.diff(block.numbers[:, counted[0].place])
+    return float(steps[0]) if bool(np.all(steps == steps[0])) else math.nan
 
 
 def _even(column: Column, block: Block) -> bool:
@@ -159,11 +166,14 @@ def _straight(codes: NDArray[np.float64], values: NDArray[np.float64]) -> bool:
     return slope != 0.0 and float(np.abs(y - slope * x).max()) < 0.3 * abs(slope)
 
 
-def _refuse_envelope(values: list[Column]) -> None:
-    names = [column.word for column in values]
-    low = [name for name in names if name.endswith(("min", "minimum")) or name.startswith("min")]
-    high = [name for name in names if name.endswith(("max", "maximum")) or name.startswith("max")]
-    if low and high:
+def _refuse_kinds(columns: list[Column]) -> None:
+    """Refuse what is no waveform, whatever else its names say."""
+    if columns[0].is_frequency and len(columns) > 1:
+        raise UnusableCapture(
+            "the first column is frequency: a spectrum, not a waveform", NO_SPECTRUM
+        )
+    names = [column.name for column in columns]
+    if any(map(_LOW.search, names)) and any(map(_HIGH.search, names)):
         raise UnusableCapture(
             "the file holds a minimum and a maximum for each instant, not samples", ENVELOPE
         )

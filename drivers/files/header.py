@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass, field
 
 from drivers.contract import UnusableCapture, clean
@@ -15,11 +16,14 @@ from drivers.files.vocabulary import (
     CODE_NAMES,
     FREQUENCY_NAMES,
     INDEX_NAMES,
+    STATISTICS,
     TIME_NAMES,
     concept_of,
     squeeze,
 )
 
+NAME_ROWS = 6
+"""Rows above the numbers among which names and units are looked for."""
 _COMMENT = re.compile(r'^[\s"]*(?:#|%|//|!|\*|;|--)+\s*')
 _NAME_AND_UNIT = re.compile(r"[^\s()\[\]{}][^()\[\]{}]*[(\[{][^()\[\]{}]*[)\]}]")
 
@@ -129,38 +133,36 @@ def _column(place: int, name: str, unit_text: str, written: Unit | None) -> Colu
 
 
 def _name_rows(rows: list[list[str]], layout: Layout) -> tuple[dict[int, str], dict[int, str]]:
-    """Find the names row and the units row among the last rows of the header."""
-    above = [cells for row in rows[-3:] if (cells := _aligned(row, layout))]
+    """Find the names row and the units row: the last rows that have words over the columns."""
+    above = [cells for row in rows[-NAME_ROWS:] if (cells := _aligned(row, layout))]
     if not above:
         return {}, {}
     last = above[-1]
-    if len(above) > 1 and _is_units(last):
-        return above[-2], last
-    if len(above) > 1 and _is_half_units(last) and len(above[-2]) == len(last):
-        return above[-2], last
-    if _is_units(last):
-        return last, last
+    if _is_units(last, all) or (len(above) > 1 and _is_units(last, any)):
+        same_kind = len(above) > 1 and len(above[-2]) == len(last)
+        return (above[-2] if same_kind else last), last
     return last, {}
 
 
+def _is_units(cells: dict[int, str], how_many: Callable[[Iterable[bool]], bool]) -> bool:
+    return how_many(parse_unit(cell) is not None for cell in cells.values())
+
+
 def _aligned(row: list[str], layout: Layout) -> dict[int, str]:
-    """Put a header row's cells over the columns; empty where they cannot belong together."""
+    """Put a header row's cells over the columns; empty where they are no names."""
     if layout.delimiter is None:
         row = _respaced(row, len(layout.columns))
     cells = {column: row[column] for column in layout.columns if column < len(row) and row[column]}
-    words = [cell for cell in cells.values() if parse_cell(cell, layout.convention) is None]
-    if not words or (len(cells) < len(layout.columns) and concept_of(row[0])[0]):
+    if not cells or len(cells) < min(2, len(layout.columns)):
         return {}
-    if len(layout.columns) > 1 and len(cells) < 2:
+    numbers = [cell for cell in cells.values() if parse_cell(cell, layout.convention)]
+    # Channels are called 1 and 2; a row of words and other numbers is a row of facts.
+    if len(numbers) == len(cells) or not all(number.isdigit() for number in numbers):
         return {}
-    key, _ = concept_of(row[0])
-    if key and key not in ("interval", "y_unit") and not _is_all_words(row, layout):
+    concept = concept_of(row[0])[0]
+    if concept and (numbers or concept not in ("interval", "y_unit") or len(row) < layout.width):
         return {}
-    return cells
-
-
-def _is_all_words(row: list[str], layout: Layout) -> bool:
-    return all(not cell or parse_cell(cell, layout.convention) is None for cell in row)
+    return {} if squeeze(row[0]) in STATISTICS else cells
 
 
 def _respaced(row: list[str], wanted: int) -> list[str]:
@@ -170,11 +172,3 @@ def _respaced(row: list[str], wanted: int) -> list[str]:
     line = " ".join(row)
     joined = _NAME_AND_UNIT.findall(line)
     return joined if len(joined) == wanted else row
-
-
-def _is_units(cells: dict[int, str]) -> bool:
-    return all(parse_unit(cell) is not None for cell in cells.values())
-
-
-def _is_half_units(cells: dict[int, str]) -> bool:
-    return any(parse_unit(cell) is not None for cell in cells.values())

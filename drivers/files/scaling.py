@@ -44,7 +44,9 @@ def scale(numbers: NDArray[np.float64], column: Column, header: Header, channel:
     """
     bits = _bits(header)
     unit = column.unit if column.unit and column.unit.base else _stated_unit(header, channel)
-    codes = is_whole(numbers) and (unit is None or unit.base == "code" or column.unit is None)
+    # Millivolts come as whole numbers; volts that are whole by chance do not.
+    doubtful = unit is None or unit.base == "code" or (column.unit is None and unit.factor == 1.0)
+    codes = is_whole(numbers) and doubtful
     if codes and (line := _line(header, channel)):
         gain, zero, how = line
         return Samples(zero + gain * numbers, True, abs(gain), bits, (how,))

@@ -52,9 +52,28 @@ def settle(table: Table, wanted_s: float | None) -> Axis:
             f"{table.block.gaps} lines among the numbers are empty, and there is no time column",
             "Save the capture again, with a time column.",
         )
+    _check_counts(table)
     if stated_s is None:
         raise UnusableCapture("the file does not say how far apart its samples are", ASK)
     return Axis(stated_s, None, (f"interval of {stated_s:.6g} s taken from the header",))
+
+
+def _check_counts(table: Table) -> None:
+    """Refuse to lay the header's interval on rows that may have been thinned out."""
+    step = table.roles.counter_step
+    if step is not None and step != 1.0:
+        raise UnusableCapture(
+            "the column that counts the rows does not step by one, so that the header's interval "
+            "may not be theirs",
+            ASK,
+        )
+    length, rows = table.header.number("length"), len(table.block.rows)
+    if length is not None and length >= 2 * rows and length % rows == 0:
+        raise UnusableCapture(
+            f"the header states {length:.0f} points and the file has {rows}: they may have been "
+            "thinned out, and the header's interval may not be theirs",
+            ASK,
+        )
 
 
 def _by_person(table: Table, wanted_s: float) -> Axis:

@@ -153,5 +153,6 @@ def unit_in_name(name: str) -> Unit | None:
         if (found := pattern.search(name)) and (unit := parse_unit(found[1])):
             return unit
     if (found := _LOOSE_TAIL.search(name)) and (unit := parse_unit(found[1])):
-        return unit
+        # `CH1 Min` is a minimum and no time, `Channel 1 Raw` a name and no unit to scale by.
+        return unit if unit.base in ("s", "V") and found[1].casefold() != "min" else None
     return None

@@ -53,6 +53,7 @@ CODE_NAMES = _words(
     "adc adccode adccodes code codes raw rawcode rawcodes counts adccounts lsb adcraw digits "
     "adcvalue rawvalue rawadc rawdata"
 )
+STATISTICS = _words("max maximum min minimum mean average rms pkpk peaktopeak vpp stddev cycles")
 FREQUENCY_NAMES = _words("frequency freq f hz frequenz frequence frecuencia")
 _BRACKETS = re.compile(r"[(\[{][^()\[\]{}]*[)\]}]")
 
