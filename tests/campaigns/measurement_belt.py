@@ -10,6 +10,7 @@ Run ``python -m tests.campaigns.measurement_belt`` to write ``trimmer/measuremen
 from __future__ import annotations
 
 import math
+import textwrap
 from pathlib import Path
 
 import numpy as np
@@ -113,28 +114,36 @@ def table() -> dict[int, Array]:
     return {freedom: acceptance(float(freedom)) for freedom in FREEDOMS}
 
 
-HEAD = '''"""The confidence belt behind the intervals of THD: numbers made by `tests.campaigns.measurement_belt`.
+HEAD = '''"""The confidence belt behind the intervals of THD.
 
-For each number of degrees of freedom and each true length, the square roots of the least and the
-largest ``y`` that are accepted at 95 %, in units of the standard deviation of one part.
+The numbers are made by `tests.campaigns.measurement_belt`. For each number of degrees of freedom and
+each true length they are the square roots of the least and of the largest ``y`` accepted at 95 %, in
+units of the standard deviation of one part.
 """
 
 from __future__ import annotations
 
+# fmt: off
 '''
+
+
+def _row(values: Array, form: str) -> str:
+    return textwrap.fill(
+        ", ".join(format(v, form) for v in values),
+        width=100,
+        initial_indent="    ",
+        subsequent_indent="    ",
+    )
 
 
 def render(values: dict[int, Array]) -> str:
     """Write the table as a module."""
-    lines = [HEAD]
-    lines.append(f"FREEDOMS = ({', '.join(str(f) for f in values)})\n")
-    lines.append("# fmt: off\n")
-    lines.append(f"LENGTHS = ({', '.join(f'{v:g}' for v in LENGTHS)})\n")
+    freedoms = _row(np.array(list(values)), "d")
+    lines = [HEAD, f"FREEDOMS = (\n{freedoms},\n)\n"]
+    lines.append(f"LENGTHS = (\n{_row(np.array(LENGTHS), 'g')},\n)\n")
     for name, column in (("LEAST", 0), ("LARGEST", 1)):
-        lines.append(f"{name} = (\n")
-        for rows in values.values():
-            lines.append("    (" + ", ".join(f"{v:.4f}" for v in rows[:, column]) + "),\n")
-        lines.append(")\n")
+        rows = (f"    (\n{_row(rows[:, column], '.4f')},\n    ),\n" for rows in values.values())
+        lines.append(f"{name} = (\n{''.join(rows)})\n")
     lines.append("# fmt: on\n")
     return "".join(lines)
 

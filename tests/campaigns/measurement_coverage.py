@@ -20,7 +20,13 @@ from trimmer.measurement import Digitiser, measure
 Array = NDArray[np.float64]
 
 SHAPED = parts_of(
-    k2=0.004 - 0.002j, k3=-0.006 + 0.001j, k4=0.002 - 0.0007j, k5=0.003, k7=-0.0015, k9=0.0007j, k15=0.0004
+    k2=0.004 - 0.002j,
+    k3=-0.006 + 0.001j,
+    k4=0.002 - 0.0007j,
+    k5=0.003,
+    k7=-0.0015,
+    k9=0.0007j,
+    k15=0.0004,
 )
 """A sine shaper's wave, invented, THD 0.9 %."""
 COARSE = parts_of(k2=0.05 - 0.03j, k3=-0.1 + 0.02j, k5=0.05, k7=-0.03 + 0.04j, k11=0.02)
@@ -167,8 +173,10 @@ def line(o: Outcome) -> str:
 
 if __name__ == "__main__":
     wanted = int(sys.argv[1]) if len(sys.argv) > 1 else 10_000
-    print(f"{wanted} records a case; 95 % intervals; spread of a standard deviation "
-          f"{100 / math.sqrt(2 * wanted):.1f} %, of a coverage {100 * math.sqrt(.0475 / wanted):.1f} points")
+    print(
+        f"{wanted} records a case; 95 % intervals; spread of a standard deviation "
+        f"{100 / math.sqrt(2 * wanted):.1f} %, of a coverage {100 * math.sqrt(0.0475 / wanted):.1f} points"
+    )
     print(HEADING)
     for number, case in enumerate(CASES):
         print(line(run(case, wanted, seed=100 + number)), flush=True)

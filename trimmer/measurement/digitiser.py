@@ -69,7 +69,13 @@ def _stated_code(digitiser: Digitiser) -> float | None:
     if digitiser.code is not None and math.isfinite(digitiser.code):
         return float(digitiser.code)
     low, high, bits = digitiser.low_rail, digitiser.high_rail, digitiser.bits
-    if low is None or high is None or not bits or not 0 < bits <= 60 or not 0.0 < high - low < math.inf:
+    if (
+        low is None
+        or high is None
+        or not bits
+        or not 0 < bits <= 60
+        or not 0.0 < high - low < math.inf
+    ):
         return None
     return (high - low) / (2.0**bits - 1.0)
 
@@ -111,7 +117,7 @@ def default_nonlinearity(bits: int, averaged: int = 1) -> float:
     exact (common practice, no source). Bits gained by averaging frames gain no linearity.
     """
     real = max(4.0, min(bits, 24) - 0.5 * math.log2(max(averaged, 1)))
-    return 0.1 * 2.0 ** ((real - 8.0) / 2.0) * 2.0 ** (min(bits, 24) - real)
+    return 0.1 * float(2.0 ** (0.5 * (real - 8.0) + min(bits, 24) - real))
 
 
 def systematic_variances(

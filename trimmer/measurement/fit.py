@@ -115,8 +115,8 @@ def _solve(
 ) -> _Solved:
     """Solve for all amplitudes at the fundamental `w`, and for the next step of `w`.
 
-    `orders` fits only the offset, that many orders and the nuisance lines; None takes all. `near` is the inverse
-    Gram matrix at a frequency nearby, where there is one.
+    `orders` fits only the offset, that many orders and the nuisance lines; None takes all. `near` is
+    the inverse Gram matrix at a frequency nearby, where there is one.
     """
     lines = projections.lines if orders is None else Lines(orders, projections.lines.fixed)
     normal = normal_equations(projections.samples, lines, w)
@@ -165,10 +165,9 @@ def _solution(gram: Array, inverse: Array, right: Array) -> Array:
 def _inverse(gram: Array) -> Array:
     """Invert; where two lines cannot be told apart, share between them."""
     try:
-        inverse: Array = np.linalg.inv(gram)
+        return np.asarray(np.linalg.inv(gram), dtype=np.float64)
     except np.linalg.LinAlgError:
-        inverse = np.linalg.pinv(gram, hermitian=True)
-    return inverse
+        return np.asarray(np.linalg.pinv(gram, hermitian=True), dtype=np.float64)
 
 
 def _refine(

@@ -42,7 +42,9 @@ class Foreign:
     """Radians per sample."""
 
 
-def candidates(record: Record, fit: Fit, interval_s: float, mains_hz: float | None) -> list[Foreign]:
+def candidates(
+    record: Record, fit: Fit, interval_s: float, mains_hz: float | None
+) -> list[Foreign]:
     """List the lines that could be told apart in this record, nearest kin only once."""
     cell = 2.0 * math.pi / fit.samples
     slow = slow_line(fit.samples)

@@ -54,7 +54,7 @@ def multiples(samples: int, w: float, most: int) -> tuple[Array, Array, Array]:
     """Give the kernels at ``0, w, 2 w, .., most w``, each of shape (most + 1,); ``w`` not near 0."""
     kernel, slope, curve = (np.empty(most + 1) for _ in range(3))
     kernel[0], slope[0], curve[0] = samples, 0.0, -_second(float(samples))
-    kernel[1:], slope[1:], curve[1:] = _closed(float(samples), np.arange(1, most + 1) * w)
+    kernel[1:], slope[1:], curve[1:] = _closed(float(samples), w * np.arange(1.0, most + 1.0))
     return kernel, slope, curve
 
 
@@ -77,4 +77,8 @@ def _second(count: float) -> float:
 def _taylor(count: float, w: Array) -> tuple[Array, Array, Array]:
     second = _second(count)
     fourth = second * (3.0 * count * count - 7.0) / 20.0
-    return count - 0.5 * second * w * w, -second * w + fourth * w**3 / 6.0, -second + 0.5 * fourth * w * w
+    return (
+        count - 0.5 * second * w * w,
+        -second * w + fourth * w**3 / 6.0,
+        -second + 0.5 * fourth * w * w,
+    )

@@ -113,13 +113,17 @@ def measure(
     if len(foreign) > found.lines.fixed.size:
         fixed = np.array([line.w for line in foreign])
         found = fit(record, Lines(found.lines.orders, fixed), found.w)
-        _check_reach(record, found.w, orders, slack=1e-3)
+        _check_reach(record, found.w, slack=1e-3)
     _check_signal(found)
     left = block_residuals(found, _kept(orders, found.w))
     frame = crest_frame(found, left.shape[1], noise_colour(found, left))
     extra, flags = hum_report(found, foreign)
     stale = stale_flag(values, previous_samples)
-    flags = [*([stale] if stale else []), *flags, *_flags(found, left, orders, interval_s, digitiser)]
+    flags = [
+        *([stale] if stale else []),
+        *flags,
+        *_flags(found, left, orders, interval_s, digitiser),
+    ]
     digitised = look_at(record, digitiser)
     reading = _reading(record, found, frame, float(interval_s), digitiser, digitised, extra, flags)
     return apply_reference(reading, reference) if reference else reading
@@ -152,11 +156,11 @@ def _fitted(record: Record, interval_s: float, orders: int, hint_hz: float | Non
     w = coarse_fundamental(record)
     if w <= 0.0:
         raise no_signal("no line stands out of the spectrum.")
-    _check_reach(record, w, orders, slack=0.2)
+    _check_reach(record, w, slack=0.2)
     found = _fit_from(record, w, orders)
     if found is None:
         raise no_signal("what stands out does not repeat.")
-    _check_reach(record, found.w, orders, slack=1e-3)
+    _check_reach(record, found.w, slack=1e-3)
     return found
 
 
@@ -184,7 +188,7 @@ def _is_plausible(found: Fit) -> bool:
     return bool(sizes[0] >= sizes.max()) and found.residual_power < 0.1 * found.power
 
 
-def _check_reach(record: Record, w: float, orders: int, slack: float) -> None:
+def _check_reach(record: Record, w: float, slack: float) -> None:
     cycles = w * record.count / (2.0 * math.pi)
     if cycles < FEWEST_CYCLES - slack:
         raise MeasurementError(

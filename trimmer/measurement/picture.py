@@ -16,7 +16,8 @@ def phases(points: int) -> Array:
     """Give `points` phases over one period from the positive crest, radians, shape (points,)."""
     if points < 1:
         raise ValueError("a picture needs at least one point")
-    return np.arange(points) * (2.0 * math.pi / points)
+    grid: Array = np.arange(float(points)) * (2.0 * math.pi / points)
+    return grid
 
 
 def shape_of(reading: Reading, points: int) -> tuple[Array, Array]:

@@ -93,7 +93,8 @@ def twists(t: Array, lines: Lines, w: float) -> Complex:
     step = 8
     low = np.exp(np.multiply.outer(t, -1j * w * np.arange(step)))
     high = np.exp(np.multiply.outer(t, -1j * w * step * np.arange(lines.orders // step + 1)))
-    powers = (high[:, :, None] * low[:, None, :]).reshape(t.size, -1)[:, : lines.orders + 1]
+    powers: Complex = (high[:, :, None] * low[:, None, :]).reshape(t.size, -1)
+    powers = powers[:, : lines.orders + 1]
     if not lines.fixed.size:
         return powers
     return np.concatenate((powers, np.exp(np.multiply.outer(t, -1j * lines.fixed))), axis=1)
@@ -108,7 +109,7 @@ def project(record: Record, lines: Lines, w: float) -> Projections:
     """Project a record on `lines` at the fundamental `w` (radians per sample)."""
     samples, length = record.count, block_length(record.count)
     blocks = -(-samples // length)
-    inner = np.arange(length) - 0.5 * (length - 1)
+    inner: Array = np.arange(float(length)) - 0.5 * (length - 1)
     basis = _basis(inner, lines, w)
     found = np.empty((blocks, basis.shape[1]))
     power = 0.0
@@ -123,7 +124,7 @@ def project(record: Record, lines: Lines, w: float) -> Projections:
     count = lines.count
     cosines, sines = found[:, :count], found[:, count : 2 * count]
     t_cosines, t_sines = found[:, 2 * count : 3 * count], found[:, 3 * count :]
-    centres = np.arange(blocks) * float(length) + 0.5 * (length - 1) - 0.5 * (samples - 1)
+    centres: Array = np.arange(float(blocks)) * length + 0.5 * (length - samples)
     return Projections(
         samples=samples,
         lines=lines,
