@@ -1,6 +1,7 @@
 """From a capture to a reading: harmonics in the crest frame with their uncertainties. Pure."""
 
 from trimmer.measurement.combine import combine, cut_to, frames_needed
+from trimmer.measurement.diagnose import Remainder, diagnose
 from trimmer.measurement.figures import effective_bits, sinad_db, thd_of_total
 from trimmer.measurement.measure import measure
 from trimmer.measurement.packing import document, from_document
@@ -24,9 +25,11 @@ __all__ = [
     "MeasurementError",
     "Reading",
     "Reference",
+    "Remainder",
     "apply_reference",
     "combine",
     "cut_to",
+    "diagnose",
     "digest",
     "document",
     "effective_bits",
