@@ -104,11 +104,11 @@ def choose(
     if outlook.is_there():
         return None
     plans = [(outlook.turns_after(t, way), t, way) for t in trims for way in outlook.ways(t)]
-    if not plans:
+    gaining = (p for p in sorted(plans) if outlook.gains(p[1], p[2]))
+    plan = next(gaining, None)
+    if plan is None:
         return None
-    _, trim, way = min(plans)
-    if not outlook.gains(trim, way):
-        return None
+    _, trim, way = plan
     thd = outlook.thd_after(trim, way)
     rises = thd > 1.02 * outlook.thd_now
     reason = words.RISES if rises else words.NEARER

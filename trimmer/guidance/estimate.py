@@ -8,13 +8,14 @@ import numpy as np
 
 from trimmer.guidance.aim import Aim, Box
 from trimmer.guidance.field import Array, FieldBelief, features
-from trimmer.guidance.general import TYPICAL, general_belief
+from trimmer.guidance.general import general_belief
 from trimmer.guidance.hand import Hand
 from trimmer.guidance.memory import KindPrior
 from trimmer.guidance.path import Found, Walk, find_walk
 from trimmer.guidance.record import Record
 from trimmer.guidance.seen import Seen
 
+GENERAL_FREEDOM = 3.0
 KIND_UNEVEN = 0.1
 """Relative scatter of a turn in the scale of a kind: units differ in how their tracks are wound."""
 START_SIGMA = 0.3
@@ -87,15 +88,9 @@ def estimate(record: Record, hand: Hand, kind: KindPrior | None) -> Estimate:
 
 
 def _general(walk: Walk, record: Record) -> Found:
-    """Search with nothing known; the gain of the columns sets how much they may bend."""
+    """Search with nothing known of the kind."""
     orders = record.orders
-    gain = 1.0
-    found = find_walk(walk, general_belief(orders, gain))
-    length = float(np.max(np.linalg.norm(found.belief.columns(found.last), axis=1))) / TYPICAL
-    if record.moves and not 0.6 < length < 1.7:
-        gain = float(np.clip(length, 0.05, 20.0))
-        found = find_walk(walk, general_belief(orders, gain), found.steps)
-    return found
+    return find_walk(walk, general_belief(orders), marginal=True, freedom=GENERAL_FREEDOM)
 
 
 def _with_kind(walk: Walk, kind: KindPrior) -> Found:

@@ -26,6 +26,8 @@ CLOSE_THD: Final = 8e-5
 """.. or this much THD of it, whichever is more."""
 LONGEST_SHARE: Final = 0.35
 """Longest turn ever asked for at once, share of the travel."""
+SETTABLE: Final = 1.0
+"""No turn is asked for that is smaller than this many times the hand's own jitter."""
 BEYOND: Final = 1.3
 """Turns expected to be left after a second turn that did not get there."""
 NODES, WEIGHTS = np.polynomial.hermite_e.hermegauss(7)
@@ -89,7 +91,7 @@ class Outlook:
         inside = [
             float(np.clip(w, max(low, -LONGEST_SHARE), min(high, LONGEST_SHARE))) for w in mixes
         ]
-        return [w for w in inside if abs(w) > 1e-4]
+        return [w for w in inside if abs(w) >= SETTABLE * self.hand.jitter]
 
     def _outcomes(self, trim: int, way: float) -> tuple[Array, Array]:
         """Where a turn may end, relative to the best: shape (n, 2), and the chances, shape (n,)."""

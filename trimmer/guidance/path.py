@@ -30,6 +30,11 @@ from trimmer.guidance.field import (
 )
 
 
+_POWERS = ((0, 0), (1, 0), (0, 1), (2, 0), (1, 1), (0, 2), (3, 0), (2, 1), (1, 2), (0, 3))
+SIZE_ROUNDS = 4
+"""Rounds after which the sizes of the weights are left as learned."""
+
+
 @dataclass(frozen=True, slots=True, eq=False)
 class Walk:
     """Readings along a walk of the two trims."""
@@ -81,6 +86,7 @@ def find_walk(
     rounds: int = 12,
     *,
     marginal: bool = False,
+    freedom: float | None = None,
 ) -> Found:
     """Find the most probable steps and field.
 
@@ -96,13 +102,15 @@ def find_walk(
         Most Gauss-Newton rounds.
     marginal
         Whether to integrate the field out.
+    freedom
+        How surely the prior knows the size of each part's weights, as degrees of freedom; None takes
+        the sizes as they are.
     """
-    precision = np.asarray(np.linalg.inv(prior.covariance), dtype=np.float64)
     steps = walk.expected.copy() if start is None else start.copy()
-    problem = _Problem(walk, prior, precision, marginal)
+    problem = _Problem(walk, prior, marginal, freedom)
     weights, cost = problem.weights(steps)
     converged = walk.expected.size == 0
-    for _ in range(0 if converged else rounds):
+    for round_ in range(0 if converged else rounds):
         change = problem.newton(steps, weights)
         size = 1.0
         for _ in range(6):
@@ -115,6 +123,10 @@ def find_walk(
             break
         gained = cost - new_cost
         steps, weights, cost = tried, new_weights, new_cost
+        if freedom is not None and round_ < SIZE_ROUNDS:
+            problem.learn_sizes(steps, weights)
+            weights, cost = problem.weights(steps)
+            continue
         if gained < 1e-3:
             converged = True
             break
@@ -124,13 +136,44 @@ def find_walk(
 class _Problem:
     """The joint problem with its fixed arrays at hand."""
 
-    def __init__(self, walk: Walk, prior: FieldBelief, precision: Array, marginal: bool) -> None:
+    def __init__(
+        self, walk: Walk, prior: FieldBelief, marginal: bool, freedom: float | None
+    ) -> None:
         self.marginal = marginal
+        self.freedom = freedom
+        self.given = np.asarray(np.linalg.inv(prior.covariance), dtype=np.float64)
         self.walk = walk
         self.prior = prior
-        self.precision = precision
         self.weight = 1.0 / walk.variance
-        self.pull = np.einsum("kfg,kg->kf", precision, prior.mean)
+        self._rescale(np.ones((2, prior.mean.shape[0])), np.ones(prior.mean.shape[0]))
+
+    def _rescale(self, columns: Array, bends: Array) -> None:
+        """Widen the prior of each part's columns and, besides, of its curvature by these squares."""
+        upper, lower = 1.0 / np.sqrt(columns)
+        curved = 1.0 / np.sqrt(bends)
+        by = np.ones_like(self.prior.mean)
+        by[:, 1], by[:, 2] = upper, lower
+        for f, (u, v) in enumerate(_POWERS[3:], start=3):
+            by[:, f] = upper**u * lower**v * curved
+        self.precision = self.given * by[:, :, None] * by[:, None, :]
+        self.pull = np.einsum("kfg,kg->kf", self.precision, self.prior.mean)
+
+    def learn_sizes(self, steps: Array, weights: Array) -> None:
+        """Learn the sizes of columns and of curvature (one round of expectation and maximisation).
+
+        A column is as long as it is: its size is learned from all its crest parts together, and from
+        all its skew parts together. How much a part bends is learned for each part.
+        """
+        assert self.freedom is not None
+        inverse = np.linalg.inv(self._normal(self._features(steps)))
+        own = np.einsum("kff->kf", self.given)
+        seen = own * ((weights - self.prior.mean) ** 2 + np.einsum("kff->kf", inverse))
+        columns = np.empty((2, weights.shape[0]))
+        for kind in (0, 1):
+            columns[:, kind::2] = seen[kind::2, 1:3].mean(axis=0)[:, None]
+        grown = np.stack([columns[0] ** u * columns[1] ** v for u, v in _POWERS[3:]], axis=1)
+        bends = (seen[:, 3:] / grown).sum(axis=1)
+        self._rescale(columns, (self.freedom + bends) / (self.freedom + grown.shape[1]))
 
     def _features(self, steps: Array) -> Array:
         return features(self.walk.steps @ steps - self.prior.anchor)
