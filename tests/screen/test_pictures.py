@@ -8,6 +8,7 @@ import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+from rich.cells import cell_len
 
 from trimmer.guidance.advice import Sense, Trim
 from trimmer.screen.pictures.bar import bar, cell_of
@@ -190,7 +191,7 @@ def test_too_far_the_wrong_way_and_not_known_differ_without_colour() -> None:
 
 @given(st.text(), st.integers(0, 40))
 def test_a_fitted_text_has_its_width(text: str, width: int) -> None:
-    assert len(fitted(text, width)) == width
+    assert cell_len(fitted(text, width)) == width
 
 
 @given(st.text(alphabet="ab c", max_size=200), st.integers(5, 40), st.integers(1, 4))

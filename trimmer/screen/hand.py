@@ -32,7 +32,3 @@ class KeyedHand:
         """Turn by one step; returns at once."""
         step = self._travel * (FINE if fine else COARSE)
         self._screwdriver.turn(self.trim, step if sense == "clockwise" else -step)
-
-    def degrees(self, fine: bool) -> float:
-        """Give a step in degrees."""
-        return 360.0 * self._travel * (FINE if fine else COARSE)

@@ -10,7 +10,9 @@ from drivers import SourceError
 from drivers.contract import clean
 from trimmer.errors import TrimmerError
 from trimmer.measurement.reading import MeasurementError
-from trimmer.reports import Conversation, Failed, Followed, Report
+from trimmer.reports import Conversation, Failed, Finished, Followed, Report
+
+REPORT = "Report this; what was measured so far is in the book."
 
 
 class Mailbox:
@@ -59,8 +61,12 @@ def _replaces(old: Report, new: Report) -> bool:
 
 def reports(session: Conversation, stop: Callable[[], bool]) -> Iterator[Report]:
     """Run a session to its end, turning what it raises into its last report."""
+    last: Report | None = None
     try:
-        yield from session.run(stop=stop)
+        for last in session.run(stop=stop):
+            yield last
+        if not isinstance(last, Finished | Failed) and not stop():
+            yield Failed(1, "The session ended without saying how.", REPORT)
     except SourceError as error:
         yield Failed(4, clean(str(error)), error.remedy)
     except MeasurementError as error:
@@ -69,4 +75,4 @@ def reports(session: Conversation, stop: Callable[[], bool]) -> Iterator[Report]
         yield Failed(error.exit_status, clean(str(error)), error.remedy)
     except Exception as error:  # noqa: BLE001 - a thread that ends unseen leaves a person waiting
         message = clean(f"Something unforeseen happened ({type(error).__name__}: {error}).")
-        yield Failed(1, message, "Report this; what was measured so far is in the book.")
+        yield Failed(1, message, REPORT)

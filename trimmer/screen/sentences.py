@@ -112,12 +112,11 @@ def freshness(view: View, now: float) -> str:
     return f"read {said} ago"
 
 
-def status(view: View, now: float) -> str:
-    """Say where things stand: waiting for, freshness, source, book."""
+def status(view: View, now: float) -> tuple[str, str, str, str]:
+    """Say where things stand: waiting for, freshness, source and unit, book."""
     unit = view.opened.unit if view.opened is not None else ""
     place = f"{view.source}, {unit}" if unit else view.source
-    parts = [f"waits for {waiting_for(view)}", freshness(view, now), place, kept(view)]
-    return " │ ".join(part for part in parts if part)
+    return f"waits for {waiting_for(view)}", freshness(view, now), place, kept(view)
 
 
 def stale(view: View, now: float) -> bool:
@@ -129,6 +128,6 @@ def stale(view: View, now: float) -> bool:
 def kept(view: View) -> str:
     """Say what the book has."""
     if view.opened is None:
-        return "book not open yet"
+        return "book not yet open"
     count = len(view.steps)
-    return f"sheet {view.opened.sheet}: {count} in the book"
+    return f"sheet {view.opened.sheet}: {count} in book"

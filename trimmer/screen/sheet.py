@@ -10,6 +10,7 @@ from textual.containers import Horizontal, VerticalScroll
 from textual.screen import Screen
 from textual.widgets import Static
 
+from drivers.contract import clean
 from trimmer.screen.commands import key
 from trimmer.screen.help_words import SHEET
 from trimmer.screen.orders import order
@@ -42,7 +43,7 @@ class SheetScreen(Screen[None]):
         with VerticalScroll(id="sheet"):
             lines = failed_lines(self.view) if self.view.failed else sheet_lines(self.view)
             for kind, text in lines:
-                yield Static(text, classes=kind, markup=False)
+                yield Static(clean(text, 1000), classes=kind, markup=False)
         with Horizontal(id="panes"):
             yield ShapeWidget(id="shape")
             yield CourseWidget(id="course")

@@ -30,6 +30,8 @@ class Shown:
     """Lines of text by the place they stand in."""
     why: tuple[str, str]
     """Why, and what to expect."""
+    status: tuple[str, str, str, str]
+    """Where things stand."""
     keys: tuple[Key, ...]
     """Keys on show, the weightiest first."""
     stale: bool
@@ -64,9 +66,9 @@ def shown(
             "upper-rest": resting("upper", todo, hand),
             "lower-rest": resting("lower", todo, hand),
             "matters": ((BESIDE,) if beside else ()) + sentences.matters(view),
-            "status": (sentences.status(view, now),),
         },
         why=(sentences.why(view), sentences.expectation(view)),
+        status=sentences.status(view, now),
         keys=keys(view, hand, silent),
         stale=sentences.stale(view, now),
     )
@@ -89,17 +91,16 @@ def keys(view: View, hand: KeyedHand | None, silent: bool) -> tuple[Key, ...]:
     turning = view.advice is not None and not view.over
     if hand is not None:
         other = "lower" if hand.trim == "upper" else "upper"
-        coarse, fine = hand.degrees(fine=False), hand.degrees(fine=True)
         listed += [
             Key("↑↓", "other trim", f"screen.hold('{other}')"),
             Key("←", "", "screen.turn('counter-clockwise', False)"),
-            Key("→", f"turn {hand.trim} {coarse:.2g}°", "screen.turn('clockwise', False)"),
+            Key("→", f"turn {hand.trim}", "screen.turn('clockwise', False)"),
             Key(",", "", "screen.turn('counter-clockwise', True)"),
-            Key(".", f"{fine:.2g}°", "screen.turn('clockwise', True)"),
+            Key(".", "a touch", "screen.turn('clockwise', True)"),
         ]
     if turning and not view.follows:
         listed.append(Key("Enter", "turned", "screen.say('moved')"))
-    listed.append(Key("?", "help", "app.explain"))
+    listed += [Key("?", "help", "app.explain"), Key("q", "end", "app.leave")]
     if turning:
         listed += [
             Key("b", "take back", "screen.say('back')"),
@@ -107,7 +108,6 @@ def keys(view: View, hand: KeyedHand | None, silent: bool) -> tuple[Key, ...]:
             Key("o", "other way", "screen.say('skip')"),
         ]
     listed += [
-        Key("q", "end", "app.leave"),
         Key("m", "sound off" if not silent else "sound on", "screen.mute"),
         Key("t", "light/dark", "app.turn_light"),
         Key("g", "glyphs", "screen.glyphs"),

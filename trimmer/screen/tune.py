@@ -26,7 +26,14 @@ from trimmer.screen.shown import Shown, shown
 from trimmer.screen.view import View, take
 from trimmer.screen.widgets.keys import KeysWidget
 from trimmer.screen.widgets.panes import CourseWidget, PartsWidget, ShapeWidget
-from trimmer.screen.widgets.turn import BarWidget, LineWidget, SignWidget, WordsWidget, WordyWidget
+from trimmer.screen.widgets.turn import (
+    BarWidget,
+    LineWidget,
+    SignWidget,
+    StatusWidget,
+    WordsWidget,
+    WordyWidget,
+)
 
 FRAME_S = 1 / 20
 """The shortest time between two frames."""
@@ -88,10 +95,13 @@ class TuneScreen(Screen[None]):
         self._session = session
         self._mailbox = Mailbox()
         self.leaving = False
+        self._ended = False
+        self._told = False
         self._frame_at = 0.0
         self._frame_due = False
         self._beside_until = 0.0
         self._panes_due = 0.0
+        self._panes_follow = False
 
     def compose(self) -> ComposeResult:
         """Lay out: the turn, the bar, why, the panes, what matters, where things stand, keys."""
@@ -107,7 +117,7 @@ class TuneScreen(Screen[None]):
             yield PartsWidget(id="parts")
             yield CourseWidget(id="course")
         yield LineWidget(id="matters")
-        yield LineWidget(id="status")
+        yield StatusWidget(id="status")
         yield KeysWidget(id="keys")
 
     def on_mount(self) -> None:
@@ -125,6 +135,7 @@ class TuneScreen(Screen[None]):
         for report in reports(self._session, lambda: worker.is_cancelled):
             if self._mailbox.put(report):
                 self.post_message(self.Mail())
+        self._ended = True
         self.post_message(self.Mail())
 
     def on_tune_screen_mail(self) -> None:
@@ -138,13 +149,15 @@ class TuneScreen(Screen[None]):
 
     def take_mail(self) -> None:
         """Take all reports up and show what they make of the view."""
+        ended = self._ended  # before the mailbox is emptied: what was said last is then in it
         self._frame_due = False
         self._frame_at = now = monotonic()
         for report in self._mailbox.take():
             before, self.view = self.view, take(self.view, report, now)
             self.ring(before)
         self.display_view()
-        if self.view.over:
+        if (self.view.over or ended) and not self._told:
+            self._told = True
             self.post_message(self.Over(self.view, self.leaving))
 
     @property
@@ -171,9 +184,10 @@ class TuneScreen(Screen[None]):
 
     def _show_panes(self, now: float) -> None:
         """Show shape, parts and course; while the hand turns less often than the bar."""
-        if self.view.word is not None and now < self._panes_due:
+        following = self.view.word is not None
+        if following and self._panes_follow and now < self._panes_due:
             return
-        self._panes_due = now + PANES_S
+        self._panes_due, self._panes_follow = now + PANES_S, following
         shape = self.query_one(ShapeWidget)
         shape.trace, shape.dots = self.view.trace, self.dots
         self.query_one(PartsWidget).split = self.view.parts
@@ -187,7 +201,9 @@ class TuneScreen(Screen[None]):
         for trim in ("upper", "lower"):
             rest = self.query_one(f"#{trim}-rest")
             rest.display = bool(value.lines[f"{trim}-rest"])
-        self.query_one("#status").set_class(value.stale, "-stale")
+        status = self.query_one(StatusWidget)
+        status.parts = value.status
+        status.set_class(value.stale, "-stale")
 
     def _show_bar(self, value: Shown) -> None:
         bar = self.query_one(BarWidget)
@@ -221,7 +237,7 @@ class TuneScreen(Screen[None]):
     def action_glyphs(self) -> None:
         """Draw curves in braille or in block characters."""
         self.dots = Dots.BLOCK if self.dots is Dots.BRAILLE else Dots.BRAILLE
-        self._panes_due = 0.0
+        self._panes_follow = False
         self.display_view()
 
     def leave(self) -> None:

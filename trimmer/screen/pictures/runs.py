@@ -6,6 +6,8 @@ import textwrap
 from dataclasses import dataclass
 from typing import Literal
 
+from rich.cells import cell_len, set_cell_size
+
 Role = Literal["plain", "strong", "quiet", "cap", "go", "care", "halt", "trace", "ideal"]
 """What a run is for; a face decides on colour and weight, and the picture must do without."""
 
@@ -32,10 +34,10 @@ def row(text: str, width: int, role: Role = "plain") -> Row:
 
 
 def fitted(text: str, width: int) -> str:
-    """Cut a text to `width` cells with an ellipsis, or pad it."""
-    if len(text) > width:
-        return text[: max(0, width - 1)] + "…" if width > 0 else ""
-    return text.ljust(width)
+    """Cut a text to `width` cells with an ellipsis, or pad it; wide characters count for two."""
+    if cell_len(text) > width:
+        return set_cell_size(text, width - 1) + "…" if width > 0 else ""
+    return set_cell_size(text, width)
 
 
 def picture(lines: list[str], width: int, height: int, role: Role = "plain") -> Picture:
@@ -77,5 +79,5 @@ def wrapped(text: str, width: int, most: int) -> list[str]:
     """Break a text at its spaces into at most so many lines, cut where it is longer still."""
     lines = textwrap.wrap(text, width) if width > 0 else []
     if len(lines) > most:
-        lines = [*lines[: most - 1], fitted(" ".join(lines[most - 1 :]), width)]
-    return lines
+        lines = [*lines[: most - 1], " ".join(lines[most - 1 :])]
+    return [fitted(line, width).rstrip() for line in lines]

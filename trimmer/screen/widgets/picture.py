@@ -12,6 +12,9 @@ from textual.widget import Widget
 
 from trimmer.screen.pictures.runs import Picture, Role
 
+_CONTROL = dict.fromkeys((*range(32), *range(127, 160)), "�")
+"""Nothing that a terminal would obey leaves a picture, should a text have come in uncleaned."""
+
 
 class PictureWidget(Widget):
     """Shows what `picture` draws; drawn again when a reactive or the size changes."""
@@ -45,5 +48,5 @@ class PictureWidget(Widget):
             style = self.get_component_rich_style(f"role--{run.role}")
             if run.action:
                 style += Style(meta={"@click": run.action})
-            segments.append(Segment(run.text, style))
+            segments.append(Segment(run.text.translate(_CONTROL), style))
         return Strip(segments).adjust_cell_length(size[0], self.rich_style)

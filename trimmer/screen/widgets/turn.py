@@ -72,6 +72,20 @@ class LineWidget(PictureWidget):
         return tuple(row(line, width, self.role) for line in shown)
 
 
+class StatusWidget(PictureWidget):
+    """Where things stand, in one row; the name of the place gives way where it is too long."""
+
+    parts: reactive[tuple[str, str, str, str]] = reactive(("", "", "", ""))
+
+    def picture(self, width: int, height: int) -> Picture:
+        """Join the parts."""
+        waits, fresh, place, book = self.parts
+        room = width - len(waits) - len(fresh) - len(book) - 9
+        shown = place if len(place) <= room else fitted(place, max(4, room))
+        line = " │ ".join((waits, fresh, shown, book))
+        return tuple(row(line, width) for _ in range(height))
+
+
 class WordyWidget(PictureWidget):
     """Sentences over as many rows as they need, up to `MOST`."""
 
