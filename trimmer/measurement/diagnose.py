@@ -14,12 +14,14 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import ArrayLike
+from numpy.typing import ArrayLike, NDArray
 
 from trimmer.measurement.combine import cut_to
 from trimmer.measurement.kernels import Array
 from trimmer.measurement.reading import Reading
 from trimmer.measurement.templates import SLOWEST, bandwidth, slewing, time_symmetry
+
+Index = NDArray[np.intp]
 
 _SURE = 3.0
 """Standard uncertainties above which a cause is named."""
@@ -171,7 +173,7 @@ def _fast(readings: Sequence[Reading]) -> list[_Share]:
     return _by_shape(last)
 
 
-def _odd(orders: int) -> Array:
+def _odd(orders: int) -> Index:
     """Indices of the crest and skew parts of odd orders."""
     k = np.repeat(np.arange(2, orders + 1), 2)
     return np.flatnonzero(k % 2 == 1)
@@ -230,7 +232,7 @@ def _by_speed(readings: Sequence[Reading], speeds: Sequence[float]) -> list[_Sha
     return found
 
 
-def _weights(reading: Reading, rows: Array) -> Array:
+def _weights(reading: Reading, rows: Index) -> Array:
     """Weights of the odd parts: noise, and a tenth of what is seen for the closed forms' error."""
     floor = (_MODEL * np.abs(reading.parts[rows]).max()) ** 2
     weights: Array = 1.0 / (np.diag(reading.random_covariance)[rows] + 0.04 * floor + 1e-30)
@@ -239,7 +241,7 @@ def _weights(reading: Reading, rows: Array) -> Array:
 
 def _line(
     readings: Sequence[Reading],
-    rows: Array,
+    rows: Index,
     weights: Sequence[Array],
     marks: Sequence[Array] | None,
     slow: Array,

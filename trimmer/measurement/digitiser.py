@@ -15,10 +15,12 @@ import numpy as np
 
 from trimmer.measurement.kernels import Array
 from trimmer.measurement.projection import Record
-from trimmer.measurement.reading import Digitiser, Flag
+from trimmer.measurement.reading import Digitiser, Flag, MeasurementError
 
 FEW_CODES = 64
 """A wave that spans fewer codes is flagged."""
+CLIPPED_SHARE = 0.001
+"""More samples than this share at a rail, and the record is refused."""
 _SAMPLE = 2048
 """Samples looked at to find the step of the codes where it is not stated."""
 _PILED = 4.0
@@ -166,6 +168,53 @@ def systematic_variances(
     rounding = code**3 / (math.pi**4 * amplitude**3) * math.exp(-4.0 * math.pi**2 * dither)
     variances[0::2] = bend + rounding
     return variances
+
+
+def check_full_scale(digitised: Digitised) -> None:
+    """Refuse a record that piles up at both ends of a whole power of two of codes: its rails.
+
+    Raises
+    ------
+    MeasurementError
+        ``clipped``.
+    """
+    if not digitised.code or not (digitised.piled_low and digitised.piled_high):
+        return
+    bits = math.log2(digitised.codes)
+    if bits < 5.5 or abs(digitised.codes - 2.0 ** round(bits)) > 0.25:
+        return
+    raise clipped(
+        digitised.piled_low + digitised.piled_high, f"the {round(digitised.codes)} codes' ends"
+    )
+
+
+def clipped(share: float, where: str) -> MeasurementError:
+    """Refuse a record of which so large a share is at a rail."""
+    return MeasurementError(
+        "clipped",
+        f"{100.0 * share:.2g} % of the samples are at {where}.",
+        "Widen the range or lower the input until both crests are inside the screen.",
+    )
+
+
+def check_rails(values: Array, digitiser: Digitiser) -> None:
+    """Refuse a record with more than 0.1 % of its samples at a rail of the digitiser.
+
+    Raises
+    ------
+    MeasurementError
+        ``clipped``.
+    """
+    code = digitiser.code
+    margin = 0.5 * code if code is not None and 0.0 < code < math.inf else 0.0
+    at_rail = 0
+    if digitiser.high_rail is not None:
+        at_rail += int(np.count_nonzero(values >= digitiser.high_rail - margin))
+    if digitiser.low_rail is not None:
+        at_rail += int(np.count_nonzero(values <= digitiser.low_rail + margin))
+    share = max(at_rail, int(digitiser.clipped)) / values.size
+    if share > CLIPPED_SHARE:
+        raise clipped(share, "the digitiser's rail")
 
 
 def digitiser_flags(digitised: Digitised, chain: float, thd: float) -> list[Flag]:

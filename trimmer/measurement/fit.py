@@ -98,7 +98,7 @@ class Fit:
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class _Solved:
+class Solution:
     """The amplitudes at one frequency, and the Gauss-Newton step for the frequency."""
 
     normal: Normal
@@ -110,9 +110,9 @@ class _Solved:
     step: float
 
 
-def _solve(
+def solve(
     projections: Projections, w: float, orders: int | None, near: Array | None = None
-) -> _Solved:
+) -> Solution:
     """Solve for all amplitudes at the fundamental `w`, and for the next step of `w`.
 
     `orders` fits only the offset, that many orders and the nuisance lines; None takes all. `near` is
@@ -134,7 +134,7 @@ def _solve(
     stiffness = float(itself + np.vdot(with_basis, tilt))
     score = float(with_data - np.vdot(amplitudes, with_basis))
     step = score / stiffness if stiffness > 0.0 else 0.0
-    return _Solved(
+    return Solution(
         normal=normal,
         inverse=inverse,
         amplitudes=amplitudes,
@@ -176,7 +176,7 @@ def _refine(
     orders: int | None,
     tolerance: float,
     near: Array | None = None,
-) -> tuple[float, bool, _Solved]:
+) -> tuple[float, bool, Solution]:
     """Gauss-Newton for the frequency on given projections.
 
     A step is bounded by half a resolution cell, and halved while it makes the fit worse.
@@ -188,19 +188,19 @@ def _refine(
     """
     cell = math.pi / projections.samples
     small = tolerance * 2.0 / (projections.samples * (orders or projections.lines.orders))
-    solved = _solve(projections, w, orders, near)
+    solved = solve(projections, w, orders, near)
     close = 0.02 * cell / (orders or projections.lines.orders)
     for _ in range(_STEPS):
         step = max(-cell, min(cell, solved.step))
         if abs(step) <= small:
             return w + step, True, solved
         near = solved.inverse if abs(step) < close else None
-        tried = _solve(projections, w + step, orders, near)
+        tried = solve(projections, w + step, orders, near)
         for _ in range(6):
             if tried.explained >= solved.explained * (1.0 - 1e-13):
                 break
             step *= 0.5
-            tried = _solve(projections, w + step, orders)
+            tried = solve(projections, w + step, orders)
         w, solved = w + step, tried
         if not 0.0 < w < math.pi:
             break
@@ -260,7 +260,7 @@ def fit(record: Record, lines: Lines, w: float) -> Fit:
     return _finished(projections, solved, w, converged)
 
 
-def _finished(projections: Projections, solved: _Solved, w: float, converged: bool) -> Fit:
+def _finished(projections: Projections, solved: Solution, w: float, converged: bool) -> Fit:
     """Take stock of a fit; the amplitudes follow the last, tiny step of the frequency."""
     step = solved.step if converged else 0.0
     grain = np.finfo(np.float64).eps * projections.power

@@ -26,6 +26,8 @@ _APART = 0.7
 """Lines closer than this many cycles of the record cannot be told apart."""
 _TOLD = 2e-4
 """Ratio to the fundamental from which hum is worth a flag."""
+_WANDER_TOLD = 2e-3
+"""Ratio to the fundamental from which a wandering offset is worth a flag."""
 _UNSTEADY_HZ = 0.5
 """Mains may be off its nominal frequency by this much."""
 
@@ -49,22 +51,25 @@ def candidates(
     cell = 2.0 * math.pi / fit.samples
     slow = slow_line(fit.samples)
     wanted = [] if fit.lines.fixed.size else [Foreign("slow", 0.0, slow)]
-    for mains in (mains_hz,) if mains_hz else MAINS_HZ:
+    stated = mains_hz is not None and math.isfinite(mains_hz) and mains_hz > 0.0
+    for mains in (mains_hz,) if mains_hz and stated else MAINS_HZ:
         w = 2.0 * math.pi * mains * interval_s
         if w < slow or w > 0.3 * math.pi:
             continue
         if w * fit.samples > 2.0 * math.pi * mains / _UNSTEADY_HZ * 0.2:
             w = nearest_line(record, w, w * _UNSTEADY_HZ / mains)
-        wanted += [Foreign("mains", mains, multiple * w) for multiple in (1, 2, 3)]
-        wanted += [Foreign("sideband", mains, fit.w + shift * w) for shift in (-1, 1, -2, 2)]
+        whole = w >= cell
+        wanted += [Foreign("mains", mains, m * w) for m in ((1, 2, 3) if whole else (1,))]
+        if whole:
+            wanted += [Foreign("sideband", mains, fit.w + shift * w) for shift in (-1, 1, -2, 2)]
     own = fit.w * np.arange(fit.lines.orders + 2)
     found: list[Foreign] = []
     for line in wanted:
         near_own = float(np.abs(own - line.w)[1:].min()) < _APART * cell
         rivals = [other.w for other in found if other.mains_hz in (0.0, line.mains_hz)]
         near_other = any(abs(w - line.w) < 0.5 * _APART * cell for w in rivals)
-        too_slow = line.w < _APART * cell and line.name == "sideband"
-        if not 0.0 < line.w < 0.95 * math.pi or near_own or near_other or too_slow:
+        slow = line.w < _APART * cell and line.name == "sideband"
+        if not 0.0 < line.w < 0.95 * math.pi or near_own or near_other or slow:
             continue
         found.append(line)
     return found
@@ -108,28 +113,41 @@ def _scores(record: Record, fit: Fit, w: Array) -> Array:
 
 
 def hum_report(fit: Fit, lines: Sequence[Foreign]) -> tuple[dict[str, float], list[Flag]]:
-    """Tell what the fitted foreign lines amount to, as ratios to the fundamental."""
+    """Tell what the fitted foreign lines amount to, as ratios to the fundamental.
+
+    Mains of which the record holds less than a period cannot be told from a wandering offset, and
+    is told as that.
+    """
     sizes = np.hypot(fit.cosines, fit.sines)
     ratios = sizes[fit.lines.orders + 1 :] / sizes[1]
-    extra: dict[str, float] = {}
+    held: dict[str, list[float]] = {"mains": [], "sideband": [], "slow": []}
+    for ratio, line in zip(ratios, lines, strict=True):
+        whole = line.w * fit.samples >= 2.0 * math.pi
+        held["slow" if line.name == "mains" and not whole else line.name].append(float(ratio))
+    extra = {f"{name}_ratio": math.hypot(*found) for name, found in held.items() if found}
     flags = []
-    for name in ("mains", "sideband", "slow"):
-        held = [float(r) for r, line in zip(ratios, lines, strict=True) if line.name == name]
-        if held:
-            extra[f"{name}_ratio"] = math.sqrt(sum(r * r for r in held))
     hum = math.hypot(extra.get("mains_ratio", 0.0), extra.get("sideband_ratio", 0.0))
     if hum > 0.0:
-        mains = max(line.mains_hz for line in lines)
-        extra["mains_hz"] = mains
+        extra["mains_hz"] = max(line.mains_hz for line in lines)
         extra["hum_ratio"] = hum
-        if hum > _TOLD:
-            where = "mains frequency" if "mains_ratio" in extra else "sidebands of the fundamental"
-            flags.append(
-                Flag(
-                    "hum",
-                    f"Hum of {100 * hum:.2g} % of the fundamental ({mains:g} Hz and multiples, at the "
-                    f"{where}).",
-                    "Shorten the probe's ground, keep mains cables away, and check the unit's supply.",
-                )
+    if hum > _TOLD:
+        where = "at the mains frequency" if held["mains"] else "beside the fundamental"
+        flags.append(
+            Flag(
+                "hum",
+                f"Hum of {100 * hum:.2g} % of the fundamental ({extra['mains_hz']:g} Hz and "
+                f"multiples), {where}.",
+                "Shorten the probe's ground, keep mains cables away, and check the unit's supply.",
             )
+        )
+    wander = extra.get("slow_ratio", 0.0)
+    if wander > _WANDER_TOLD and not held["mains"]:
+        flags.append(
+            Flag(
+                "wandering",
+                f"The offset wanders by {100 * wander:.2g} % of the fundamental within the capture: "
+                "hum seen for less than its period, or an offset that settles.",
+                "Let the unit and the input settle, and look for hum with a slower time base.",
+            )
+        )
     return extra, flags

@@ -1,4 +1,4 @@
-"""What is asked of a record before it is fitted: numbers, an even time axis, no clipping."""
+"""What is asked of a record before it is fitted: numbers, an even time axis, not the last one again."""
 
 from __future__ import annotations
 
@@ -9,14 +9,12 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from trimmer.measurement.projection import Record
-from trimmer.measurement.reading import Digitiser, Flag, MeasurementError
+from trimmer.measurement.reading import Flag, MeasurementError
 
 _LARGEST = 1e150
 _SMALLEST = 1e-150
 _SHORTEST_S, _LONGEST_S = 1e-15, 1e6
 _FEWEST = 16
-CLIPPED_SHARE = 0.001
-"""More samples than this share at a rail, and the record is refused."""
 UNEVEN_SHARE = 0.1
 """An instant may be off the even grid by this share of a step."""
 
@@ -147,31 +145,6 @@ def _uneven(seen: str) -> MeasurementError:
         f"The time axis is uneven: {seen}",
         "Save the capture with a constant sample rate and without gaps, or give `--interval`.",
     )
-
-
-def check_clipping(values: NDArray[np.float64], digitiser: Digitiser) -> None:
-    """Refuse a record with more than 0.1 % of its samples at a rail of the digitiser.
-
-    Raises
-    ------
-    MeasurementError
-        ``clipped``.
-    """
-    code = digitiser.code
-    margin = 0.5 * code if code is not None and 0.0 < code < math.inf else 0.0
-    at_rail = 0
-    if digitiser.high_rail is not None:
-        at_rail += int(np.count_nonzero(values >= digitiser.high_rail - margin))
-    if digitiser.low_rail is not None:
-        at_rail += int(np.count_nonzero(values <= digitiser.low_rail + margin))
-    clipped = max(at_rail, int(digitiser.clipped))
-    if clipped > CLIPPED_SHARE * values.size:
-        raise MeasurementError(
-            "clipped",
-            f"{clipped} of {values.size} samples ({100.0 * clipped / values.size:.2g} %) are at the "
-            "digitiser's rail.",
-            "Widen the range or lower the input until both crests are inside the screen.",
-        )
 
 
 def digest(samples: ArrayLike) -> bytes:

@@ -8,6 +8,7 @@ from functools import lru_cache
 import numpy as np
 
 from trimmer.measurement.kernels import Array
+from trimmer.measurement.model import Complex
 
 SLOWEST = 2.0 / math.sqrt(4.0 + math.pi**2)
 """Slew rate, over the largest slope of the sine, below which nothing but a triangle is left."""
@@ -71,11 +72,11 @@ def _slewing(ratio: float, orders: int) -> Array:
     leaves = math.asin(ratio)
     height = math.cos(leaves)
     back = _meets(ratio, leaves, height)
-    k = np.arange(1, orders + 1)
+    k: Array = np.arange(1.0, orders + 1.0)
     # half a period from `leaves` on: a straight line, then the sine; the other half is its negative
     line = _line_integral(k, leaves, back, height, ratio)
     sine = _sine_integral(k, back, leaves + math.pi)
-    x = np.where(k % 2 == 1, line + sine, 0.0)
+    x = np.where(k % 2.0 == 1.0, line + sine, 0.0)
     z = x * np.exp(-1j * k * np.angle(x[0])) / abs(x[0])
     parts = np.empty(2 * (orders - 1))
     parts[0::2], parts[1::2] = z.real[1:], -z.imag[1:]
@@ -93,18 +94,18 @@ def _meets(ratio: float, leaves: float, height: float) -> float:
     return 0.5 * (low + high)
 
 
-def _line_integral(k: Array, start: float, stop: float, height: float, slope: float) -> Array:
+def _line_integral(k: Array, start: float, stop: float, height: float, slope: float) -> Complex:
     """``integral (height - slope (t - start)) exp(-j k t) dt``."""
 
-    def antiderivative(t: float) -> Array:
+    def antiderivative(t: float) -> Complex:
         value = height - slope * (t - start)
-        result: Array = np.exp(-1j * k * t) * (1j * value / k - slope / k**2)
+        result: Complex = np.exp(-1j * k * t) * (1j * value / k - slope / k**2)
         return result
 
     return antiderivative(stop) - antiderivative(start)
 
 
-def _sine_integral(k: Array, start: float, stop: float) -> Array:
+def _sine_integral(k: Array, start: float, stop: float) -> Complex:
     """``integral cos(t) exp(-j k t) dt``."""
     total = np.zeros(k.size, dtype=np.complex128)
     for shift in (1.0, -1.0):
