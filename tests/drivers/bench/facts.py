@@ -71,7 +71,9 @@ FACTS = (
     Fact("c3 at 18 kHz, 1e-4", "up to 292", (50.0, 292.0), (20.0, 330.0)),
     Fact("THD at 18 kHz, %", "1.9 to 3.9", (1.9, 3.9), (1.6, 4.3)),
     Fact("best at 18 kHz less best at 1 kHz, %", "no trim cures it", (1.0, 4.0), (0.8, 4.5)),
-    Fact("blind minimiser at 18 kHz moves the trims by, %", "to the stops", (12.0, 60.0), (5.0, 70.0)),
+    Fact(
+        "blind minimiser at 18 kHz moves the trims by, %", "to the stops", (12.0, 60.0), (5.0, 70.0)
+    ),
     # Closed form: s_2k = (4 / pi) delta 8k / (4 k^2 - 1)^2, Fourier series of a leaning sine.
     Fact("s2 per duty error", "1.132", (1.125, 1.135), (1.12, 1.14)),
     # That holds for a pure sine; here c3 and c5 of some 15e-4 lean as well and reach into s4.

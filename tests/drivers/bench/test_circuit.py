@@ -12,7 +12,13 @@ import pytest
 
 from drivers.bench.ladder import END_OHM, TAPS, Ladder
 from drivers.bench.parts import WARM_C, Parts, draw
-from drivers.bench.unit import BOLTZMANN_OVER_CHARGE, ZERO_CELSIUS_K, breakpoints, crest_frame, period
+from drivers.bench.unit import (
+    BOLTZMANN_OVER_CHARGE,
+    ZERO_CELSIUS_K,
+    breakpoints,
+    crest_frame,
+    period,
+)
 
 NGSPICE = shutil.which("ngspice")
 pytestmark = [
@@ -105,12 +111,8 @@ def test_the_transfer_curve_is_the_circuits(tmp_path: Path) -> None:
 def test_the_taps_are_the_circuits(tmp_path: Path) -> None:
     parts = draw(22)
     taps = " ".join(f"v({side}{k})" for side in "ud" for k in range(1, TAPS + 1))
-    table = run(
-        netlist(parts, "Vx x 0 0", f"dc Vx 0 0.1 0.1\nwrdata out {taps}", 1e-15), tmp_path
-    )
-    np.testing.assert_allclose(
-        breakpoints(parts, WIPERS, WARM_C).taps_v, table[0, 1::2], atol=1e-9
-    )
+    table = run(netlist(parts, "Vx x 0 0", f"dc Vx 0 0.1 0.1\nwrdata out {taps}", 1e-15), tmp_path)
+    np.testing.assert_allclose(breakpoints(parts, WIPERS, WARM_C).taps_v, table[0, 1::2], atol=1e-9)
 
 
 def test_the_shaped_wave_and_its_lean_are_the_circuits(tmp_path: Path) -> None:
@@ -120,9 +122,7 @@ def test_the_shaped_wave_and_its_lean_are_the_circuits(tmp_path: Path) -> None:
     low, high = parts.offset_v - parts.triangle_v, parts.offset_v + parts.triangle_v
     points = [(0.0, low), (rise, high), (whole, low), (whole + rise, high), (2 * whole, low)]
     corners = " ".join(f"{t!r} {v!r}" for t, v in points)
-    analysis = (
-        f"tran {whole / 4096!r} {2 * whole!r} {whole!r} {whole / 4096!r}\nwrdata out v(y)"
-    )
+    analysis = f"tran {whole / 4096!r} {2 * whole!r} {whole!r} {whole / 4096!r}\nwrdata out v(y)"
     table = run(netlist(parts, f"Vx x 0 PWL({corners})", analysis, parts.node_f), tmp_path)
     times = whole * (1.0 + np.arange(4096) / 4096)
     circuit = crest_frame(np.interp(times, table[:, 0], table[:, 1]))

@@ -15,7 +15,9 @@ SETTINGS = Settings(full_scale_v=256.0, offset_v=0.5, interval_s=1e-6, points=10
 """One code is a volt, and zero volts lie half way between two codes."""
 
 
-def wave(amplitude: float, frequency_hz: float, *, noise_v: float = 0.0, hum_v: float = 0.0) -> Wave:
+def wave(
+    amplitude: float, frequency_hz: float, *, noise_v: float = 0.0, hum_v: float = 0.0
+) -> Wave:
     return Wave(amplitude * np.sin(PHASE), frequency_hz, 50.0, hum_v, noise_v)
 
 

@@ -44,9 +44,13 @@ def test_the_mirrored_setting_gives_the_mirrored_taps() -> None:
     np.testing.assert_allclose(lower, -other_upper, rtol=1e-12)
 
 
-def test_a_trim_moves_all_taps_of_its_half_the_outer_ones_most_and_the_other_half_a_little() -> None:
+def test_a_trim_moves_all_taps_of_its_half_the_outer_ones_most_and_the_other_half_a_little() -> (
+    None
+):
     def taps(at: float) -> np.ndarray:
-        halves = tap_voltages(NOMINAL.upper, NOMINAL.lower, NOMINAL.shared_ohm, (10, -10), (at, 0.5))
+        halves = tap_voltages(
+            NOMINAL.upper, NOMINAL.lower, NOMINAL.shared_ohm, (10, -10), (at, 0.5)
+        )
         return np.concatenate(halves)
 
     moved = taps(0.51) - taps(0.50)

@@ -30,9 +30,7 @@ def test_a_branch_is_a_junction_behind_a_resistor() -> None:
     for y in (0.5, 1.0, 1.1, 1.3, 2.0):
 
         def surplus(current: float, y: float = y) -> float:
-            return float(
-                saturation * np.exp((y - 1.0 - 1e3 * current) / ONE.thermal_v) - current
-            )
+            return float(saturation * np.exp((y - 1.0 - 1e3 * current) / ONE.thermal_v) - current)
 
         current = brentq(surplus, 0.0, 0.01, xtol=1e-18)
         x, _ = ONE.input_v(np.array([y]))
@@ -123,9 +121,7 @@ def _sharp_thd(values: np.ndarray) -> tuple[float, np.ndarray]:
     x, _ = shaper.input_v(y)
     wave = np.interp(triangle, x, y)
     spectrum = np.fft.rfft(wave) / wave.size
-    rest = wave - 2.0 * np.real(
-        spectrum[1] * np.exp(2j * np.pi * np.arange(wave.size) / wave.size)
-    )
+    rest = wave - 2.0 * np.real(spectrum[1] * np.exp(2j * np.pi * np.arange(wave.size) / wave.size))
     fundamental = 2.0 * abs(spectrum[1])
     return float(np.sqrt(2.0 * np.mean(rest**2)) / fundamental), rest / fundamental
 
