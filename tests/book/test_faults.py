@@ -236,6 +236,18 @@ def test_an_entry_that_cannot_be_read_is_named(home: Path) -> None:
         book.sheet(sheet)
 
 
+@pytest.mark.parametrize("column", ["reading", "notes", "taken_at"])
+def test_an_entry_whose_packing_is_damaged_is_no_traceback(home: Path, column: str) -> None:
+    with open_book() as book:
+        sheet = book.begin_sheet(s.start())
+        book.add_turn(sheet, s.entry(0))
+    with closing(sqlite3.connect(home / "book.sqlite")) as raw, raw:
+        raw.execute("DROP TRIGGER turn_no_update")
+        raw.execute(f"UPDATE turn SET {column} = x'7b7b7b7b'")
+    with open_book() as book, refused("cannot be read"):
+        book.sheet(sheet)
+
+
 def test_a_book_another_program_keeps_locked_is_waited_for_and_then_reported(
     home: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:

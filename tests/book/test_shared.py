@@ -17,10 +17,14 @@ from tests.book import samples as s
 from tests.book.postgres import Cluster, free_port
 from tests.book.proxy import Proxy
 from tests.book.test_book import one_of_everything, same_entry, written
-from trimmer.book import SheetFilter, export_book, import_book, open_book
+from trimmer.book import RecordStart, SheetFilter, export_book, import_book, open_book
+from trimmer.book import rows as r
 from trimmer.book import tables as t
 from trimmer.book.book import Book
+from trimmer.book.engines import server_engine
+from trimmer.book.ids import Ids
 from trimmer.book.shared import SharedBook
+from trimmer.book.store import Row, Store, insert
 from trimmer.errors import BookError
 
 
@@ -258,10 +262,35 @@ def test_a_sheet_of_another_bench_can_be_corrected_and_gone_on_with(url: str) ->
     assert counts(url)["record_point"] == 1
 
 
-def s_record(sheet: str):  # type: ignore[no-untyped-def]
-    from trimmer.book import RecordStart
-
+def s_record(sheet: str) -> RecordStart:
     return RecordStart("warmup", s.START, "Bench 7", sheet=sheet)
+
+
+def test_two_benches_at_one_sheet_leave_its_line_as_both_have_it(url: str) -> None:
+    with opened(url) as book:
+        sheet = book.begin_sheet(s.start())
+        book.settle(10)
+    store = Store(server_engine(url), "it")
+    ids = Ids()
+    turn = r.turn_row(ids.new(), sheet, s.entry(1))
+    values = {
+        "id": ids.new(),
+        "sheet_id": sheet,
+        "at": s.START,
+        "field": "unit",
+        "value": "Bench 9",
+    }
+    correction = Row(t.correction, {**values, "reason": ""})
+    second = threading.Thread(target=store.add, args=([turn],))
+    with store.writing() as connection:
+        insert(connection, [correction])
+        second.start()
+        time.sleep(0.3)  # the second bench's transaction is under way before the first one's ends
+    second.join()
+    store.close()
+    with opened(url) as book:
+        (row,) = book.sheets()
+    assert (row.unit, row.turns) == ("Bench 9", 1)
 
 
 def test_a_commit_whose_word_was_lost_is_not_made_twice(server: Cluster, url: str) -> None:

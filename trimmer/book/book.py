@@ -224,7 +224,9 @@ class Book:
         self, which: SheetFilter = _EVERY, *, limit: int | None = None, offset: int = 0
     ) -> list[SheetRow]:
         """List sheets, newest first."""
-        return [r.listed(row) for row in self._rows(q.sheets(which, limit, offset))]
+        query = q.sheets(which, limit, offset)
+        cards = self._ask(lambda connection: connection.execute(query).all())
+        return [r.listed(card) for card in cards]
 
     def count(self, which: SheetFilter = _EVERY) -> int:
         """Count sheets."""
@@ -269,7 +271,7 @@ class Book:
         def rows(query: sa.Select[Any]) -> Sequence[sa.RowMapping]:
             return connection.execute(query).mappings().all()
 
-        card = rows(sa.select(t.card).where(t.card.c.sheet_id == sheet))[0]
+        card = connection.execute(sa.select(t.card).where(t.card.c.sheet_id == sheet)).one()
         start = rows(sa.select(t.sheet).where(t.sheet.c.id == sheet))[0]
         turns = rows(q.of_sheet(t.turn, sheet))
         ends = rows(q.latest_of_sheet(t.sheet_end, sheet))

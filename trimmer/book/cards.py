@@ -64,6 +64,11 @@ def _cards() -> sa.Select[Any]:
 
 def refresh(connection: sa.Connection, which: sa.ColumnElement[bool]) -> None:
     """Renew the cards of the sheets that `which` selects."""
+    if connection.dialect.name == "postgresql":
+        # Two benches at one sheet: the second must see the first one's rows, so it waits for them
+        # here. SQLite has one writer at a time.
+        locked = sa.select(t.sheet.c.id).where(which).order_by(t.sheet.c.id)
+        connection.execute(locked.with_for_update(key_share=True))
     insertion = sqlite.insert if connection.dialect.name == "sqlite" else postgresql.insert
     names = [column.name for column in t.card.columns]
     statement = insertion(t.card).from_select(names, _cards().where(which))

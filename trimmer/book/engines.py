@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import logging
 import os
 import sqlite3
 import stat
@@ -153,6 +154,8 @@ def server_engine(url: str) -> sa.Engine:
             "A book on a server needs the PostgreSQL driver, which is not installed.",
             "Install it with `pip install 'trimmer[postgres]'`.",
         )
+    # The driver's own warnings of a lost connection would land among the lines on the terminal.
+    logging.getLogger("psycopg").addHandler(logging.NullHandler())
     options: dict[str, Any] = {
         "connect_timeout": _CONNECT_S,
         "keepalives_idle": 5,

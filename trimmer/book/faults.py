@@ -54,6 +54,10 @@ _SQLITE: tuple[tuple[str, str, str], ...] = (
 )
 
 
+class BookBehind(BookError):
+    """The book is of an older version and was opened only to look."""
+
+
 def sqlite_name(error: BaseException | None) -> str:
     """Give SQLite's own name of an error (``SQLITE_FULL``), or an empty text."""
     origin = getattr(error, "orig", error)

@@ -44,8 +44,13 @@ def open_book(
 
 def _open_file(place: Place, writes: bool) -> Book:
     from trimmer.book.book import Book
+    from trimmer.book.faults import BookBehind
 
-    return Book(open_store(place.path, place.shown, writes=_settled(place, writes)))
+    writes = _settled(place, writes)
+    try:
+        return Book(open_store(place.path, place.shown, writes=writes))
+    except BookBehind:
+        return Book(open_store(place.path, place.shown, writes=True))
 
 
 def _settled(place: Place, writes: bool) -> bool:

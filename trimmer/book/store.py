@@ -15,7 +15,7 @@ from trimmer.book import tables as t
 from trimmer.book.cards import refresh
 from trimmer.book.columns import dumps
 from trimmer.book.entries import Merged
-from trimmer.book.faults import guarded
+from trimmer.book.faults import BookBehind, guarded, legible
 from trimmer.book.migrate import applied, check, migrate
 from trimmer.book.waveforms import unpack_samples
 from trimmer.errors import BookError
@@ -53,20 +53,30 @@ class Store:
         ------
         BookError
             The database cannot be opened, is newer than this program, or is not a book.
+        BookBehind
+            It is older than this program, and was only to be checked.
         """
         with guarded(self.shown):
             if writes:
                 migrate(self.engine, self.shown)
                 with self.writing():
                     pass  # takes the write lock once: a book that may only be read says so now
-            else:
-                with self.engine.connect() as connection:
-                    check(applied(connection), self.shown)
+                return
+            with self.engine.connect() as connection:
+                if check(applied(connection), self.shown):
+                    raise BookBehind(
+                        f"The book {self.shown} is of an older version.",
+                        "Open it once where it may be written, so that it is brought up to date.",
+                    )
 
     @contextmanager
     def reading(self) -> Iterator[sa.Connection]:
         """Give a connection that sees one moment of the book; complaints become `BookError`."""
-        with guarded(self.shown), self.engine.connect() as connection:
+        with (
+            guarded(self.shown),
+            legible(f"An entry of the book {self.shown}"),
+            self.engine.connect() as connection,
+        ):
             if self.engine.dialect.name == "postgresql":
                 # SQLite's transactions see one moment by themselves.
                 connection.execution_options(isolation_level="REPEATABLE READ")
