@@ -53,7 +53,7 @@ class Digitised:
 def look_at(record: Record, digitiser: Digitiser) -> Digitised:
     """See how a record was digitised."""
     values = record.samples
-    low, high = float(values.min()), float(values.max())
+    low, high = record.low, record.high
     code = _stated_code(digitiser)
     if code is None or not 0.0 < code <= 0.5 * (high - low):  # a code larger than the wave is none
         code = _seen_code(values)

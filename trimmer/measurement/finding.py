@@ -48,25 +48,25 @@ def find(record: Record, interval_s: float, orders: int, hint_hz: float | None) 
             found = _fit_from(record, w, orders)
             if found and _is_plausible(found):
                 return found
-    w = coarse_fundamental(record)
+    w, unsure = coarse_fundamental(record)
     if w <= 0.0:
         raise no_signal("no line stands out of the spectrum.")
     check_reach(record, w, slack=0.2)
-    found = _fit_from(record, w, orders)
+    found = _fit_from(record, w, orders, unsure)
     if found is None:
         raise no_signal("what stands out does not repeat.")
     check_reach(record, found.w, slack=1e-3)
     return found
 
 
-def _fit_from(record: Record, w: float, orders: int) -> Fit | None:
+def _fit_from(record: Record, w: float, orders: int, unsure: float = 0.0) -> Fit | None:
     """Fit all orders from a coarse frequency; None where that leads nowhere."""
     most = kept_orders(max(MOST_ORDERS, orders), w)
     # a few samples: leave something over to tell the noise by
     most = min(most, (record.count - 4) // 3)
     if most < FEWEST_ORDERS:
         return None
-    near, wander = approach(record, most, w)
+    near, wander = approach(record, most, w, unsure)
     if near <= 0.0:
         return None
     most = min(most, max(kept_orders(max(MOST_ORDERS, orders), near), FEWEST_ORDERS))

@@ -16,6 +16,7 @@ import numpy as np
 from trimmer.measurement.kernels import Array
 from trimmer.measurement.model import Complex, Lines, Normal, normal_equations
 from trimmer.measurement.projection import Projections, Record, project
+from trimmer.measurement.search import beat
 
 _BLUR = 3e-6
 """Turn of the highest order within half a block (rad) below which moments carry the sums exactly:
@@ -207,11 +208,22 @@ def _refine(
     return w, False, solved
 
 
-def approach(record: Record, orders: int, w: float) -> tuple[float, float]:
+def approach(record: Record, orders: int, w: float, unsure: float = 0.0) -> tuple[float, float]:
     """Bring a coarse frequency to within the reach of a fit with all orders.
 
     Few orders are fitted first, more are taken in as the frequency gets better. A slow line stands
     for a wandering offset, which would pull at few periods.
+
+    Parameters
+    ----------
+    record
+        The samples.
+    orders
+        Orders to be fitted in the end.
+    w
+        Coarse frequency, radians per sample.
+    unsure
+        How far it may be off, where that is more than a few hundredths of ``2 pi / N``; else 0.
 
     Returns
     -------
@@ -221,6 +233,8 @@ def approach(record: Record, orders: int, w: float) -> tuple[float, float]:
     stages = [stage for stage in _STAGES if stage < orders] or [orders]
     slow = np.array([slow_line(record.count)])
     projections = project(record, Lines(stages[-1], slow), w)
+    if unsure > 0.0:
+        w = beat(projections, 1, w, unsure)
     for stage in stages:
         w, _, solved = _refine(projections, w, stage, _ROUGH)
         if not 0.0 < w < math.pi / stages[-1]:

@@ -17,7 +17,7 @@ from trimmer.measurement.kernels import Array
 from trimmer.measurement.model import Lines, cross_products
 from trimmer.measurement.projection import Record, project
 from trimmer.measurement.reading import Flag
-from trimmer.measurement.search import nearest_line
+from trimmer.measurement.search import nearest_lines
 
 MAINS_HZ = (50.0, 60.0)
 _CERTAIN = 32.0
@@ -52,12 +52,10 @@ def candidates(
     slow = slow_line(fit.samples)
     wanted = [] if fit.lines.fixed.size else [Foreign("slow", 0.0, slow)]
     stated = mains_hz is not None and math.isfinite(mains_hz) and mains_hz > 0.0
-    for mains in (mains_hz,) if mains_hz and stated else MAINS_HZ:
-        w = 2.0 * math.pi * mains * interval_s
+    known = (mains_hz,) if mains_hz and stated else MAINS_HZ
+    for mains, w in zip(known, _mains_lines(record, known, interval_s), strict=True):
         if w < slow or w > 0.3 * math.pi:
             continue
-        if w * fit.samples > 2.0 * math.pi * mains / _UNSTEADY_HZ * 0.2:
-            w = nearest_line(record, w, w * _UNSTEADY_HZ / mains)
         whole = w >= cell
         wanted += [Foreign("mains", mains, m * w) for m in ((1, 2, 3) if whole else (1,))]
         if whole:
@@ -73,6 +71,15 @@ def candidates(
             continue
         found.append(line)
     return found
+
+
+def _mains_lines(record: Record, known: Sequence[float], interval_s: float) -> list[float]:
+    """Give the mains frequencies, radians per sample; sought nearby where a record is that fine."""
+    w = 2.0 * math.pi * interval_s * np.array(known)
+    if record.count * interval_s * _UNSTEADY_HZ < 0.2 or float(w.max()) > 0.3 * math.pi:
+        return [float(line) for line in w]
+    reach = np.full(w.size, 2.0 * math.pi * interval_s * _UNSTEADY_HZ)
+    return [float(line) for line in nearest_lines(record, w, reach)]
 
 
 def certain_lines(record: Record, fit: Fit, lines: Sequence[Foreign]) -> list[Foreign]:

@@ -27,6 +27,10 @@ class Record:
 
     samples: NDArray[np.float64]
     """Shape (N,), as given."""
+    low: float
+    """Least sample."""
+    high: float
+    """Largest sample."""
     mean: float
     """Taken off each sample."""
     scale: float
@@ -39,7 +43,9 @@ class Record:
 
     def piece(self, start: int, stop: int) -> Array:
         """Samples `start` to `stop`, without mean, over the scale."""
-        return (self.samples[start:stop] - self.mean) / self.scale
+        piece: Array = self.samples[start:stop] - self.mean
+        piece *= 1.0 / self.scale
+        return piece
 
 
 @dataclass(frozen=True, slots=True, eq=False)

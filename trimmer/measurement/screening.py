@@ -79,7 +79,7 @@ def record_of(values: NDArray[np.float64], interval_s: float) -> Record:
     scale = max(high - mean, mean - low)
     if scale < _SMALLEST or scale <= 1e-13 * max(abs(high), abs(low)):
         raise no_signal(f"All {values.size} samples are {mean:.6g}.")
-    return Record(values, mean, scale)
+    return Record(values, low, high, mean, scale)
 
 
 def _is_interval(interval_s: float) -> bool:

@@ -15,7 +15,7 @@ import numpy as np
 
 from trimmer.measurement.kernels import Array
 from trimmer.measurement.model import Lines
-from trimmer.measurement.projection import Record, project
+from trimmer.measurement.projection import Projections, Record, project
 
 _WHOLE = 1 << 15
 """Records up to this length are transformed whole."""
@@ -72,18 +72,22 @@ def _largest_line(power: Array, cell: float, lowest: float) -> float:
     return best + (0.5 * (below - above) / bend if bend < 0.0 else 0.0)
 
 
-def coarse_fundamental(record: Record) -> float:
-    """Find the fundamental of a record to a few hundredths of ``2 pi / N``.
+def coarse_fundamental(record: Record) -> tuple[float, float]:
+    """Find the fundamental of a record.
 
     Returns
     -------
-    float
-        Radians per sample; 0 where no line stands out.
+    tuple
+        Radians per sample (0 where no line stands out), and how far it may be off: 0 where it is
+        known to a few hundredths of ``2 pi / N``, else the resolution of the segments, for `beat`
+        to sharpen.
     """
     if record.count <= _WHOLE:
-        return _whole(record.piece(0, record.count))
+        return _whole(record.piece(0, record.count)), 0.0
     quick = _in_segments(record)
-    return quick if quick > 0.0 else _averaged(record)
+    if quick > 0.0:
+        return quick, 2.0 * math.pi / _segment_length(record.count)
+    return _averaged(record), 0.0
 
 
 def _whole(values: Array) -> float:
@@ -110,7 +114,7 @@ def _in_segments(record: Record) -> float:
     if float(np.argmax(power)) < _SLOW_CELLS:
         return 0.0
     bin_ = _largest_line(power, 1.0, _SLOW_CELLS - 2.0)
-    return zoom(record, 2.0 * math.pi * bin_ / length) if bin_ > 0.0 else 0.0
+    return 2.0 * math.pi * bin_ / length
 
 
 def _averaged(record: Record) -> float:
@@ -123,33 +127,33 @@ def _averaged(record: Record) -> float:
     return _whole((means / group - record.mean) / record.scale) / group
 
 
-def zoom(record: Record, w: float) -> float:
-    """Sharpen a frequency from segments to the resolution of the whole record.
+def beat(projections: Projections, line: int, w: float, reach: float) -> float:
+    """Find the strongest line within `reach` of the frequency `w` that column `line` was projected on.
 
-    Each block of the record is projected on the frequency found; the blocks' phases turn at what
-    is missing, and an FFT over the blocks shows it.
+    Each block's sum turns at what the frequency is off, and an FFT over the blocks shows it: the
+    resolution of the whole record for a transform as long as the number of blocks.
+
+    Returns
+    -------
+    float
+        Radians per sample; `w` itself where nothing stands out.
     """
-    projections = project(record, Lines(1, np.empty(0)), w)
-    beat = projections.sums[:, 1] * np.exp(-1j * w * projections.centres)
-    window = _hann(beat.size)
-    padded = _padded(beat.size, 4.0)
-    spectrum = np.fft.fft(beat * window, padded)
+    turning = projections.sums[:, line] * np.exp(-1j * w * projections.centres)
+    padded = _padded(turning.size, 4.0)
+    spectrum = np.fft.fft(turning * _hann(turning.size), padded)
     power = np.roll(spectrum.real**2 + spectrum.imag**2, padded // 2)
-    bin_ = _largest_line(power, 1.0, 1.0) - padded // 2
-    return w + 2.0 * math.pi * bin_ / (padded * projections.length)
+    cell = 2.0 * math.pi / (padded * projections.length)
+    bins = min(max(2, math.ceil(reach / cell)), padded // 2 - 1)
+    start = padded // 2 - bins
+    bin_ = _largest_line(power[start : padded // 2 + bins + 1], 1.0, 1.0)
+    return w + cell * (bin_ + start - padded // 2) if bin_ > 0.0 else w
 
 
-def nearest_line(record: Record, w: float, reach: float) -> float:
-    """Find the strongest line within `reach` of `w`, both in radians per sample."""
-    projections = project(record, Lines(1, np.empty(0)), w)
-    beat = projections.sums[:, 1] * np.exp(-1j * w * projections.centres)
-    padded = _padded(beat.size, 4.0)
-    spectrum = np.fft.fft(beat * _hann(beat.size), padded)
-    power = np.roll(spectrum.real**2 + spectrum.imag**2, padded // 2)
-    bins = max(2, math.ceil(reach * padded * projections.length / (2.0 * math.pi)))
-    start = max(0, padded // 2 - bins)
-    window = power[start : padded // 2 + bins + 1]
-    bin_ = _largest_line(window, 1.0, 1.0)
-    if bin_ <= 0.0:
-        return w
-    return w + 2.0 * math.pi * (bin_ + start - padded // 2) / (padded * projections.length)
+def nearest_lines(record: Record, w: Array, reach: Array) -> Array:
+    """Find the strongest line within `reach` of each `w`; all in radians per sample, shape (n,)."""
+    projections = project(record, Lines(1, w), 0.5 * math.pi)
+    found = [
+        beat(projections, 2 + i, float(near), float(far))
+        for i, (near, far) in enumerate(zip(w, reach, strict=True))
+    ]
+    return np.array(found)
