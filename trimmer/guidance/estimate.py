@@ -8,12 +8,12 @@ import numpy as np
 
 from trimmer.guidance.aim import Aim, Box
 from trimmer.guidance.field import Array, FieldBelief, features
+from trimmer.guidance.floor import floor_at
 from trimmer.guidance.general import general_belief
 from trimmer.guidance.hand import Hand
 from trimmer.guidance.memory import KindPrior
 from trimmer.guidance.path import Found, Walk, find_walk
 from trimmer.guidance.record import Record
-from trimmer.guidance.seen import Seen
 
 GENERAL_FREEDOM = 3.0
 KIND_UNEVEN = 0.1
@@ -74,7 +74,7 @@ def estimate(record: Record, hand: Hand, kind: KindPrior | None) -> Estimate:
     here = np.zeros(2)
     box = _box(record, found.places)
     best = _best(found.belief, here, box)
-    floor, sigma = _floor(found, best, record.here)
+    floor, sigma = floor_at(found, best, record.here)
     return Estimate(
         found=found,
         here=here,
@@ -154,29 +154,3 @@ def _best(belief: FieldBelief, here: Array, box: Box) -> Array:
     reach = 0.3 * np.abs(cautious - here) + 0.02
     near = Box(np.maximum(box.low, cautious - reach), np.minimum(box.high, cautious + reach))
     return Aim(belief, caution=0.0).joint(cautious, near)
-
-
-def _floor(found: Found, best: Array, last: Seen) -> tuple[float, float]:
-    """Length of the parts at the best setting, noise taken off, and its standard uncertainty.
-
-    Only what lies outside the columns counts for the uncertainty: along them the setting is at its
-    least, and an error there changes the length in second order only. The digitiser's own error is
-    the same in all readings, so no number of them lowers its share.
-    """
-    belief = found.belief
-    parts = belief.at(best)
-    phi = features(best - belief.anchor)
-    own = np.einsum("f,kfg,g->k", phi, found.given_steps, phi)
-    fixed = last.fixed[: parts.size]
-    square = float(parts @ parts)
-    noise = float(np.sum(np.minimum(own, last.variance[: parts.size]) + fixed))
-    length = float(np.sqrt(max(square - noise, 0.0)))
-    tangent, _ = np.linalg.qr(belief.columns(best).T)
-    across = parts - tangent @ (tangent.T @ parts)
-    size = float(np.linalg.norm(across))
-    if size**2 <= noise:
-        return length, float(np.sqrt(noise / parts.size))
-    across /= size
-    shared = across @ np.einsum("f,kfj->kj", phi, found.through_steps)
-    variance = across**2 @ (own + fixed) + shared @ found.steps_covariance @ shared
-    return length, float(np.sqrt(variance))
