@@ -3,7 +3,7 @@
 A map stands in for a toleranced unit where thousands of settings are wanted and no simulator can
 be waited for. It is the interpolant through Chebyshev points of the travel of each trim: the
 circuits' parts are smooth in (u, l), so it converges geometrically (11 points a trim leave less
-than 1e-6 of the fundamental, which a test checks against the simulator).
+than 1e-7 of the fundamental, which a test checks against the simulator).
 
 `make_maps` makes the stored ones anew.
 """

@@ -6,6 +6,7 @@ with a hand's errors, runs the simulator and saves the next capture.
 
 from __future__ import annotations
 
+import contextlib
 import json
 import os
 import queue
@@ -128,7 +129,6 @@ def trim_by_the_command(bench: Bench, room: Path, *more: str) -> Outcome:
         scope.save(bench.unit, *outcome.wipers, captures / f"{len(outcome.track):03d}.csv")
 
     with _command(captures, room, *more) as process:
-        assert process.stdin is not None
         save()
         for event in _lines(process):
             outcome.events.append(event)
@@ -138,37 +138,50 @@ def trim_by_the_command(bench: Bench, room: Path, *more: str) -> Outcome:
             if event["event"] != "advice":
                 continue
             if outcome.turns >= MOST_TURNS:
-                process.stdin.write("quit\n")
-                process.stdin.flush()
+                _say(process, "quit")
                 continue
             stopped = hand.turn(event["trim"], event["sense"], event["turns"])
             outcome.turns += 1
             if stopped:
                 outcome.stops += 1
-                process.stdin.write("at-stop\n")
-                process.stdin.flush()
+                _say(process, "at-stop")
                 time.sleep(0.6)  # the word first: a capture alone says that the turn was made
             save()
-        process.stdin.close()
         outcome.status = process.wait(timeout=SILENCE_S)
     outcome.messages = (room / "messages.txt").read_text(encoding="utf-8")
     outcome.thd = outcome.track[-1]
     return outcome
 
 
-def _command(captures: Path, room: Path, *more: str) -> subprocess.Popen[str]:
-    messages = (room / "messages.txt").open("w", encoding="utf-8")
+@contextlib.contextmanager
+def _command(captures: Path, room: Path, *more: str) -> Iterator[subprocess.Popen[str]]:
+    """Run the command; whatever happens here, it is ended when this is left."""
     words = [sys.executable, "-m", "trimmer", "tune", str(captures), "--json"]
     words += ["--travel", str(TRAVEL_TURNS), "--unit", "bench unit", *more]
-    with messages:
-        return subprocess.Popen(
+    with (
+        (room / "messages.txt").open("w", encoding="utf-8") as messages,
+        subprocess.Popen(
             words,
             stdin=subprocess.PIPE,
             stdout=subprocess.PIPE,
             stderr=messages,
             text=True,
             env={**os.environ, "TRIMMER_HOME": str(room / "home"), "OMP_NUM_THREADS": "1"},
-        )
+        ) as process,
+    ):
+        try:
+            yield process
+        finally:
+            if process.poll() is None:
+                process.kill()
+
+
+def _say(process: subprocess.Popen[str], word: str) -> None:
+    """Say a word on the command's stdin, if it still listens."""
+    assert process.stdin is not None
+    with contextlib.suppress(BrokenPipeError):
+        process.stdin.write(word + "\n")
+        process.stdin.flush()
 
 
 def _lines(process: subprocess.Popen[str]) -> Iterator[Event]:
