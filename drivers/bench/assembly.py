@@ -7,7 +7,6 @@ import secrets
 import threading
 import time
 from collections.abc import Callable
-from dataclasses import replace
 from math import floor, log10
 from typing import Self
 
@@ -125,13 +124,14 @@ class Bench:
                 nonlinearity_codes=nonlinearity_codes,
                 lowest_code=speaker.lowest_code,
             ),
-            self._time_axis(Settings()),
+            Settings(),
             serial=self.seed % 1_000_000,
             acquire_s=acquire_s,
             faults=self._faults,
             halt=self._halt,
         )
         """The digitiser."""
+        self.instrument.set_time_axis(self._record_s(self.instrument.settings.points))
         if fault is not None:
             self.fail(fault, after=STARTS_AFTER.get(fault, 0))
         self._server = Server(self.instrument, self._faults, port, self._halt)
@@ -191,7 +191,7 @@ class Bench:
     def set_frequency(self, hertz: float) -> None:
         """Turn the unit's dial, and the digitiser's time axis with it, as a person does."""
         self.plant.set_frequency(hertz)
-        self.instrument.refit(self._time_axis(self.instrument.settings))
+        self.instrument.set_time_axis(self._record_s(self.instrument.settings.points))
 
     def thd(self) -> float:
         """THD without noise at the present setting, ratio, orders 2 to 15."""
@@ -212,11 +212,11 @@ class Bench:
         """
         return self.plant.best(warm=warm)
 
-    def _time_axis(self, settings: Settings) -> Settings:
-        """Choose the step of 1, 2 or 5 that comes nearest to the cycles wanted."""
-        wanted = log10(FRAME_CYCLES / self.plant.frequency_hz() / settings.points)
+    def _record_s(self, points: int) -> float:
+        """Choose the sample interval of 1, 2 or 5 that comes nearest to the cycles wanted."""
+        wanted = log10(FRAME_CYCLES / self.plant.frequency_hz() / points)
         steps = [float(f"{digit}e{floor(wanted)}") for digit in (1, 2, 5, 10)]
-        return replace(settings, interval_s=min(steps, key=lambda s: abs(log10(s) - wanted)))
+        return points * min(steps, key=lambda s: abs(log10(s) - wanted))
 
     # -- faults -------------------------------------------------------------------------------
 

@@ -36,6 +36,9 @@ from drivers.bench.scpi import (
 
 IDENTITY = "SIMULATED,Bench digitiser ({dialect}),{serial:06d},1.0"
 
+FIRST_COUNT = 8
+"""Frames averaged where averaging is switched on and no number was given."""
+
 State = Literal["running", "armed", "stopped"]
 RUNNING: State = "running"
 ARMED: State = "armed"
@@ -94,6 +97,8 @@ class Instrument:
         self.lock = threading.RLock()
         self.status = Status()
         self.settings = settings
+        self.averaging = False
+        self.count = FIRST_COUNT
         self._state: State = RUNNING
         self._frame: Frame | None = None
         self._pending: Frame | None = None
@@ -194,8 +199,14 @@ class Instrument:
         self.set_points(call.whole(100, MOST_POINTS))
 
     def average_from(self, call: Call) -> None:
-        """Take a number of frames to average from a command."""
-        self.set_to(average=call.whole(1, MOST_AVERAGED))
+        """Take a number of frames to average from a command; it counts while averaging is on."""
+        self.count = call.whole(1, MOST_AVERAGED)
+        self.set_averaging(self.averaging)
+
+    def set_averaging(self, on: bool) -> None:
+        """Switch averaging on or off."""
+        self.averaging = on
+        self.set_to(average=self.count if on else 1)
 
     def offset_from(self, call: Call) -> None:
         """Take an offset from a command."""
@@ -205,11 +216,11 @@ class Instrument:
         """Take the input's coupling from a command."""
         self.set_to(ac=call.word("AC", "DC") == "AC")
 
-    def refit(self, settings: Settings) -> None:
-        """Set the digitiser at its front panel; ``*RST`` comes back to this."""
+    def set_time_axis(self, record_s: float) -> None:
+        """Turn the time axis at the front panel; ``*RST`` comes back to this."""
         with self.lock:
-            self._initial = settings
-            self.settings = settings
+            self.set_record_s(record_s)
+            self._initial = replace(self._initial, interval_s=record_s / self._initial.points)
 
     def stand(self) -> None:
         """Be switched on without acquiring, memory empty."""
@@ -239,6 +250,7 @@ class Instrument:
     def reset(self) -> None:
         """Do what ``*RST`` does: first settings, stopped, memory empty."""
         self.settings = self._initial
+        self.averaging, self.count = False, FIRST_COUNT
         self._state, self._frame, self._pending = STOPPED, None, None
         self.reset_dialect()
 

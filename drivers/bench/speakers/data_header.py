@@ -60,7 +60,9 @@ class DataHeader(Instrument):
         add("ACQuire:POINts[:VALue]?", lambda _: str(self.settings.points))
         add("ACQuire:SRATe?", lambda _: real(1.0 / self.settings.interval_s))
         add("ACQuire:AVERage:COUNt", self.average_from)
-        add("ACQuire:AVERage:COUNt?", lambda _: str(self.settings.average))
+        add("ACQuire:AVERage:COUNt?", lambda _: str(self.count))
+        add("CHANnel<n>:ARIThmetics", self._set_arithmetics)
+        add("CHANnel<n>:ARIThmetics?", lambda _: "AVER" if self.averaging else "OFF")
 
     def reset_dialect(self) -> None:
         """ASCII, least significant byte first."""
@@ -81,6 +83,9 @@ class DataHeader(Instrument):
 
     def _set_type(self, call: Call) -> None:
         self.set_to(peak=call.word("SAMPle", "PDETect") == "PDET")
+
+    def _set_arithmetics(self, call: Call) -> None:
+        self.set_averaging(call.word("OFF", "AVERage") == "AVER")
 
     def _set_order(self, call: Call) -> None:
         self._least_first = call.word("LSBFirst", "MSBFirst") == "LSBF"

@@ -87,6 +87,7 @@ class Descriptor(Classic):
         struct.pack_into(order + "ii", made, 116, points, points)
         struct.pack_into(order + "ii", made, 124, 0, points - 1)
         struct.pack_into(order + "i", made, 136, self.stride())
+        struct.pack_into(order + "i", made, 148, settings.average)
         gain = settings.full_scale_v / (CODES << 8 if word else CODES)
         struct.pack_into(order + "ff", made, 156, gain, -settings.offset_v)
         struct.pack_into(order + "h", made, 172, settings.bits)

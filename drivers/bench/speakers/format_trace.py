@@ -53,7 +53,9 @@ class FormatTrace(Instrument):
         add("[SENSe:]SWEep:TINTerval", self._set_interval)
         add("[SENSe:]SWEep:TINTerval?", lambda _: real(self.described().interval_s))
         add("[SENSe:]AVERage:COUNt", self.average_from)
-        add("[SENSe:]AVERage:COUNt?", lambda _: str(self.settings.average))
+        add("[SENSe:]AVERage:COUNt?", lambda _: str(self.count))
+        add("[SENSe:]AVERage[:STATe]", lambda call: self.set_averaging(call.switch()))
+        add("[SENSe:]AVERage[:STATe]?", lambda _: str(int(self.averaging)))
         add("INPut:COUPling", self.coupling_from)
         add("INPut:COUPling?", lambda _: "AC" if self.settings.ac else "DC")
 

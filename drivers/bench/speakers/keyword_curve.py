@@ -85,8 +85,8 @@ class KeywordCurve(Instrument):
         add("ACQuire:STOPAfter?", lambda _: self._headed("ACQUIRE:STOPAFTER", self._stop_after))
         add("ACQuire:MODe", self._set_mode)
         add("ACQuire:MODe?", lambda _: self._headed("ACQUIRE:MODE", self._mode()))
-        add("ACQuire:NUMAVg", self._set_average)
-        add("ACQuire:NUMAVg?", lambda _: self._headed("ACQUIRE:NUMAVG", str(self._count)))
+        add("ACQuire:NUMAVg", self.average_from)
+        add("ACQuire:NUMAVg?", lambda _: self._headed("ACQUIRE:NUMAVG", str(self.count)))
         add("HORizontal:RECOrdlength", self.points_from)
         add("HORizontal:RECOrdlength?", self._record_length)
         add("HORizontal[:MAIn]:SCAle", self._set_time_scale)
@@ -120,7 +120,6 @@ class KeywordCurve(Instrument):
         """Headers on, signed bytes, the first 2500 points."""
         self._header = True
         self._stop_after = "RUNSTOP"
-        self._count = 16
         self._channel = 1
         self._encoding = "RIB"
         self._width = 1
@@ -182,17 +181,13 @@ class KeywordCurve(Instrument):
 
     def _set_mode(self, call: Call) -> None:
         mode = call.word("SAMple", "AVErage", "PEAKdetect")
-        self.set_to(average=self._count if mode == "AVE" else 1, peak=mode == "PEAK")
+        self.set_to(peak=mode == "PEAK")
+        self.set_averaging(mode == "AVE")
 
     def _mode(self) -> str:
         if self.settings.peak:
             return "PEAKDETECT"
-        return "AVERAGE" if self.settings.average > 1 else "SAMPLE"
-
-    def _set_average(self, call: Call) -> None:
-        self._count = call.whole(2, 1024)
-        if self.settings.average > 1:
-            self.set_to(average=self._count)
+        return "AVERAGE" if self.averaging else "SAMPLE"
 
     def _record_length(self, _: Call) -> str:
         return self._headed("HORIZONTAL:RECORDLENGTH", str(self.settings.points))

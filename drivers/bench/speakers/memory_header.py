@@ -32,7 +32,9 @@ class MemoryHeader(Instrument):
         add("ACQuire:RECOrdlength", self.points_from)
         add("ACQuire:RECOrdlength?", lambda _: str(self.settings.points))
         add("ACQuire:AVERage", self.average_from)
-        add("ACQuire:AVERage?", lambda _: str(self.settings.average))
+        add("ACQuire:AVERage?", lambda _: str(self.count))
+        add("ACQuire:MODe", self._set_mode)
+        add("ACQuire:MODe?", lambda _: "AVER" if self.averaging else "SAMP")
         add("TIMebase:SCALe", self._set_time_scale)
         add("TIMebase:SCALe?", lambda _: real(self._record_s() / TIME_DIVISIONS))
         add("CHANnel<n>:SCALe", self._set_scale)
@@ -44,6 +46,9 @@ class MemoryHeader(Instrument):
 
     def _record_s(self) -> float:
         return self.settings.interval_s * self.settings.points
+
+    def _set_mode(self, call: Call) -> None:
+        self.set_averaging(call.word("SAMPle", "AVERage") == "AVER")
 
     def _set_time_scale(self, call: Call) -> None:
         self.set_record_s(TIME_DIVISIONS * call.number(1e-9, 50.0))

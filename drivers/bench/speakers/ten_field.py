@@ -116,12 +116,12 @@ class TenField(Instrument):
 
     def _set_type(self, call: Call) -> None:
         kind = call.word("NORMal", "AVERage", "PEAK")
-        count = max(self.settings.average, 8) if kind == "AVER" else 1
-        self.set_to(average=count, peak=kind == "PEAK")
+        self.set_to(peak=kind == "PEAK")
+        self.set_averaging(kind == "AVER")
 
     def acquisition_type(self) -> int:
         """Number of the kind of acquisition: normal 0, peak detect 1, average 2."""
-        return 1 if self.settings.peak else 2 if self.settings.average > 1 else 0
+        return 1 if self.settings.peak else 2 if self.averaging else 0
 
     # -- waveform data ------------------------------------------------------------------------
 
@@ -230,7 +230,7 @@ class VoltsOrigin(TenField):
         add("ACQuire:POINts", self.points_from)
         add("ACQuire:POINts?", lambda _: str(self.settings.points))
         add("ACQuire:COUNt", self.average_from)
-        add("ACQuire:COUNt?", lambda _: str(self.settings.average))
+        add("ACQuire:COUNt?", lambda _: str(self.count))
 
     def _digitise(self, call: Call) -> None:
         if call.arguments:
@@ -300,7 +300,7 @@ class CodeOrigin(TenField):
         add("ACQuire:MDEPth", self.points_from)
         add("ACQuire:MDEPth?", lambda _: str(self.settings.points))
         add("ACQuire:AVERages", self.average_from)
-        add("ACQuire:AVERages?", lambda _: str(self.settings.average))
+        add("ACQuire:AVERages?", lambda _: str(self.count))
 
     def waits_for_completion(self) -> bool:
         """``*OPC?`` says 1 at once here."""
@@ -379,7 +379,7 @@ class Signed(TenField):
         add("ACQuire:POINts", self.points_from)
         add("ACQuire:POINts?", lambda _: str(self.settings.points))
         add("ACQuire:COUNt", self.average_from)
-        add("ACQuire:COUNt?", lambda _: str(self.settings.average))
+        add("ACQuire:COUNt?", lambda _: str(self.count))
 
     def _set_mode(self, call: Call) -> None:
         self._mode = call.word("NORMal", "RAW", "MAXimum")

@@ -36,6 +36,10 @@ class VdivText(Classic):
         add("SANU?", lambda _: self.headed("SANU", self._count()))
         add("MSIZ?", lambda _: self.headed("MSIZ", in_thousands(self.settings.points)))
         add("SAST?", lambda _: self.headed("SAST", self._state_word()))
+        add("ACQW", self._set_mode)
+        add("ACQW?", lambda _: self.headed("ACQW", self._mode()))
+        add("AVGA", self.average_from)
+        add("AVGA?", lambda _: self.headed("AVGA", str(self.count)))
 
     def quantity(self, value: float, unit: str) -> str:
         """In powers of ten; the unit goes with the header."""
@@ -44,6 +48,16 @@ class VdivText(Classic):
     def waits_for_completion(self) -> bool:
         """``*OPC?`` says 1 at once here."""
         return False
+
+    def _set_mode(self, call: Call) -> None:
+        mode = call.word("SAMPLING", "PEAK_DETECT", "AVERAGE")
+        self.set_to(peak=mode == "PEAK_DETECT")
+        self.set_averaging(mode == "AVERAGE")
+
+    def _mode(self) -> str:
+        if self.settings.peak:
+            return "PEAK_DETECT"
+        return "AVERAGE" if self.averaging else "SAMPLING"
 
     def _rate(self) -> str:
         return in_thousands(1.0 / self.described().interval_s) + "Sa/s"

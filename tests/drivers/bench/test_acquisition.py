@@ -110,7 +110,7 @@ def test_changed_settings_show_with_the_next_acquisition() -> None:
 
 def test_bytes_of_an_averaged_frame_are_cut_off() -> None:
     with Bench(2) as bench, Talker(bench) as talker:
-        talker.say(":ACQuire:COUNt 64", RAW, ":DIGitize")
+        talker.say(":ACQuire:TYPE AVERage;COUNt 64", RAW, ":DIGitize")
         cut = np.frombuffer(talker.block(":WAVeform:DATA?")[0], np.uint8).astype(float)
         talker.say(":WAVeform:FORMat WORD")
         whole = np.frombuffer(talker.block(":WAVeform:DATA?")[0], ">u2") / 256.0
@@ -119,5 +119,5 @@ def test_bytes_of_an_averaged_frame_are_cut_off() -> None:
 
 def test_too_much_work_for_one_acquisition_is_refused() -> None:
     with Bench(2) as bench, Talker(bench) as talker:
-        talker.say("*CLS", ":ACQuire:POINts 2000000;COUNt 1024", ":DIGitize")
+        talker.say("*CLS", ":ACQuire:POINts 2000000;TYPE AVERage;COUNt 1024", ":DIGitize")
         assert talker.ask("SYST:ERR?").startswith("-221")

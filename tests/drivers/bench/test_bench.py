@@ -188,8 +188,8 @@ def test_the_default_range_is_used_well_and_the_noise_is_half_a_code_or_more() -
         codes = np.frombuffer(talker.block(":WAVeform:DATA?")[0], np.uint8).astype(float)
         assert 0.75 < np.ptp(codes) / 256 < 0.85
         t = np.arange(codes.size) * 1e-6 * bench.frequency_hz * 2.0 * np.pi
-        basis = np.array([f(k * t) for k in range(41) for f in (np.cos, np.sin)][:1] +
-                         [f(k * t) for k in range(1, 41) for f in (np.cos, np.sin)]).T  # fmt: skip
+        waves = [f(k * t) for k in range(1, 41) for f in (np.cos, np.sin)]
+        basis = np.array([np.ones_like(t), *waves]).T
         left = codes - basis @ np.linalg.lstsq(basis, codes, rcond=None)[0]
         assert np.std(left) >= np.hypot(0.5, 1 / np.sqrt(12))
         assert np.std(left) < 0.75
@@ -199,7 +199,10 @@ def test_what_is_read_off_the_socket_is_the_units_own_distortion() -> None:
     # 400 averaged frames of words, a plain least-squares fit: within the converter's own bend.
     with Bench(13, nonlinearity_codes=0.0) as bench, Talker(bench) as talker:
         talker.say(
-            ":ACQuire:COUNt 256", ":WAVeform:FORMat WORD", ":WAVeform:POINts:MODE RAW", ":DIGitize"
+            ":ACQuire:TYPE AVERage;COUNt 256",
+            ":WAVeform:FORMat WORD",
+            ":WAVeform:POINts:MODE RAW",
+            ":DIGitize",
         )
         words = np.frombuffer(talker.block(":WAVeform:DATA?")[0], ">u2").astype(float)
         t = np.arange(words.size) * 1e-6 * bench.frequency_hz * 2.0 * np.pi

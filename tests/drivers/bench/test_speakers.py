@@ -379,7 +379,11 @@ def test_the_look_alike_is_complete_at_once_whatever_is_under_way() -> None:
 @pytest.mark.parametrize("average", [1, 64])
 def test_a_data_header_gives_volts(form: str, kind: str, order: str, average: int) -> None:
     with speaking("data-header") as (bench, talker):
-        talker.say(f"ACQuire:AVERage:COUNt {average}", "CHANnel1:OFFSet 0.25")
+        talker.say(
+            f"ACQuire:AVERage:COUNt {average}",
+            "CHANnel1:ARIThmetics AVERage",
+            "CHANnel1:OFFSet 0.25",
+        )
         talker.say(f"FORMat {form}", f"FORMat:BORDer {order}")
         assert talker.ask("SINGle;*OPC?") == "1"
         first, last, points, values = map(float, talker.ask("CHANnel1:DATA:HEADer?").split(","))
