@@ -319,3 +319,16 @@ def test_writers_in_many_threads_lose_nothing(book: Book) -> None:
         ids = list(pool.map(lambda n: written(book, 1, f"U{n}"), range(12)))
     assert {row.id for row in book.sheets()} == set(ids)
     assert all(len(book.sheet(sheet).turns) == 2 for sheet in ids)
+
+
+def test_a_list_of_sheets_waits_neither_for_the_guide_nor_for_the_numeric_library(
+    book: Book, home: Path
+) -> None:
+    written(book, 0)
+    looks = (
+        "import sys, trimmer.book; rows = trimmer.book.open_book(writes=False).sheets(); "
+        "late = {'numpy', 'scipy', 'pydantic', 'psycopg', 'trimmer.guidance', 'trimmer.measurement'}; "
+        "print(len(rows), sorted(late & set(sys.modules)))"
+    )
+    done = subprocess.run([sys.executable, "-c", looks], capture_output=True, text=True, check=True)
+    assert done.stdout.strip() == "1 []"

@@ -6,7 +6,6 @@ from dataclasses import asdict
 from typing import Any
 
 from trimmer.book.entries import Correction, Sheet, SheetEnd, SheetRow, TurnEntry
-from trimmer.events import advice_event, done_event, reading_event
 
 
 def sheet_event(row: SheetRow) -> dict[str, Any]:
@@ -54,6 +53,8 @@ def sheet_document(sheet: Sheet, *, waveforms: bool = True) -> dict[str, Any]:
 
 
 def _reading(entry: TurnEntry, waveforms: bool) -> dict[str, Any]:
+    from trimmer.events import advice_event, reading_event
+
     return reading_event(
         entry.turn,
         entry.taken_at,
@@ -74,6 +75,8 @@ def _waveform(entry: TurnEntry) -> dict[str, Any] | None:
 
 
 def _end(end: SheetEnd, sheet: str) -> dict[str, Any]:
+    from trimmer.events import done_event
+
     thd = end.reading.thd if end.reading else None
     event = done_event(end.done, thd.value if thd else None, thd.sigma if thd else None, sheet)
     return {**event, "ended_at": end.ended_at.isoformat()}

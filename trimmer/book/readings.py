@@ -1,15 +1,18 @@
-"""Readings, advice and ends as JSON-able documents, and back without loss."""
+"""Readings, advice and ends as JSON-able documents, and back without loss.
+
+Measurement and guidance are loaded when a reading is, so that a list of sheets waits for neither.
+"""
 
 from __future__ import annotations
 
 import math
 from collections.abc import Mapping
 from dataclasses import asdict, fields
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
-from trimmer.guidance.advice import Advice, Cause
-from trimmer.measurement import packing
-from trimmer.measurement.reading import Reading
+if TYPE_CHECKING:
+    from trimmer.guidance.advice import Advice, Cause
+    from trimmer.measurement.reading import Reading
 
 
 def finite(value: float | None) -> float | None:
@@ -19,6 +22,8 @@ def finite(value: float | None) -> float | None:
 
 def reading_document(reading: Reading) -> dict[str, Any]:
     """Give every figure of a reading, bit for bit."""
+    from trimmer.measurement import packing
+
     return packing.document(reading)
 
 
@@ -30,6 +35,8 @@ def from_document(document: Mapping[str, Any]) -> Reading:
     ValueError
         The document does not hold a reading.
     """
+    from trimmer.measurement import packing
+
     try:
         return packing.from_document(dict(document))
     except (AttributeError, OverflowError, IndexError) as error:
@@ -43,6 +50,8 @@ def advice_document(advice: Advice) -> dict[str, Any]:
 
 def advice_from(document: Mapping[str, Any]) -> Advice:
     """Give back the advice that `advice_document` wrote; what a newer program added is left out."""
+    from trimmer.guidance.advice import Advice
+
     return Advice(**_known(Advice, document))
 
 
@@ -58,4 +67,6 @@ def causes_document(causes: tuple[Cause, ...]) -> list[dict[str, Any]]:
 
 def causes_from(documents: list[Mapping[str, Any]]) -> tuple[Cause, ...]:
     """Give back the causes that `causes_document` wrote."""
+    from trimmer.guidance.advice import Cause
+
     return tuple(Cause(**_known(Cause, document)) for document in documents)

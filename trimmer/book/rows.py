@@ -1,10 +1,10 @@
-"""Values into rows, and rows into values."""
+"""Values into rows, and rows into values; what measures and guides is loaded when it is needed."""
 
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import replace
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from trimmer.book import tables as t
 from trimmer.book.columns import plain
@@ -29,9 +29,10 @@ from trimmer.book.readings import (
     reading_document,
 )
 from trimmer.book.store import Row
-from trimmer.book.waveforms import pack, unpack_samples
-from trimmer.guidance.advice import Done, Trim
-from trimmer.measurement.reading import Reading
+
+if TYPE_CHECKING:
+    from trimmer.guidance.advice import Trim
+    from trimmer.measurement.reading import Reading
 
 Values = Mapping[Any, Any]
 
@@ -66,6 +67,8 @@ def start_from(values: Values) -> SheetStart:
 
 def turn_row(new: str, sheet: str, entry: TurnEntry) -> Row:
     """Give the row of a turn and its reading."""
+    from trimmer.book.waveforms import pack
+
     advice, wave = entry.advice, entry.waveform
     values = {
         "id": new,
@@ -100,6 +103,8 @@ def _figures(reading: Reading | None) -> dict[str, float | None]:
 
 def turn_from(values: Values) -> TurnEntry:
     """Give back a turn and its reading."""
+    from trimmer.book.waveforms import unpack_samples
+
     packed = values["waveform"]
     return TurnEntry(
         turn=values["number"],
@@ -139,6 +144,8 @@ def end_row(new: str, sheet: str, end: SheetEnd) -> Row:
 
 def end_from(values: Values) -> SheetEnd:
     """Give back how a sheet ended."""
+    from trimmer.guidance.advice import Done
+
     trims: tuple[Trim, ...] = ("upper", "lower")
     net = {trim: values[f"net_{trim}"] for trim in trims}
     done = Done(

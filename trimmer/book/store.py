@@ -7,7 +7,6 @@ from contextlib import contextmanager
 from dataclasses import dataclass
 from typing import Any
 
-import numpy as np
 import sqlalchemy as sa
 from sqlalchemy.dialects import postgresql, sqlite
 
@@ -17,7 +16,6 @@ from trimmer.book.columns import dumps
 from trimmer.book.entries import Merged
 from trimmer.book.faults import BookBehind, guarded, legible
 from trimmer.book.migrate import applied, check, migrate
-from trimmer.book.waveforms import unpack_samples
 from trimmer.errors import BookError
 
 
@@ -188,7 +186,9 @@ def _check_same(row: Row, known: Row) -> None:
 def _same(name: str, given: Any, there: Any) -> bool:
     if name == "waveform" and given is not None and there is not None:
         # The same samples may be packed otherwise by another version of the packer.
-        return bool(np.array_equal(unpack_samples(given), unpack_samples(bytes(there))))
+        from trimmer.book.waveforms import unpack_samples
+
+        return unpack_samples(given).tobytes() == unpack_samples(bytes(there)).tobytes()
     if isinstance(given, dict | list):
         return dumps(given) == dumps(there)
     return bool(given == there)
