@@ -146,10 +146,7 @@ def test_how_far_is_said_in_degrees_up_to_a_whole_turn(turns: float, said: str) 
 def test_the_expected_thd_is_said_also_when_it_rises_first() -> None:
     advice = replace(advised(), advice=replace(advised().advice, rises_first=True))
     said = sentences.expectation(seen(*STATES["advice"][:-1], advice))
-    assert (
-        said
-        == "THD 0.82 % now, 0.61 % after this turn, up before it comes down, floor 0.42 ±0.03 %"
-    )
+    assert said == "THD 0.82 % now, 0.61 % after this turn (up first), floor 0.42 ±0.03 %"
 
 
 def test_a_notice_is_said_before_the_reason() -> None:

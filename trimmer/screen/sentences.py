@@ -41,7 +41,7 @@ def expectation(view: View) -> str:
         said.append(f"THD {100.0 * view.reading.thd.value:.2f} % now")
     advice = view.advice
     if advice is not None and advice.expected_thd is not None:
-        rise = ", up before it comes down" if advice.rises_first else ""
+        rise = " (up first)" if advice.rises_first else ""
         said.append(f"{100.0 * advice.expected_thd:.2f} % after this turn{rise}")
     elif advice is not None:
         said.append("this turn shows what the trim does")
@@ -130,4 +130,4 @@ def kept(view: View) -> str:
     if view.opened is None:
         return "book not yet open"
     count = len(view.steps)
-    return f"sheet {view.opened.sheet}: {count} in book"
+    return f"book has {count} reading{'' if count == 1 else 's'}"

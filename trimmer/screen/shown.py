@@ -11,7 +11,7 @@ from trimmer.screen.orders import Order, order
 from trimmer.screen.view import View
 from trimmer.screen.widgets.keys import Key
 
-BESIDE = "Simulated: nothing here is live. Inside a real unit mains kills: read c first."
+BESIDE = "Simulated, nothing is live. In a real unit mains kills: c for more."
 
 
 @dataclass(frozen=True, slots=True)
@@ -95,12 +95,15 @@ def keys(view: View, hand: KeyedHand | None, silent: bool) -> tuple[Key, ...]:
             Key("↑↓", "other trim", f"screen.hold('{other}')"),
             Key("←", "", "screen.turn('counter-clockwise', False)"),
             Key("→", f"turn {hand.trim}", "screen.turn('clockwise', False)"),
-            Key(",", "", "screen.turn('counter-clockwise', True)"),
-            Key(".", "a touch", "screen.turn('clockwise', True)"),
         ]
     if turning and not view.follows:
         listed.append(Key("Enter", "turned", "screen.say('moved')"))
     listed += [Key("?", "help", "app.explain"), Key("q", "end", "app.leave")]
+    if hand is not None:
+        listed += [
+            Key(",", "", "screen.turn('counter-clockwise', True)"),
+            Key(".", "a touch", "screen.turn('clockwise', True)"),
+        ]
     if turning:
         listed += [
             Key("b", "take back", "screen.say('back')"),
