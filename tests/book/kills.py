@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 import os
 import random
 import signal
@@ -10,11 +11,14 @@ import subprocess
 import sys
 from contextlib import closing
 from dataclasses import dataclass
+from datetime import UTC, datetime
 from pathlib import Path
+from typing import Any
 
 from tests.book import samples as s
 from tests.book.test_book import same_entry
-from trimmer.book import open_book
+from trimmer.book import Book, SheetRow, open_book
+from trimmer.guidance import Guide
 
 
 @dataclass(frozen=True)
@@ -27,6 +31,48 @@ class Kill:
     """Turns in the book."""
     resumed: bool
     """Whether a sheet had to be taken up again, and could be."""
+
+
+def kill_command(home: Path, seed: int) -> Kill:
+    """Start the real command with its own hands, kill it, and check that its book has what it said.
+
+    Raises
+    ------
+    AssertionError
+        A reading that was said is not in the book, or the sheet cannot be taken up.
+    """
+    dice = random.Random(seed)
+    program = subprocess.Popen(
+        [sys.executable, "-m", "trimmer", "demo", "--hands", "auto", "--json", "--seed", str(seed)],
+        stdout=subprocess.PIPE,
+        stderr=subprocess.DEVNULL,
+        text=True,
+        env={**os.environ, "TRIMMER_HOME": str(home)},
+    )
+    assert program.stdout is not None
+    said = [program.stdout.readline()]
+    try:
+        program.wait(dice.uniform(0.0, 1.5))
+    except subprocess.TimeoutExpired:
+        program.kill()
+    rest, _ = program.communicate()
+    events = [json.loads(line) for line in said + rest[: rest.rfind("\n") + 1].splitlines()]
+    with open_book(demo=True, location=home / "demo-book.sqlite") as book:
+        return _compare(book, [event for event in events if event["event"] == "reading"])
+
+
+def _compare(book: Book, said: list[dict[str, Any]]) -> Kill:
+    (row,) = book.sheets()
+    resumed = book.resume(row.id)
+    kept = {entry.taken_at.isoformat(): entry for entry in resumed.sheet.turns}
+    for event in said:
+        entry = kept[datetime.fromisoformat(event["taken_at"]).astimezone(UTC).isoformat()]
+        assert (entry.turn, entry.reading.thd.value) == (event["turn"], event["thd"])
+    if not row.finished:
+        guide = Guide.from_document(resumed.state) if resumed.state is not None else None
+        assert guide is None or guide.turns_made >= len({event["turn"] for event in said}) - 2
+        book.add_turn(row.id, s.entry(row.turns + 1))
+    return Kill(len(said), len(kept), not row.finished)
 
 
 def kill_once(home: Path, seed: int) -> Kill:
@@ -81,7 +127,7 @@ def _run_and_kill(home: Path, dice: random.Random) -> list[list[str]]:
     return said + [line.split() for line in whole.splitlines()]
 
 
-def _kept(book, rows, acknowledged) -> int:  # type: ignore[no-untyped-def]
+def _kept(book: Book, rows: dict[str, SheetRow], acknowledged: set[tuple[str, int]]) -> int:
     """Compare every turn in the book, figure by figure, with what was written."""
     kept = 0
     for sheet in rows:
@@ -94,7 +140,7 @@ def _kept(book, rows, acknowledged) -> int:  # type: ignore[no-untyped-def]
     return kept
 
 
-def _go_on(book, sheet: str) -> bool:  # type: ignore[no-untyped-def]
+def _go_on(book: Book, sheet: str) -> bool:
     """Take a sheet up where it stopped and finish it."""
     resumed = book.resume(sheet)
     number = len(resumed.sheet.turns)

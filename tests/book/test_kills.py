@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from pathlib import Path
 
-from tests.book.kills import kill_once
+from tests.book.kills import kill_command, kill_once
 
 
 def test_a_killed_program_has_kept_what_it_acknowledged(tmp_path: Path) -> None:
@@ -17,3 +17,8 @@ def test_a_killed_program_has_kept_what_it_acknowledged(tmp_path: Path) -> None:
 def test_a_book_survives_one_kill_after_another(tmp_path: Path) -> None:
     kept = [kill_once(tmp_path, seed).kept for seed in range(100, 103)]
     assert kept == sorted(kept)
+
+
+def test_the_command_killed_while_it_trims_has_kept_every_reading_it_said(tmp_path: Path) -> None:
+    kills = [kill_command(tmp_path / str(seed), seed) for seed in range(2)]
+    assert sum(kill.acknowledged for kill in kills) > 0
