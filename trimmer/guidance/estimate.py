@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from trimmer.guidance.aim import Aim, Box
+from trimmer.guidance.explain import explain
 from trimmer.guidance.field import Array, FieldBelief, features
 from trimmer.guidance.floor import floor_at
 from trimmer.guidance.general import general_belief
@@ -57,7 +58,9 @@ class Estimate:
         return self.here - self.origin
 
 
-def estimate(record: Record, hand: Hand, kind: KindPrior | None) -> Estimate:
+def estimate(
+    record: Record, hand: Hand, kind: KindPrior | None, before: Estimate | None = None
+) -> Estimate:
     """Put all readings together.
 
     Parameters
@@ -68,9 +71,12 @@ def estimate(record: Record, hand: Hand, kind: KindPrior | None) -> Estimate:
         Errors of the hand.
     kind
         What is known of units of this kind.
+    before
+        The estimate before the last reading, to start the search from.
     """
     walk = record.walk(hand)
-    found = _with_kind(walk, kind) if kind is not None else _general(walk, record)
+    start = None if before is None else _start(record, walk, before)
+    found = _general(walk, start) if kind is None else _with_kind(walk, kind, start)
     here = np.zeros(2)
     box = _box(record, found.places)
     best = _best(found.belief, here, box)
@@ -87,13 +93,27 @@ def estimate(record: Record, hand: Hand, kind: KindPrior | None) -> Estimate:
     )
 
 
-def _general(walk: Walk, record: Record) -> Found:
+def _start(record: Record, walk: Walk, before: Estimate) -> Array:
+    """Give the steps found before, and the last one as the field before explains its reading."""
+    steps = before.found.steps
+    if not record.moves or before.found.places.shape[0] == len(record.places):
+        return steps
+    last = record.moves[-1]
+    step = float(walk.expected[-1])
+    size = walk.parts.shape[1]
+    if before.known[last.trim] and not last.dead and before.belief.mean.shape[0] == size:
+        span = 1.6 * abs(last.asked) + 0.02
+        step = explain(before.belief, walk.parts[-1], walk.variance[-1], last.trim, span).way
+    return np.append(steps, step)
+
+
+def _general(walk: Walk, start: Array | None) -> Found:
     """Search with nothing known of the kind."""
-    orders = record.orders
-    return find_walk(walk, general_belief(orders), marginal=True, freedom=GENERAL_FREEDOM)
+    prior = general_belief(walk.parts.shape[1] // 2 + 1)
+    return find_walk(walk, prior, start, marginal=True, freedom=GENERAL_FREEDOM)
 
 
-def _with_kind(walk: Walk, kind: KindPrior) -> Found:
+def _with_kind(walk: Walk, kind: KindPrior, start: Array | None) -> Found:
     """Search with a kind's response, anchored at the best setting; the start is unknown too."""
     prior = kind.belief(walk.parts.shape[1] // 2 + 1)
     n = walk.expected.size
@@ -109,8 +129,9 @@ def _with_kind(walk: Walk, kind: KindPrior) -> Found:
             (np.full(2, START_SIGMA), np.hypot(walk.sigma, KIND_UNEVEN * walk.expected))
         ),
     )
-    start = wide.expected.copy()
-    start[:2] = _likely_start(walk.parts[0], walk.variance[0], prior)
+    if start is None:
+        start = wide.expected.copy()
+        start[:2] = _likely_start(walk.parts[0], walk.variance[0], prior)
     return find_walk(wide, prior, start, rounds=20, marginal=True)
 
 

@@ -326,8 +326,8 @@ class Guide:
 
     def _think(self) -> None:
         kind = self.prior if self._kind_holds else None
-        est = estimate(self._record, self._hand, kind)
         before = self._estimate
+        est = estimate(self._record, self._hand, kind, before)
         self._estimate = est
         if before is None or not self._record.moves:
             return

@@ -16,6 +16,7 @@ itself, since the belief lets the field bend in between.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Final
 
 import numpy as np
 
@@ -30,8 +31,13 @@ from trimmer.guidance.field import (
 )
 
 
-_POWERS = ((0, 0), (1, 0), (0, 1), (2, 0), (1, 1), (0, 2), (3, 0), (2, 1), (1, 2), (0, 3))
-SIZE_ROUNDS = 4
+_POWERS: Final = np.array(
+    [(0, 0), (1, 0), (0, 1), (2, 0), (1, 1), (0, 2), (3, 0), (2, 1), (1, 2), (0, 3)], dtype=np.float64
+)
+"""Powers of the upper and of the lower position in each feature."""
+RESTS: Final = 0.02
+"""The search rests once a round lowers the cost by less than this."""
+SIZE_ROUNDS: Final = 3
 """Rounds after which the sizes of the weights are left as learned."""
 
 
@@ -106,144 +112,140 @@ def find_walk(
         How surely the prior knows the size of each part's weights, as degrees of freedom; None takes
         the sizes as they are.
     """
-    steps = walk.expected.copy() if start is None else start.copy()
-    problem = _Problem(walk, prior, marginal, freedom)
-    weights, cost = problem.weights(steps)
+    problem = _Problem(walk, prior, marginal)
+    now = problem.at(walk.expected.copy() if start is None else start.copy())
     converged = walk.expected.size == 0
     for round_ in range(0 if converged else rounds):
-        change = problem.newton(steps, weights)
-        size = 1.0
-        for _ in range(6):
-            tried = steps + size * change
-            new_weights, new_cost = problem.weights(tried)
-            if new_cost <= cost:
-                break
-            size *= 0.35
-        else:
-            break
-        gained = cost - new_cost
-        steps, weights, cost = tried, new_weights, new_cost
         if freedom is not None and round_ < SIZE_ROUNDS:
-            problem.learn_sizes(steps, weights)
-            weights, cost = problem.weights(steps)
-            continue
-        if gained < 1e-3:
+            problem.learn_sizes(now, freedom)
+            now = problem.at(now.steps)
+        better = problem.better(now)
+        if better is None:
+            break
+        gained = now.cost - better.cost
+        now = better
+        if gained < RESTS and (freedom is None or round_ >= SIZE_ROUNDS):
             converged = True
             break
-    return problem.found(steps, weights, converged)
+    return problem.found(now, converged)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Trial:
+    """The joint problem at some steps, the field at its best for them."""
+
+    steps: Array
+    phi: Array
+    """Shape (n, 10), features of the places."""
+    inverse: Array
+    """Shape (m, 10, 10), covariance of the weights given the steps."""
+    weights: Array
+    """Shape (m, 10)."""
+    miss: Array
+    """Shape (n, m), what the field does not explain of the readings."""
+    misfit: float
+    """Sum of squares."""
+    cost: float
+    """The same, with the determinants where the field is integrated out."""
 
 
 class _Problem:
     """The joint problem with its fixed arrays at hand."""
 
-    def __init__(
-        self, walk: Walk, prior: FieldBelief, marginal: bool, freedom: float | None
-    ) -> None:
+    def __init__(self, walk: Walk, prior: FieldBelief, marginal: bool) -> None:
         self.marginal = marginal
-        self.freedom = freedom
-        self.given = np.asarray(np.linalg.inv(prior.covariance), dtype=np.float64)
         self.walk = walk
         self.prior = prior
         self.weight = 1.0 / walk.variance
-        self._rescale(np.ones((2, prior.mean.shape[0])), np.ones(prior.mean.shape[0]))
+        self.weighted_parts = self.weight * walk.parts
+        self.given = np.asarray(np.linalg.inv(prior.covariance), dtype=np.float64)
+        self.precision = self.given
+        self.pull = np.einsum("kfg,kg->kf", self.given, prior.mean)
 
-    def _rescale(self, columns: Array, bends: Array) -> None:
-        """Widen the prior of each part's columns and, besides, of its curvature by these squares."""
-        upper, lower = 1.0 / np.sqrt(columns)
-        curved = 1.0 / np.sqrt(bends)
-        by = np.ones_like(self.prior.mean)
-        by[:, 1], by[:, 2] = upper, lower
-        for f, (u, v) in enumerate(_POWERS[3:], start=3):
-            by[:, f] = upper**u * lower**v * curved
-        self.precision = self.given * by[:, :, None] * by[:, None, :]
-        self.pull = np.einsum("kfg,kg->kf", self.precision, self.prior.mean)
+    def at(self, steps: Array) -> _Trial:
+        """Solve for the field at given steps."""
+        phi = features(self.walk.steps @ steps - self.prior.anchor)
+        outer = (phi[:, :, None] * phi[:, None, :]).reshape(phi.shape[0], -1)
+        normal = self.precision + (self.weight.T @ outer).reshape(-1, FEATURES, FEATURES)
+        inverse = np.asarray(np.linalg.inv(normal), dtype=np.float64)
+        right = self.weighted_parts.T @ phi + self.pull
+        weights = (inverse @ right[..., None])[..., 0]
+        miss = self.walk.parts - phi @ weights.T
+        off = weights - self.prior.mean
+        slip = (steps - self.walk.expected) / self.walk.sigma
+        misfit = float(
+            np.sum(self.weight * miss * miss)
+            + np.sum(off * (self.precision @ off[..., None])[..., 0])
+            + slip @ slip
+        )
+        cost = misfit
+        if self.marginal:
+            cost += float(np.sum(np.linalg.slogdet(normal)[1]))
+        return _Trial(steps, phi, inverse, weights, miss, misfit, cost)
 
-    def learn_sizes(self, steps: Array, weights: Array) -> None:
+    def learn_sizes(self, now: _Trial, freedom: float) -> None:
         """Learn the sizes of columns and of curvature (one round of expectation and maximisation).
 
         A column is as long as it is: its size is learned from all its crest parts together, and from
         all its skew parts together. How much a part bends is learned for each part.
         """
-        assert self.freedom is not None
-        inverse = np.linalg.inv(self._normal(self._features(steps)))
         own = np.einsum("kff->kf", self.given)
-        seen = own * ((weights - self.prior.mean) ** 2 + np.einsum("kff->kf", inverse))
-        columns = np.empty((2, weights.shape[0]))
+        seen = own * ((now.weights - self.prior.mean) ** 2 + np.einsum("kff->kf", now.inverse))
+        columns = np.empty((seen.shape[0], 2))
         for kind in (0, 1):
-            columns[:, kind::2] = seen[kind::2, 1:3].mean(axis=0)[:, None]
-        grown = np.stack([columns[0] ** u * columns[1] ** v for u, v in _POWERS[3:]], axis=1)
-        bends = (seen[:, 3:] / grown).sum(axis=1)
-        self._rescale(columns, (self.freedom + bends) / (self.freedom + grown.shape[1]))
+            columns[kind::2] = seen[kind::2, 1:3].mean(axis=0)
+        grown = np.exp(np.log(columns) @ _POWERS[3:].T)
+        bends = (freedom + np.sum(seen[:, 3:] / grown, axis=1)) / (freedom + grown.shape[1])
+        by = np.ones_like(seen)
+        by[:, 1:3] = 1.0 / np.sqrt(columns)
+        by[:, 3:] = 1.0 / np.sqrt(grown * bends[:, None])
+        self.precision = self.given * by[:, :, None] * by[:, None, :]
+        self.pull = np.einsum("kfg,kg->kf", self.precision, self.prior.mean)
 
-    def _features(self, steps: Array) -> Array:
-        return features(self.walk.steps @ steps - self.prior.anchor)
+    def better(self, now: _Trial) -> _Trial | None:
+        """Make one Gauss-Newton step, shortened until it lowers the cost; None where none does."""
+        change = self._newton(now)
+        for shorter in (1.0, 0.35, 0.1, 0.02):
+            tried = self.at(now.steps + shorter * change)
+            if tried.cost <= now.cost:
+                return tried
+        return None
 
-    def _normal(self, phi: Array) -> Array:
-        outer = (phi[:, :, None] * phi[:, None, :]).reshape(phi.shape[0], -1)
-        flat = self.weight.T @ outer
-        return self.precision + flat.reshape(-1, FEATURES, FEATURES)
-
-    def weights(self, steps: Array) -> tuple[Array, float]:
-        """Give the best weights for given steps, and the cost."""
-        phi = self._features(steps)
-        right = (self.weight * self.walk.parts).T @ phi + self.pull
-        normal = self._normal(phi)
-        best = np.linalg.solve(normal, right[..., None])[..., 0]
-        cost = self.misfit(steps, best)
-        if self.marginal:
-            cost += float(np.sum(np.linalg.slogdet(normal)[1]))
-        return best, cost
-
-    def misfit(self, steps: Array, weights: Array) -> float:
-        """Give the sum of squares of the joint problem."""
-        miss = self.walk.parts - self._features(steps) @ weights.T
-        off = weights - self.prior.mean
-        slip = (steps - self.walk.expected) / self.walk.sigma
-        return float(
-            np.sum(self.weight * miss * miss)
-            + np.einsum("kf,kfg,kg->", off, self.precision, off)
-            + slip @ slip
-        )
-
-    def _coupled(self, steps: Array, weights: Array) -> tuple[Array, Array, Array, Array]:
-        """Give inverse normal matrices, their coupling to the steps, the Schur complement, D."""
-        at = self.walk.steps @ steps - self.prior.anchor
-        phi = features(at)
-        by_place = np.einsum("iaf,kf->ika", slopes(at), weights)
-        by_step = by_place @ self.walk.steps
+    def _coupled(self, now: _Trial) -> tuple[Array, Array, Array, Array]:
+        """Give slopes, how the weights follow the steps, the Schur complement, weighted slopes."""
+        turn = slopes(self.walk.steps @ now.steps - self.prior.anchor)
+        by_step = (turn @ now.weights.T).transpose(0, 2, 1) @ self.walk.steps
         weighted = self.weight[..., None] * by_step
-        inverse = np.asarray(np.linalg.inv(self._normal(phi)), dtype=np.float64)
-        coupling = np.einsum("if,ikj->kfj", phi, weighted)
-        through = inverse @ coupling
-        n = steps.size
-        rows = phi.shape[0] * weights.shape[0], weights.size
-        direct = by_step.reshape(rows[0], n).T @ weighted.reshape(rows[0], n)
-        shared = coupling.reshape(rows[1], n).T @ through.reshape(rows[1], n)
-        schur = direct + np.diag(1.0 / self.walk.sigma**2) - shared
-        return inverse, through, schur, weighted
+        coupling = np.tensordot(now.phi, weighted, axes=(0, 0)).transpose(1, 0, 2)
+        through = now.inverse @ coupling
+        n = now.steps.size
+        places, weights = now.miss.size, now.weights.size
+        direct = by_step.reshape(places, n).T @ weighted.reshape(places, n)
+        shared = coupling.reshape(weights, n).T @ through.reshape(weights, n)
+        return turn, through, direct + np.diag(1.0 / self.walk.sigma**2) - shared, weighted
 
-    def newton(self, steps: Array, weights: Array) -> Array:
-        """Give the Gauss-Newton change of the steps (weights already at their best for them)."""
-        inverse, _, schur, weighted = self._coupled(steps, weights)
-        phi = self._features(steps)
-        miss = self.walk.parts - phi @ weights.T
-        slope = np.einsum("ik,ikj->j", miss, weighted)
-        slope -= (steps - self.walk.expected) / self.walk.sigma**2
+    def _newton(self, now: _Trial) -> Array:
+        """Give the Gauss-Newton change of the steps."""
+        turn, _, schur, weighted = self._coupled(now)
+        n = now.steps.size
+        slope = now.miss.reshape(-1) @ weighted.reshape(-1, n)
+        slope -= (now.steps - self.walk.expected) / self.walk.sigma**2
         if self.marginal:
-            turn = slopes(self.walk.steps @ steps - self.prior.anchor)
-            held = np.einsum("ik,kfg->ifg", self.weight, inverse)
-            by_place = np.einsum("if,ifg,iag->ia", phi, held, turn)
-            slope -= np.einsum("ia,iaj->j", by_place, self.walk.steps)
+            # Half the slope of the log determinants: phi' A^-1 dphi / R, summed over parts.
+            flat = now.inverse.reshape(now.inverse.shape[0], -1)
+            held = (self.weight @ flat).reshape(-1, FEATURES, FEATURES)
+            by_place = turn @ (held @ now.phi[..., None])
+            slope -= by_place.reshape(-1) @ self.walk.steps.reshape(-1, n)
         return np.asarray(np.linalg.solve(schur, slope))
 
-    def found(self, steps: Array, weights: Array, converged: bool) -> Found:
+    def found(self, now: _Trial, converged: bool) -> Found:
         """Put the result together."""
-        inverse, through, schur, _ = self._coupled(steps, weights)
+        _, through, schur, _ = self._coupled(now)
         spread = np.asarray(np.linalg.inv(schur), dtype=np.float64)
-        places = self.walk.steps @ steps
+        places = self.walk.steps @ now.steps
         shift = shift_matrix(places[-1] - self.prior.anchor)
-        local = weights @ shift.T
-        inverse = shift @ inverse @ shift.T
+        local = now.weights @ shift.T
+        inverse = shift @ now.inverse @ shift.T
         moved = np.einsum("akf,as->kfs", derivative_weights(local), self.walk.steps[-1])
         through = moved - shift @ through
         covariance = inverse + through @ spread @ through.transpose(0, 2, 1)
@@ -251,10 +253,10 @@ class _Problem:
             belief=FieldBelief(np.zeros(2), local, covariance),
             given_steps=inverse,
             through_steps=through,
-            steps=steps,
+            steps=now.steps,
             steps_covariance=spread,
             places=places - places[-1],
             last=places[-1],
-            misfit=self.misfit(steps, weights),
+            misfit=now.misfit,
             converged=converged,
         )
