@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
@@ -52,6 +53,8 @@ def run_tune(
     from trimmer.screen.options import Options
     from trimmer.screen.pictures.raster import Dots
 
+    for stale in ("COLUMNS", "LINES"):
+        os.environ.pop(stale, None)  # exported by some shells; they would pin the screen's size
     dots = Dots.BRAILLE if braille else Dots.BLOCK
     options = Options(source, cautions, hand, travel, bell, dots, wait_to_close, dark)
     try:
