@@ -66,13 +66,15 @@ def _fit_from(record: Record, w: float, orders: int, unsure: float = 0.0) -> Fit
     most = min(most, (record.count - 4) // 3)
     if most < FEWEST_ORDERS:
         return None
-    near, wander = approach(record, most, w, unsure)
-    if near <= 0.0:
+    near = approach(record, most, w, unsure)
+    if near.w <= 0.0:
         return None
-    most = min(most, max(kept_orders(max(MOST_ORDERS, orders), near), FEWEST_ORDERS))
-    slow = [slow_line(record.count)] if wander > _WANDERS else []
-    found = fit(record, Lines(most, np.array(slow)), near)
-    usable = 0.0 < found.w * most < math.pi and bool(np.isfinite(found.phasors).all())
+    wanted = min(most, max(kept_orders(max(MOST_ORDERS, orders), near.w), FEWEST_ORDERS))
+    slow = [slow_line(record.count)] if near.wander > _WANDERS else []
+    lines = Lines(wanted, np.array(slow))
+    start = near.projections if slow else near.projections.on_orders()
+    found = fit(record, lines, near.w, start if start.lines.orders == wanted else None)
+    usable = 0.0 < found.w * wanted < math.pi and bool(np.isfinite(found.phasors).all())
     firm = 1e-6 * abs(complex(found.phasors[1])) ** 2 * record.count**3 / 24.0
     return found if usable and found.stiffness > firm else None
 

@@ -15,12 +15,13 @@ import numpy as np
 
 from trimmer.measurement.kernels import Array
 from trimmer.measurement.model import Complex, Lines, Normal, normal_equations
-from trimmer.measurement.projection import Projections, Record, project
+from trimmer.measurement.projection import SHORT, Projections, Record, project
 from trimmer.measurement.search import beat
 
 _BLUR = 3e-6
-"""Turn of the highest order within half a block (rad) below which moments carry the sums exactly:
-the neglected term is a sixth of its square."""
+"""Most that the highest order may turn within half a block (rad) between projection and fit."""
+_BLUR_OF_MOMENTS = 1e-8
+"""The same, times the block's share of the record."""
 _STEPS = 30
 _ROUNDS = 8
 _GRAIN = 1e-14
@@ -208,7 +209,19 @@ def _refine(
     return w, False, solved
 
 
-def approach(record: Record, orders: int, w: float, unsure: float = 0.0) -> tuple[float, float]:
+@dataclass(frozen=True, slots=True, eq=False)
+class Approach:
+    """A frequency close enough for a fit with all orders."""
+
+    w: float
+    """Radians per sample; 0 where it ran away."""
+    wander: float
+    """Size of the slow line over the fundamental."""
+    projections: Projections
+    """Of all orders in a short record, of a few in a long one, and of the slow line."""
+
+
+def approach(record: Record, orders: int, w: float, unsure: float = 0.0) -> Approach:
     """Bring a coarse frequency to within the reach of a fit with all orders.
 
     Few orders are fitted first, more are taken in as the frequency gets better. A slow line stands
@@ -227,31 +240,32 @@ def approach(record: Record, orders: int, w: float, unsure: float = 0.0) -> tupl
 
     Returns
     -------
-    tuple
-        The frequency (0 where it runs away), and the slow line over the fundamental.
+    Approach
+        Where it got to.
     """
     stages = [stage for stage in _STAGES if stage < orders] or [orders]
+    most = orders if record.count <= SHORT else stages[-1]
     slow = np.array([slow_line(record.count)])
-    projections = project(record, Lines(stages[-1], slow), w)
+    projections = project(record, Lines(most, slow), w)
     if unsure > 0.0:
         w = beat(projections, 1, w, unsure)
     for stage in stages:
         w, _, solved = _refine(projections, w, stage, _ROUGH)
-        if not 0.0 < w < math.pi / stages[-1]:
-            return 0.0, 0.0
+        if not 0.0 < w < math.pi / most:
+            return Approach(0.0, 0.0, projections)
     sizes = np.hypot(*solved.amplitudes)
-    return w, float(sizes[-1]) / max(float(sizes[1]), 1e-300)
+    return Approach(w, float(sizes[-1]) / max(float(sizes[1]), 1e-300), projections)
 
 
 def slow_line(samples: int) -> float:
-    """Frequency of the line that stands for a wandering offset: a quarter period in the record.
+    """Frequency of the line that stands for a wandering offset: a twentieth of a period in the record.
 
     Its sine is nearly a straight line there, its cosine nearly a parabola.
     """
-    return 0.5 * math.pi / samples
+    return 0.1 * math.pi / samples
 
 
-def fit(record: Record, lines: Lines, w: float) -> Fit:
+def fit(record: Record, lines: Lines, w: float, start: Projections | None = None) -> Fit:
     """Fit `lines` to a record, starting from the fundamental `w` (radians per sample).
 
     Parameters
@@ -262,16 +276,28 @@ def fit(record: Record, lines: Lines, w: float) -> Fit:
         Orders and nuisance lines to fit.
     w
         Start, as `approach` gives it.
+    start
+        Projections on the very `lines` near `w`, where they are at hand.
     """
-    projections = project(record, lines, w)
+    projections = project(record, lines, w) if start is None else start
     w, _, solved = _refine(projections, w, None, _NEAR)
     for _ in range(4):
-        if projections.blur(w) > _BLUR:
+        if _is_blurred(projections, w):
             projections = project(record, lines, w)
         w, converged, solved = _refine(projections, w, None, _FINE, solved.inverse)
-        if projections.blur(w) <= _BLUR or not 0.0 < w < math.pi:
+        if not _is_blurred(projections, w) or not 0.0 < w < math.pi:
             break
     return _finished(projections, solved, w, converged)
+
+
+def _is_blurred(projections: Projections, w: float) -> bool:
+    """Say whether `w` is too far from where the blocks were projected.
+
+    The sums are off by a sixth of the blur's square; the moments, and with them the frequency, by
+    the blur itself times the block's share of the record.
+    """
+    blur = projections.blur(w)
+    return blur > _BLUR or blur * projections.length > _BLUR_OF_MOMENTS * projections.samples
 
 
 def _finished(projections: Projections, solved: Solution, w: float, converged: bool) -> Fit:

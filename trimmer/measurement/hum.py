@@ -113,7 +113,7 @@ def _scores(record: Record, fit: Fit, w: Array) -> Array:
     left = np.stack((data.real[2:], -data.imag[2:]))
     left -= (cross @ np.stack((fit.cosines, fit.sines))[:, :, None])[:, :, 0]
     room = fit.room(cross, itself)
-    usable = room > 1e-5 * fit.samples
+    usable = room > 1e-7 * fit.samples
     scores = np.where(usable, left**2 / np.where(usable, room, 1.0), 0.0).sum(axis=0)
     scaled: Array = scores / fit.variance
     return scaled

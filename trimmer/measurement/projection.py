@@ -9,7 +9,7 @@ frequency can be refined without touching the samples again.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -17,6 +17,8 @@ from numpy.typing import NDArray
 from trimmer.measurement.kernels import Array
 from trimmer.measurement.model import Complex, Lines
 
+SHORT = 1 << 15
+"""Up to this many samples a record counts as short."""
 _CHUNK = 1 << 16
 """Samples projected at a time: half a megabyte, so that a chunk stays in the cache."""
 
@@ -85,6 +87,16 @@ class Projections:
         second = self.centres @ first + np.einsum("ml,ml->l", turn, moments)
         return first.sum(axis=0), second
 
+    def on_orders(self) -> Projections:
+        """Give the same without the nuisance lines."""
+        keep = slice(0, self.lines.orders + 1)
+        return replace(
+            self,
+            lines=Lines(self.lines.orders, np.empty(0)),
+            sums=self.sums[:, keep],
+            moments=self.moments[:, keep],
+        )
+
     def blur(self, w: float) -> float:
         """Say how far the highest order turns within half a block between `self.w` and `w`."""
         return 0.5 * abs(w - self.w) * self.lines.orders * self.length
@@ -107,8 +119,13 @@ def twists(t: Array, lines: Lines, w: float) -> Complex:
 
 
 def block_length(samples: int) -> int:
-    """Choose B: about as many samples in a block as there are blocks, even, at least 16."""
-    return max(16, 2 * round(0.5 * float(np.sqrt(samples))))
+    """Choose B: about as many samples in a block as there are blocks, even.
+
+    In a short record the blocks are shorter: they are cheap there, and the shorter they are, the
+    further the frequency may move before the samples have to be projected again.
+    """
+    share = 0.5 if samples > SHORT else 0.2
+    return max(8, 2 * round(share * float(np.sqrt(samples))))
 
 
 def project(record: Record, lines: Lines, w: float) -> Projections:
