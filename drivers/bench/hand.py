@@ -13,6 +13,10 @@ SINGLE_TURN = 0.75
 """Turns of a common single-turn trim over its whole travel."""
 FINER = 3.5
 """How much finer a 25-turn trim is set than a single-turn one. Common practice, no source: 3 to 4."""
+UNHURRIED_S = 1.5
+"""A short turn is given this long."""
+SLOWEST = 0.05
+"""Slowest that a hand turns, share of its full speed."""
 OTHER = {"upper": "lower", "lower": "upper"}
 
 
@@ -105,8 +109,18 @@ class Hand:
         self._bench.turn(trim, made, seconds)
         return trim, made
 
-    def start(self, trim: str, sense: float) -> str:
-        """Begin to turn and go on until `stop`; sense is positive for clockwise.
+    def start(self, trim: str, sense: float, turns: float | None = None) -> str:
+        """Begin to turn and go on until `stop`.
+
+        Parameters
+        ----------
+        trim
+            Which was asked for.
+        sense
+            Positive for clockwise.
+        turns
+            Screw turns asked for, where they are known: a short turn is made slowly, in about
+            the time of a longer one. None turns at full speed.
 
         Returns
         -------
@@ -116,7 +130,10 @@ class Hand:
         self.stop()
         trim, sense = self._take(trim, 1.0 if sense > 0.0 else -1.0)
         self._turning = trim
-        self._bench.drive(trim, sense * self._speed)
+        speed = self._speed
+        if turns is not None:
+            speed = min(speed, max(abs(turns) / UNHURRIED_S, SLOWEST * speed))
+        self._bench.drive(trim, sense * speed)
         return trim
 
     def slow(self) -> None:

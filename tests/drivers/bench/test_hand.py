@@ -89,6 +89,14 @@ def test_a_following_hand_turns_at_its_speed_and_stops_a_reaction_late() -> None
     assert np.std(late) == pytest.approx(0.018, rel=0.1)
 
 
+def test_a_short_turn_is_made_slowly_and_a_long_one_no_faster_than_the_hand_can() -> None:
+    turner, screws = hand()
+    for turns, speed in ((0.03, 0.02), (0.5, 15.0 / 360.0), (1e-6, 0.05 * 15.0 / 360.0)):
+        turner.start("upper", 1.0, turns)
+        assert screws.said.pop() == ("drive", "upper", pytest.approx(speed))
+        turner.stop()
+
+
 def test_it_slows_down_when_told() -> None:
     turner, screws = hand()
     turner.start("lower", 1.0)
