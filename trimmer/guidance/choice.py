@@ -8,11 +8,11 @@ from typing import Final
 import numpy as np
 
 from trimmer.guidance import words
-from trimmer.guidance.outlook import Outlook
 from trimmer.guidance.estimate import Estimate
 from trimmer.guidance.field import Array
 from trimmer.guidance.general import column_scale
 from trimmer.guidance.hand import Hand
+from trimmer.guidance.outlook import Outlook
 from trimmer.guidance.record import Record
 
 FIRST_SHARE: Final = 0.08
@@ -87,15 +87,6 @@ def mirrored_way(parts: Array, column: Array) -> float:
     return 0.5 * float(both - apart)
 
 
-def with_play(record: Record, hand: Hand, trim: int, share: float) -> float:
-    """Add the play of the screw where the turn goes back on the trim's last one."""
-    last = record.last_sense(trim)
-    sense = 1 if share > 0 else -1
-    if last == 0:
-        return share + 0.5 * sense * hand.backlash
-    return share + sense * hand.backlash if last != sense else share
-
-
 def choose(
     est: Estimate, record: Record, hand: Hand, trims: tuple[int, ...] = (0, 1)
 ) -> Choice | None:
@@ -114,4 +105,4 @@ def choose(
     reason = words.RISES if rises else words.NEARER
     if thd < 1.1 * est.floor_thd:
         reason = words.LAST_BIT
-    return Choice(trim, with_play(record, hand, trim, way), way, thd, rises, reason)
+    return Choice(trim, est.habit.to_ask(record.moves, trim, way), way, thd, rises, reason)

@@ -7,18 +7,19 @@ from dataclasses import dataclass
 import numpy as np
 
 from trimmer.guidance.aim import Aim, Box
-from trimmer.guidance.explain import explain
+from trimmer.guidance.explain import Movement, explain
 from trimmer.guidance.field import Array, FieldBelief, features
 from trimmer.guidance.floor import floor_at
 from trimmer.guidance.general import general_belief
+from trimmer.guidance.habit import Habit, habit
 from trimmer.guidance.hand import Hand
 from trimmer.guidance.memory import KindPrior
 from trimmer.guidance.path import Found, Walk, find_walk
 from trimmer.guidance.record import Record
 
 GENERAL_FREEDOM = 3.0
-KIND_UNEVEN = 0.1
-"""Relative scatter of a turn in the scale of a kind: units differ in how their tracks are wound."""
+KIND_SCALE = 0.12
+"""Spread over units of a kind of how far a turn goes in the kind's scale, relative."""
 START_SIGMA = 0.3
 """Where a unit's trims stand from their best before anything is turned, share of the travel."""
 
@@ -44,6 +45,8 @@ class Estimate:
     """THD there, ratio."""
     floor_sigma: float
     """Its standard uncertainty."""
+    habit: Habit
+    """Scale and play of the trims."""
     known: tuple[bool, bool]
     """Whether each trim's column is known: from turning it, or from its kind."""
 
@@ -74,7 +77,8 @@ def estimate(
     before
         The estimate before the last reading, to start the search from.
     """
-    walk = record.walk(hand)
+    scale_sigma = 0.0 if kind is None else KIND_SCALE
+    walk = record.walk(hand, scale_sigma)
     start = None if before is None else _start(record, walk, before)
     found = _general(walk, start) if kind is None else _with_kind(walk, kind, start)
     here = np.zeros(2)
@@ -89,21 +93,24 @@ def estimate(
         best=best,
         floor_thd=floor,
         floor_sigma=sigma,
-        known=_known(record, found.belief, kind is not None),
+        habit=habit(record.moves, hand, scale_sigma, found.steps[-len(record.moves) :]),
+        known=_known(record, kind is not None),
     )
 
 
 def _start(record: Record, walk: Walk, before: Estimate) -> Array:
     """Give the steps found before, and the last one as the field before explains its reading."""
     steps = before.found.steps
-    if not record.moves or before.found.places.shape[0] == len(record.places):
+    added = len(record.places) - before.found.places.shape[0]
+    if added == 0 or not record.moves:
         return steps
     last = record.moves[-1]
     step = float(walk.expected[-1])
     size = walk.parts.shape[1]
     if before.known[last.trim] and not last.dead and before.belief.mean.shape[0] == size:
-        span = 1.6 * abs(last.asked) + 0.02
-        step = explain(before.belief, walk.parts[-1], walk.variance[-1], last.trim, span).way
+        sigma = float(np.sqrt(walk.spread[-1, -1]))
+        thought = Movement(last.trim, step, 2.0 * sigma, 1.6 * abs(last.asked) + 0.02)
+        step = explain(before.belief, walk.parts[-1], walk.variance[-1], thought).way
     return np.append(steps, step)
 
 
@@ -120,14 +127,14 @@ def _with_kind(walk: Walk, kind: KindPrior, start: Array | None) -> Found:
     steps = np.zeros((walk.steps.shape[0], 2, n + 2))
     steps[:, 0, 0] = steps[:, 1, 1] = 1.0
     steps[:, :, 2:] = walk.steps - walk.steps[:1]
+    spread = np.diag(np.full(n + 2, START_SIGMA**2))
+    spread[2:, 2:] = walk.spread
     wide = Walk(
         parts=walk.parts,
         variance=walk.variance,
         steps=steps,
         expected=np.concatenate((np.zeros(2), walk.expected)),
-        sigma=np.concatenate(
-            (np.full(2, START_SIGMA), np.hypot(walk.sigma, KIND_UNEVEN * walk.expected))
-        ),
+        spread=spread,
     )
     if start is None:
         start = wide.expected.copy()
@@ -144,7 +151,7 @@ def _likely_start(parts: Array, variance: Array, prior: FieldBelief) -> Array:
     return np.asarray(_GRID[int(np.argmin(cost))])
 
 
-def _known(record: Record, belief: FieldBelief, kind: bool) -> tuple[bool, bool]:
+def _known(record: Record, kind: bool) -> tuple[bool, bool]:
     """Tell which columns are known: of trims that have answered, or of a unit of a known kind."""
     if kind:
         return True, True

@@ -16,7 +16,6 @@ from trimmer.guidance.choice import (
     crest_weights,
     first_size,
     mirrored_way,
-    with_play,
     worse_crest,
 )
 from trimmer.guidance.estimate import Estimate, estimate
@@ -24,7 +23,10 @@ from trimmer.guidance.field import Array, shift_matrix
 from trimmer.guidance.following import Following, Lag
 from trimmer.guidance.hand import Hand, hand_for
 from trimmer.guidance.memory import KindPrior, Learned
-from trimmer.guidance.record import Move, Record, other_ways, with_last
+from trimmer.guidance.moves import Move
+from trimmer.guidance.rails import Verdict as Explanation
+from trimmer.guidance.rails import is_dead, look_into
+from trimmer.guidance.record import Record
 from trimmer.guidance.remainder import remainder
 from trimmer.guidance.seen import Seen, seen, seen_document, seen_from
 from trimmer.measurement.reading import Reading
@@ -83,7 +85,7 @@ class Guide:
         self._pending: Choice | None = None
         self._confirmed = False
         self._skipped: int | None = None
-        self._kind_holds = prior is not None
+        self._kind = prior
         self._notice = ""
         self._following: Following | None = None
         self._lag = Lag()
@@ -301,61 +303,46 @@ class Guide:
     def _turned(self, one: Seen, stopped: bool, way: float | None) -> None:
         assert self._pending is not None
         asked = self._pending.share
-        move = Move(self._pending.trim, asked, stopped=stopped, seen_share=way)
+        move = Move(self._pending.trim, asked, stopped=stopped, followed=way)
         before = self._record.here
         self._record.add(move, one)
         self._pending = None
         self._confirmed = False
         self._skipped = None
-        if self._changed_nothing(before, one, move):
-            self._record.change_last(replace(move, dead=True, seen_share=None))
-
-    def _changed_nothing(self, before: Seen, after: Seen, move: Move) -> bool:
-        size = min(before.parts.size, after.parts.size)
-        change = after.parts[:size] - before.parts[:size]
-        variance = after.variance[:size] + before.variance[:size]
-        chance = float(np.sum(change**2 / variance))
-        if chance > size + 4.0 * float(np.sqrt(2.0 * size)):
-            return False
-        est = self._estimate
-        if est is None or not est.known[move.trim]:
-            return True
-        column = est.belief.columns(est.here)[move.trim, :size]
-        due = float(np.sum((column * move.asked) ** 2 / variance))
-        return due > 16.0 * (size + 4.0 * float(np.sqrt(2.0 * size)))
+        if self._estimate is not None and is_dead(before, one, move, self._estimate):
+            self._record.change_last(replace(move, dead=True, followed=None))
 
     def _think(self) -> None:
-        kind = self.prior if self._kind_holds else None
         before = self._estimate
-        est = estimate(self._record, self._hand, kind, before)
-        self._estimate = est
-        if before is None or not self._record.moves:
-            return
-        last = self._record.moves[-1]
-        surprise = est.found.misfit - before.found.misfit
-        if len(self._record.places[-1]) > 1 or last.dead or surprise < 3.0 * est.here.size + 90.0:
-            return
-        self._other_explanation(est, last, kind)
+        if before is not None and len(self._record.places[-1]) == 1 and self._record.moves:
+            self._look_into(before)
+            before = self._estimate
+        self._estimate = estimate(self._record, self._hand, self._kind, before)
 
-    def _other_explanation(self, est: Estimate, last: Move, kind: KindPrior | None) -> None:
-        """See whether another trim, another sense or another kind of unit explains a surprise."""
-        tried = [(est.found.misfit, last, est, self._kind_holds)]
-        for move in other_ways(last):
-            other = estimate(with_last(self._record, move), self._hand, kind)
-            tried.append((other.found.misfit + 12.0, move, other, self._kind_holds))
-        if kind is not None:
-            other = estimate(self._record, self._hand, None)
-            tried.append((other.found.misfit + 40.0, last, other, False))
-        _, move, best, holds = min(tried, key=lambda t: t[0])
-        if self._kind_holds and not holds:
-            self._notice = words.KIND_DIFFERS
-        elif move.trim != last.trim:
-            self._notice = words.WRONG_TRIM.format(trim=words.TRIMS[move.trim])
-        elif move.sense != last.sense:
-            self._notice = words.WRONG_WAY.format(trim=words.TRIMS[move.trim])
-        self._kind_holds = holds
-        self._record.change_last(move)
-        self._estimate = best
+    def _look_into(self, before: Estimate) -> None:
+        """See whether another trim, another sense or another kind of unit explains the reading."""
+        moves = self._record.moves
+        last = moves[-1]
+        found = look_into(before, moves, self._hand, self._record.here)
+        trim = words.TRIMS[found.move.trim]
+        first = all(m.trim != last.trim or m.dead for m in moves[:-1])
+        match found.verdict:
+            case Explanation.WRONG_WAY if self._kind is not None and first:
+                self._kind = self._kind.turned(last.trim == 0, last.trim == 1)
+                self._notice = words.KIND_TURNED.format(trim=trim)
+                self._estimate = None
+            case Explanation.WRONG_WAY:
+                self._notice = words.WRONG_WAY.format(trim=trim)
+                self._record.change_last(found.move)
+            case Explanation.WRONG_TRIM:
+                self._notice = words.WRONG_TRIM.format(trim=trim)
+                self._record.change_last(found.move)
+            case Explanation.STRANGE if self._kind is not None:
+                self._kind = None
+                self._estimate = None
+                self._notice = words.KIND_DIFFERS
+            case _:
+                pass
 
     # ---- advice ------------------------------------------------------------------------------
 
@@ -411,7 +398,7 @@ class Guide:
             reason = words.OTHER_SENSE
         elif self._dead_turns(1 - trim):
             reason = words.OTHER_TRIM
-        share = with_play(self._record, self._hand, trim, way)
+        share = est.habit.to_ask(self._record.moves, trim, way)
         return Choice(trim, share, way, None, False, reason.format(trim=words.TRIMS[trim]))
 
     def _dead_turns(self, trim: int) -> int:
@@ -426,7 +413,7 @@ class Guide:
         last = self._record.moves[-1]
         made = float(est.found.steps[-1])
         way = -made if abs(made) > 1e-6 else -last.asked
-        share = with_play(self._record, self._hand, last.trim, way)
+        share = est.habit.to_ask(self._record.moves, last.trim, way)
         thd = self._record.places[-2][0].thd
         choice = Choice(last.trim, share, way, thd, False, words.BACK)
         return replace(self._ask(choice), going_back=True)

@@ -182,7 +182,7 @@ class KindPrior:
         mean, spread, count = _robust_mean(values, own, _usual_spread(orders))
         trust = count[:, None, None] / (own + spread)
         sigma = np.sqrt(spread + 1.0 / trust.sum(axis=0))
-        return cls(orders, _with_own_bend(mean, raw, template, count), sigma, len(units))
+        return cls(orders, _with_own_scale(mean, raw, template, count), sigma, len(units))
 
 
 def _most_central(raw: Array) -> int:
@@ -219,13 +219,15 @@ def _robust_mean(values: Array, own: Array, usual: Array) -> tuple[Array, Array,
     return mean, spread, count
 
 
-def _with_own_bend(mean: Array, raw: Array, template: Array, count: Array) -> Array:
-    """Give the mean field the bend along each trim that units of the kind have in common."""
+def _with_own_scale(mean: Array, raw: Array, template: Array, count: Array) -> Array:
+    """Give the mean field the scale, and the bend along each trim, that units have in common."""
     warps = []
     for trim in (0, 1):
-        bends = [own_bend(w, trim) * _same_way(to_plain(w, template)[trim]).scale for w in raw]
-        total = float(np.sum(count)) + 1.0 / BEND_SPREAD**2
-        warps.append(Warp(1.0, float(np.sum(count * np.array(bends))) / total))
+        scales = np.array([_same_way(to_plain(w, template)[trim]).scale for w in raw])
+        bends = np.array([own_bend(w, trim) for w in raw]) * scales
+        scale = float(np.exp(-(count @ np.log(scales)) / count.sum()))
+        bend = float(count @ bends) / (float(count.sum()) + 1.0 / BEND_SPREAD**2)
+        warps.append(Warp(scale, scale**2 * bend))
     return np.asarray(mean @ warp_matrix(warps[0], warps[1]).T)
 
 

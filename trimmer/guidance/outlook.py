@@ -18,6 +18,7 @@ from trimmer.guidance.aim import Aim
 from trimmer.guidance.estimate import Estimate
 from trimmer.guidance.field import Array, features
 from trimmer.guidance.hand import Hand
+from trimmer.guidance.moves import last_sense
 from trimmer.guidance.record import Record
 
 CLOSE_SHARE: Final = 0.02
@@ -76,7 +77,7 @@ class Outlook:
     def noise(self, trim: int, way: float) -> float:
         """Give the standard deviation of a turn, share of the travel."""
         sigma = self.hand.sigma(way)
-        last = self.record.last_sense(trim)
+        last = last_sense(self.record.moves, trim)
         if last and last != (1 if way > 0 else -1):
             sigma = float(np.hypot(sigma, self.hand.backlash_sigma))
         return sigma

@@ -3,14 +3,14 @@
 Unknown are the turns really made (asked for, but made by a hand) and the field. Both are found at once
 by Gauss-Newton on the logarithm of their joint probability,
 
-    sum_i |y_i - f(x_i)|^2_{R_i} + sum_k |w_k - w0_k|^2_{C_k} + sum_j (s_j - mu_j)^2 / sigma_j^2,
+    sum_i |y_i - f(x_i)|^2_{R_i} + sum_k |w_k - w0_k|^2_{C_k} + |s - mu|^2_S,
 
 where `s` holds the start and the turns and `x_i` is their running sum. Parts are taken as independent
 of each other given the turns, so the weights fall into one small system for each part and only the few
 turns couple them (a Schur complement). With `marginal` the field is integrated out, not chosen along
 with the steps: the logarithm of the determinants of those small systems is added. It keeps a start
-that is not known from drifting to where the field may be anything. No reading is forgotten: one taken far away counts for less by
-itself, since the belief lets the field bend in between.
+that is not known from drifting to where the field may be anything. No reading is forgotten: one taken
+far away counts for less by itself, since the belief lets the field bend in between.
 """
 
 from __future__ import annotations
@@ -30,9 +30,9 @@ from trimmer.guidance.field import (
     slopes,
 )
 
-
 _POWERS: Final = np.array(
-    [(0, 0), (1, 0), (0, 1), (2, 0), (1, 1), (0, 2), (3, 0), (2, 1), (1, 2), (0, 3)], dtype=np.float64
+    [(0, 0), (1, 0), (0, 1), (2, 0), (1, 1), (0, 2), (3, 0), (2, 1), (1, 2), (0, 3)],
+    dtype=np.float64,
 )
 """Powers of the upper and of the lower position in each feature."""
 RESTS: Final = 0.02
@@ -53,8 +53,8 @@ class Walk:
     """Shape (n, 2, s), how each place follows from the unknown steps: ``x_i = steps_i @ s``."""
     expected: Array
     """Shape (s,), steps as expected, shares of the travel."""
-    sigma: Array
-    """Shape (s,), their standard deviations."""
+    spread: Array
+    """Shape (s, s), their covariance."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -157,6 +157,7 @@ class _Problem:
         self.walk = walk
         self.prior = prior
         self.weight = 1.0 / walk.variance
+        self.held = np.asarray(np.linalg.inv(walk.spread), dtype=np.float64)
         self.weighted_parts = self.weight * walk.parts
         self.given = np.asarray(np.linalg.inv(prior.covariance), dtype=np.float64)
         self.precision = self.given
@@ -172,11 +173,11 @@ class _Problem:
         weights = (inverse @ right[..., None])[..., 0]
         miss = self.walk.parts - phi @ weights.T
         off = weights - self.prior.mean
-        slip = (steps - self.walk.expected) / self.walk.sigma
+        slip = steps - self.walk.expected
         misfit = float(
             np.sum(self.weight * miss * miss)
             + np.sum(off * (self.precision @ off[..., None])[..., 0])
-            + slip @ slip
+            + slip @ self.held @ slip
         )
         cost = misfit
         if self.marginal:
@@ -222,14 +223,14 @@ class _Problem:
         places, weights = now.miss.size, now.weights.size
         direct = by_step.reshape(places, n).T @ weighted.reshape(places, n)
         shared = coupling.reshape(weights, n).T @ through.reshape(weights, n)
-        return turn, through, direct + np.diag(1.0 / self.walk.sigma**2) - shared, weighted
+        return turn, through, direct + self.held - shared, weighted
 
     def _newton(self, now: _Trial) -> Array:
         """Give the Gauss-Newton change of the steps."""
         turn, _, schur, weighted = self._coupled(now)
         n = now.steps.size
         slope = now.miss.reshape(-1) @ weighted.reshape(-1, n)
-        slope -= (now.steps - self.walk.expected) / self.walk.sigma**2
+        slope -= self.held @ (now.steps - self.walk.expected)
         if self.marginal:
             # Half the slope of the log determinants: phi' A^-1 dphi / R, summed over parts.
             flat = now.inverse.reshape(now.inverse.shape[0], -1)

@@ -33,6 +33,7 @@ END_OF_TRAVEL = (
 STOP_MET = "The {trim} trim is at its end."
 WRONG_TRIM = "It was the {trim} trim that moved; the guide goes on from there."
 WRONG_WAY = "The {trim} trim went the other way; the guide goes on from there."
+KIND_TURNED = "In this unit the {trim} trim works the other way round than in others of its kind."
 KIND_DIFFERS = "This unit answers differently from its kind; it is learned afresh."
 SWAPPED = "The trim called upper shapes the lower crest, and the other way round."
 DRIFTING = "The reading moves while nobody turns: still warming up?"

@@ -1,0 +1,35 @@
+"""A turn as it was asked for, and what became of it."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+
+@dataclass(frozen=True, slots=True)
+class Move:
+    """A turn as it was asked for and what became of it."""
+
+    trim: int
+    """0 upper, 1 lower, as the person has labelled them."""
+    asked: float
+    """Signed share of the travel, plus is clockwise."""
+    stopped: bool = False
+    """Whether the trim would not go further."""
+    followed: float | None = None
+    """Signed share of the travel really made, as seen while it was followed."""
+    dead: bool = False
+    """Whether nothing changed: the turn did not reach the wiper."""
+
+    @property
+    def sense(self) -> int:
+        """+1 for clockwise, -1 for counter-clockwise."""
+        return 1 if self.asked > 0 else -1
+
+
+def last_sense(moves: Sequence[Move], trim: int) -> int:
+    """Give the sense in which a trim was turned last, 0 where it was not."""
+    for move in reversed(moves):
+        if move.trim == trim and not move.dead:
+            return move.sense
+    return 0

@@ -1,0 +1,132 @@
+"""Guard rails: a turn that changed nothing, another screw, another way, another kind of unit."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+from enum import Enum
+from typing import Final
+
+import numpy as np
+
+from trimmer.guidance.estimate import Estimate
+from trimmer.guidance.explain import Explained, Movement, explain
+from trimmer.guidance.field import Array
+from trimmer.guidance.general import column_scale
+from trimmer.guidance.habit import expected_moves
+from trimmer.guidance.hand import Hand
+from trimmer.guidance.moves import Move
+from trimmer.guidance.seen import Seen
+
+CHANCE: Final = 3.0
+"""A change within so many standard deviations of none is none."""
+DUE: Final = 8.0
+"""A turn must be due to change the reading by so many times that, for no change to mean anything."""
+MISTAKE: Final = 12.0
+"""How much better a mistake must explain a reading than the turn asked for: hands err in about one turn
+of fifty (a guess), and a wrong alarm costs more than a late one."""
+STRANGE: Final = 8.0
+"""Standard deviations of misfit from which on no turn of a unit of this kind explains a reading."""
+
+
+def is_no_change(before: Seen, after: Seen) -> bool:
+    """Tell whether two readings differ by no more than chance."""
+    return _excess(before, after)[0] < CHANCE
+
+
+def _excess(before: Seen, after: Seen) -> tuple[float, Array]:
+    """How far the squared change stands above chance, in standard deviations; its variances."""
+    size = min(before.parts.size, after.parts.size)
+    variance = after.variance[:size] + before.variance[:size]
+    square = float(np.sum((after.parts[:size] - before.parts[:size]) ** 2 / variance))
+    return (square - size) / float(np.sqrt(2.0 * size)), variance
+
+
+def is_dead(before: Seen, after: Seen, move: Move, est: Estimate) -> bool:
+    """Tell whether a turn that was due to change the reading changed nothing."""
+    excess, variance = _excess(before, after)
+    if excess >= CHANCE:
+        return False
+    size = variance.size
+    column = column_scale(size // 2 + 1)
+    if est.known[move.trim]:
+        column = est.belief.columns(est.here)[move.trim, :size]
+    way = max(0.0, abs(move.asked) - est.habit.play[move.trim])
+    due = float(np.sum((column * way) ** 2 / variance)) / float(np.sqrt(2.0 * size))
+    return due > DUE * CHANCE
+
+
+class Verdict(Enum):
+    """How a reading after a turn is best explained."""
+
+    AS_ASKED = "as asked"
+    WRONG_TRIM = "wrong trim"
+    WRONG_WAY = "wrong way"
+    STRANGE = "strange"
+
+
+@dataclass(frozen=True, slots=True)
+class Finding:
+    """The best explanation of a reading after a turn."""
+
+    verdict: Verdict
+    move: Move
+    """The turn as it was probably made."""
+
+
+def look_into(before: Estimate, moves: Sequence[Move], hand: Hand, after: Seen) -> Finding:
+    """Explain a reading after the last of some moves, by the field as it was known before.
+
+    Only columns that were known can speak. A turn of a trim of which nothing is known may do anything.
+
+    Parameters
+    ----------
+    before
+        The estimate before the turn.
+    moves
+        All moves, the last one led to the reading.
+    hand
+        Errors of the hand.
+    after
+        The reading.
+    """
+    last = moves[-1]
+    size = before.belief.mean.shape[0]
+    if last.dead or after.parts.size < size:
+        return Finding(Verdict.AS_ASKED, last)
+    asked = _explained(before, moves, hand, after, last)
+    best, found = asked.surprise, Finding(Verdict.AS_ASKED, last)
+    for verdict, move in _mistakes(last, before):
+        surprise = _explained(before, moves, hand, after, move).surprise + MISTAKE
+        if surprise < best:
+            best, found = surprise, Finding(verdict, move)
+    if found.verdict is Verdict.AS_ASKED and _strange(asked, size):
+        return Finding(Verdict.STRANGE, last)
+    return found
+
+
+def _strange(asked: Explained, size: int) -> bool:
+    return (asked.misfit - size) / float(np.sqrt(2.0 * size)) > STRANGE
+
+
+def _mistakes(last: Move, before: Estimate) -> list[tuple[Verdict, Move]]:
+    mistakes: list[tuple[Verdict, Move]] = []
+    if before.known[last.trim]:
+        mistakes.append((Verdict.WRONG_WAY, replace(last, asked=-last.asked)))
+    if before.known[1 - last.trim]:
+        other = replace(last, trim=1 - last.trim)
+        mistakes.append((Verdict.WRONG_TRIM, other))
+        mistakes.append((Verdict.WRONG_TRIM, replace(other, asked=-last.asked)))
+    return mistakes
+
+
+def _explained(
+    before: Estimate, moves: Sequence[Move], hand: Hand, after: Seen, move: Move
+) -> Explained:
+    size = before.belief.mean.shape[0]
+    expected = expected_moves([*moves[:-1], move], hand, 0.1)
+    sigma = float(np.sqrt(expected.covariance[-1, -1]))
+    thought = Movement(
+        move.trim, float(expected.steps[-1]), sigma, 1.6 * abs(move.asked) + 3.0 * hand.jitter
+    )
+    return explain(before.belief, after.parts[:size], after.variance[:size], thought)
