@@ -16,8 +16,9 @@ from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Fie
 
 from drivers.visa.formula import Formula
 
-BUILT_IN = frozenset({"channel", "points_read"})
-"""Fields every formula may use: the channel asked for, and how many samples came."""
+BUILT_IN = frozenset({"channel", "encoding", "points_read"})
+"""Fields every formula may use: the channel asked for, the place of the encoding chosen in the
+dialect's list (0 is the first), and how many samples came."""
 
 
 def _formula(written: Any) -> Formula:
@@ -132,6 +133,10 @@ class Encoding(Part):
     """How it is called in messages."""
     send: list[Command] = []
     """Commands that choose it."""
+    ask: Command | None = None
+    """Asked after them, where an instrument may take them without a word and do otherwise."""
+    matches: Pattern | None = None
+    """The answer to that, when it was chosen."""
 
 
 class Acquire(Part):
@@ -234,6 +239,15 @@ class Refuse(Part):
     """What to do."""
 
 
+class Remark(Part):
+    """Something to be said of a capture that can be used all the same."""
+
+    when: FormulaText
+    """True then; not said where a field it needs is missing."""
+    say: str
+    """What is said."""
+
+
 class Codes(Part):
     """How the bytes of the data are numbers."""
 
@@ -279,10 +293,12 @@ class Length(Part):
     """Asked for when nobody says; without it nothing is asked for then."""
     keep: list[Command] = []
     """Settings touched where this changes the acquisition itself; put back at the end."""
-    slice: list[Annotated[str, _command("first", "last")]] = []
-    """Asks for samples `{first}` to `{last}`, counted from 1, each slice a block of its own."""
-    slice_points: Annotated[int, Field(ge=100)] = 250_000
-    """Longest slice."""
+    window: list[Annotated[str, _command("first", "last")]] = []
+    """Asks for samples `{first}` to `{last}`, counted from 1; where the instrument knows it."""
+    window_points: Annotated[int, Field(ge=100)] = 125_000
+    """Most samples of one block: a longer record comes in blocks one after the other."""
+    record: FormulaText | None = None
+    """Samples of the record, where they can be told before the preamble."""
 
 
 class Average(Part):
@@ -335,6 +351,7 @@ class Dialect(Part):
     also: dict[Name, Command] = {}
     """Fields asked for apart, where the instrument knows them."""
     refuse: list[Refuse] = []
+    remark: list[Remark] = []
     data: Command
     """The query for the samples."""
     codes: Codes
@@ -364,7 +381,9 @@ class Dialect(Part):
             ("codes.hole", self.codes.hole, none),
             ("codes.low", self.codes.low, none),
             ("codes.high", self.codes.high, none),
+            ("length.record", self.length.record if self.length else None, none),
             *[(f"refuse[{k}].when", item.when, none) for k, item in enumerate(self.refuse)],
+            *[(f"remark[{k}].when", item.when, none) for k, item in enumerate(self.remark)],
         ]
         return [(place, formula, extra) for place, formula, extra in listed if formula is not None]
 
@@ -398,6 +417,9 @@ def faults_between_parts(dialect: Dialect) -> list[tuple[str, str]]:
             )
         if acquire.poll is None and acquire.finish is None:
             faults.append((f"acquire[{index}]", "needs `finish` or `poll`"))
+    for index, encoding in enumerate(dialect.encoding):
+        if (encoding.ask is None) != (encoding.matches is None):
+            faults.append((f"encoding[{index}]", "`ask` and `matches` need each other"))
     find = dialect.find
     if find is not None:
         if find.numbers is None and find.matches is None and not find.carries_preamble:

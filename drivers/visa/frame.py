@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
+import contextlib
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -50,6 +51,8 @@ class Converted:
     """Samples at a rail or marked as out of range."""
     averaged: int
     """Frames averaged."""
+    remarks: tuple[str, ...] = ()
+    """What the dialect wants said."""
 
 
 def convert(dialect: Dialect, fields: Fields, payload: bytes, reading: Reading) -> Converted:
@@ -130,7 +133,17 @@ def _convert(dialect: Dialect, fields: Fields, payload: bytes, reading: Reading)
         raise SourceRefused(f"the preamble gives {interval_s:g} s between samples")
     averaged = max(1, int(dialect.scale.averaged.number(known)))
     scaled = _floats if dialect.codes.kind == "float" else _integers
-    return scaled(dialect, known, values, interval_s, averaged)
+    converted = scaled(dialect, known, values, interval_s, averaged)
+    return replace(converted, remarks=_remarks(dialect, known))
+
+
+def _remarks(dialect: Dialect, fields: Fields) -> tuple[str, ...]:
+    said = []
+    for remark in dialect.remark:
+        with contextlib.suppress(FormulaError):
+            if remark.when(fields):
+                said.append(remark.say)
+    return tuple(said)
 
 
 def _integers(

@@ -2,9 +2,15 @@
 
 from __future__ import annotations
 
-from drivers.contract import SourceRefused, SourceTimeout, clean
+import time
+
+from drivers.contract import SourceError, SourceRefused, SourceTimeout, clean
 from drivers.visa.conversation import Conversation
 
+SPEEDS = (9600, 115200, 57600, 38400, 19200)
+"""Speeds tried on a serial line, baud; a USB port that only looks like one takes any."""
+
+_EACH_S = 0.8
 _MOST = 500
 
 
@@ -33,6 +39,29 @@ def identify(talk: Conversation, deadline: float) -> str:
             "Check that this resource is an instrument that speaks SCPI.",
         )
     return told
+
+
+def identify_serial(talk: Conversation, deadline: float) -> tuple[str, int]:
+    """Ask for the identification at the usual speeds of a serial line, until one is answered.
+
+    Returns
+    -------
+    str, int
+        The identification, and the speed in baud.
+    """
+    last: SourceError | None = None
+    for baud in SPEEDS:
+        left = deadline - time.monotonic()
+        if left <= 0.0:
+            break
+        talk.link.resume()
+        talk.link.set_speed(baud)
+        try:
+            talk.link.freshen(deadline)
+            return identify(talk, time.monotonic() + min(_EACH_S, left)), baud
+        except (SourceTimeout, SourceRefused) as error:
+            last = error
+    raise last if last is not None else SourceTimeout("no time to ask for an identification")
 
 
 def same_instrument(one: str, other: str) -> bool:

@@ -17,6 +17,10 @@ class KeptSettings:
     def __init__(self) -> None:
         self._former: dict[str, str] = {}
 
+    def __bool__(self) -> bool:
+        """Say whether anything is to be put back."""
+        return bool(self._former)
+
     def keep(self, talk: Conversation, setting: str, deadline: float) -> str | None:
         """Read a setting before it is changed; only the first value counts.
 

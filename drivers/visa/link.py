@@ -28,6 +28,9 @@ _MOST_LINE = 1 << 24
 _OVERSTAY_S = 0.3
 """Seconds past its deadline after which a call is cut off from outside."""
 
+_QUIET_S = 0.1
+"""Seconds without a byte after which a serial line counts as silent."""
+
 _CLOSING_S = 0.5
 """Seconds a farewell may take."""
 
@@ -144,6 +147,12 @@ class Link:
         if not (self._guard.gone or self._guard.overdue or self._closed.is_set()):
             self.broken = False
 
+    def set_speed(self, baud: int) -> None:
+        """Set the speed of a serial line."""
+        if self.kind == "ASRL":
+            with self._bounded(time.monotonic() + 1.0, f"setting the speed to {baud}"):
+                self._session.baud_rate = baud
+
     # Ends ----------------------------------------------------------------------------------
 
     def freshen(self, deadline: float) -> None:
@@ -153,7 +162,11 @@ class Link:
         GPIB a device clear drops it, where the library has one.
         """
         if self.kind == "ASRL":
-            self.drain()
+            while self.drain():
+                if time.monotonic() + _QUIET_S > deadline:
+                    self.broken = True
+                    raise SourceTimeout(f"{self.resource} does not fall silent")
+                time.sleep(_QUIET_S)
         elif self.kind in ("USB", "GPIB"):
             with contextlib.suppress(SourceError), self._bounded(deadline, "clearing the device"):
                 self._wait_at_most(deadline)

@@ -32,6 +32,8 @@ class Known:
     """Sign of the codes where it was settled against text."""
     big_endian: bool | None = None
     """Byte order where it was settled against text."""
+    windows: bool | None = None
+    """False where it knows no windows on its record."""
     asks_errors: bool = True
     """False where it keeps no errors."""
     unanswered: tuple[str, ...] = ()
@@ -109,7 +111,7 @@ def _sound(entry: dict[str, Any]) -> bool:
     return (
         isinstance(entry.get("dialect"), str)
         and all(whole(entry.get(name)) for name in ("encoding", "acquire", "preamble"))
-        and all(truth(entry.get(name)) for name in ("signed", "big_endian"))
+        and all(truth(entry.get(name)) for name in ("signed", "big_endian", "windows"))
         and isinstance(entry.get("asks_errors", True), bool)
         and isinstance(entry.get("settled", ""), str)
         and isinstance(unanswered, list)

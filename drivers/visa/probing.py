@@ -7,6 +7,7 @@ query, so that a late answer does not pass for the answer to the next question.
 
 from __future__ import annotations
 
+import contextlib
 import time
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -125,8 +126,11 @@ def find_dialect(
 
     before = recall(settings_dir, identity)
     if name is not None:
-        known = before if before is not None and before.dialect == name else Known(name)
-        return ready(chosen(name, settings_dir), known, "named")
+        named = chosen(name, settings_dir)
+        if before is not None and before.dialect == name:
+            with contextlib.suppress(SourceRefused):  # what is remembered may hold no longer
+                return ready(named, before, "named")
+        return ready(named, Known(name), "named")
     dialects, faults = shelf(settings_dir)
     if before is not None and before.dialect in dialects:
         dialect = dialects[before.dialect]

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import threading
 import time
 from datetime import UTC, datetime
@@ -23,10 +24,10 @@ from drivers.contract import (
 )
 from drivers.visa.conversation import Conversation
 from drivers.visa.frame import Converted
-from drivers.visa.identity import identify, same_instrument
+from drivers.visa.identity import identify, identify_serial, same_instrument
 from drivers.visa.kept import KeptSettings
 from drivers.visa.link import Link, open_link
-from drivers.visa.memory import remember
+from drivers.visa.memory import Known, remember
 from drivers.visa.probing import Found, find_dialect
 from drivers.visa.ranging import fit_range
 from drivers.visa.settling import agree, settle
@@ -94,21 +95,25 @@ class InstrumentSource:
         self._channel = channel
         self._settings_dir = settings_dir
         self._set_range = set_range
+        self._to_fit = set_range
         self._turn = threading.Lock()
         self._closed = False
         self._last: bytes | None = None
+        self._seen: dict[str, str] = {}
         self._kept = KeptSettings()
-        self._speaker: Speaker | None = None
         deadline = time.monotonic() + timeout_s
         self._link: Link = open_link(resource, timeout_s)
         try:
             talk = Conversation(self._link, {"channel": channel})
-            self._identity = identify(talk, deadline)
+            self._speed: int | None = None
+            if self._link.kind == "ASRL":
+                self._identity, self._speed = identify_serial(talk, deadline)
+            else:
+                self._identity = identify(talk, deadline)
             # Finding a dialect takes as long as the silences in it; each has its own bound.
             self._found: Found = find_dialect(
                 talk, self._identity, dialect, channel, settings_dir, self._kept
             )
-            self._speaker = self._found.speaker
         except BaseException:
             self._link.close()
             raise
@@ -116,9 +121,7 @@ class InstrumentSource:
     @property
     def info(self) -> SourceInfo:
         """What this source is."""
-        settings = {"channel": str(self._channel)}
-        if self._found.how:
-            settings["dialect found"] = self._found.how
+        settings = {"channel": str(self._channel), "dialect found": self._found.how, **self._seen}
         return SourceInfo(
             name=self._name,
             identity=clean(self._identity),
@@ -151,8 +154,8 @@ class InstrumentSource:
         self._closed = True
         owned = self._turn.acquire(timeout=_LEAVING_S)
         try:
-            if owned and self._speaker is not None and not self._link.broken:
-                self._speaker.leave(time.monotonic() + _LEAVING_S)
+            if owned:
+                self._leave(time.monotonic() + _LEAVING_S)
         finally:
             self._link.close()
             if owned:
@@ -164,6 +167,14 @@ class InstrumentSource:
     def __exit__(self, *exc: object) -> None:
         self.close()
 
+    def _leave(self, deadline: float) -> None:
+        """Put back what was changed; a broken link is opened once more if there is need."""
+        with contextlib.suppress(SourceError):
+            if self._link.broken and self._kept:
+                self._reconnect(deadline)
+            if not self._link.broken:
+                self._found.speaker.leave(deadline)
+
     # Inside --------------------------------------------------------------------------------
 
     def _capture(self, request: CaptureRequest, deadline: float) -> Waveform:
@@ -172,16 +183,17 @@ class InstrumentSource:
         speaker.ask_average(max(1, request.average), deadline)
         if request.samples is not None:
             speaker.ask_points(request.samples, deadline)
-        if self._set_range:
-            self._set_range = False
+        if self._to_fit:
             fit_range(speaker, deadline)
-        frame, converted = self._fresh(speaker, deadline)
+            self._to_fit = False
+        frame, converted = self._fresh(deadline)
         return self._waveform(frame, converted)
 
-    def _fresh(self, speaker: Speaker, deadline: float) -> tuple[Frame, Converted]:
+    def _fresh(self, deadline: float) -> tuple[Frame, Converted]:
         """Take frames until one is new and the instrument has no fault to tell of."""
         why: SourceError | None = None
         for _ in range(_MOST_TRIES):
+            speaker = self._found.speaker
             try:
                 frame = speaker.take(deadline)
             except SourceTimeout as silence:
@@ -190,14 +202,14 @@ class InstrumentSource:
             if faults:
                 why = _reported(faults)
                 continue
-            self._settle(speaker, frame, deadline)
+            if self._found.rivals and not self._settle(frame, deadline):
+                continue
             converted = speaker.convert(frame)
             if frame.payload != self._last or np.ptp(converted.volts) == 0.0:
                 self._last = frame.payload
                 return frame, converted
             why = SourceTimeout("the instrument keeps sending the frame of before")
-        assert why is not None
-        raise why
+        raise why if why is not None else SourceTimeout("no frame could be had")
 
     def _explained(self, speaker: Speaker, silence: SourceTimeout) -> SourceError:
         """After a silence, ask in the little time left whether the instrument refused."""
@@ -212,33 +224,46 @@ class InstrumentSource:
             self._link.broken = True
         return _reported(faults) if faults else silence
 
-    def _settle(self, speaker: Speaker, frame: Frame, deadline: float) -> None:
-        """Tell rivals apart, once a frame comes that they read differently."""
-        rivals = self._found.rivals
-        if not rivals or agree(rivals, frame.fields, frame.payload):
-            return
+    def _settle(self, frame: Frame, deadline: float) -> bool:
+        """Tell rivals apart, once a frame comes that they read differently.
+
+        Returns
+        -------
+        bool
+            False where the frame must be taken again, in another dialect than before.
+        """
+        found = self._found
+        if agree(found.rivals, frame.fields, frame.payload):
+            return True
+        speaker = found.speaker
         text = speaker.text_values(deadline)
-        settled = settle(rivals, frame.fields, frame.payload, text) if text else None
-        if settled is not None:
-            speaker.dialect = self._found.dialect = settled.dialect
-            speaker.known = speaker.known.changed(
-                dialect=settled.dialect.name,
-                signed=settled.reading.signed,
-                big_endian=settled.reading.big_endian,
-                settled="a frame read as codes and as text",
-            )
-        else:
+        settled = settle(found.rivals, frame.fields, frame.payload, text) if text else None
+        found.rivals = ()
+        if settled is None:
             speaker.known = speaker.known.changed(settled="plausible reference values")
-            self._found.notes = (_NOT_CERTAIN,)
-        self._found.rivals = ()
+            found.notes = (_NOT_CERTAIN,)
+            return True
+        told = {
+            "signed": settled.reading.signed,
+            "big_endian": settled.reading.big_endian,
+            "settled": "a frame read as codes and as text",
+        }
+        if settled.dialect is found.dialect:
+            speaker.known = speaker.known.changed(**told)
+            return True
+        known = Known(settled.dialect.name).changed(**told)
+        self._speak(Speaker(speaker.talk, settled.dialect, known, self._channel, self._kept))
+        found.speaker.set_up(deadline)
+        return False
+
+    def _speak(self, speaker: Speaker) -> None:
+        self._found.dialect, self._found.speaker = speaker.dialect, speaker
 
     def _ready(self, deadline: float) -> Speaker:
-        """Give a speaker over a link in step, mending or replacing the link if need be."""
-        if self._speaker is None or self._link.broken:
-            self._speaker = None
+        """Give a speaker over a link in step, replacing the link if need be."""
+        if self._link.broken:
             self._reconnect(deadline)
-        assert self._speaker is not None
-        return self._speaker
+        return self._found.speaker
 
     def _reconnect(self, deadline: float) -> None:
         self._link.close()
@@ -248,8 +273,10 @@ class InstrumentSource:
         self._link = open_link(self._resource, left, again=True)
         try:
             talk = Conversation(self._link, {"channel": self._channel})
+            if self._speed is not None:
+                self._link.set_speed(self._speed)
             self._link.freshen(deadline)
-            identity = identify(talk, deadline)
+            identity = self._identity_again(talk, deadline)
             if not same_instrument(identity, self._identity):
                 raise SourceRefused(
                     f"another instrument answers: {clean(identity)}",
@@ -261,13 +288,23 @@ class InstrumentSource:
         except BaseException:
             self._link.broken = True
             raise
-        self._speaker = self._found.speaker = speaker
+        self._speak(speaker)
+        self._to_fit = self._set_range  # what rebooted has forgotten
+
+    def _identity_again(self, talk: Conversation, deadline: float) -> str:
+        """Ask who answers; something else than an identification may still become one."""
+        try:
+            return identify(talk, deadline)
+        except SourceRefused as error:
+            raise SourceLost(str(error)) from error
 
     def _waveform(self, frame: Frame, converted: Converted) -> Waveform:
         known = self._found.speaker.known
         if known != self._found.kept:
             remember(self._settings_dir, self._identity, known)
             self._found.kept = known
+        coupling = _coupling(frame.fields.get(self._found.dialect.coupling or ""))
+        self._seen = _seen(converted, coupling)
         return Waveform(
             samples=converted.volts,
             interval_s=converted.interval_s,
@@ -278,11 +315,26 @@ class InstrumentSource:
             low_rail=converted.low_rail,
             high_rail=converted.high_rail,
             clipped=converted.clipped,
-            coupling=_coupling(frame.fields.get(self._found.dialect.coupling or "")),
+            coupling=coupling,
             averaged=converted.averaged,
             age_s=time.monotonic() - frame.complete_at,
-            notes=self._found.notes,
+            notes=(*self._found.notes, *converted.remarks),
         )
+
+
+def _seen(converted: Converted, coupling: Coupling) -> dict[str, str]:
+    """Give what a capture shows of the instrument's settings, for the log."""
+    seen = {
+        "samples": str(converted.volts.size),
+        "samples a second": f"{1.0 / converted.interval_s:.6g}",
+        "coupling": coupling,
+        "averaged": str(converted.averaged),
+    }
+    if converted.low_rail is not None and converted.high_rail is not None:
+        seen["range, V"] = f"{converted.low_rail:.4g} to {converted.high_rail:.4g}"
+    if converted.bits is not None:
+        seen["bits"] = str(converted.bits)
+    return seen
 
 
 def _coupling(word: Any) -> Coupling:

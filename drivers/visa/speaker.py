@@ -5,20 +5,20 @@ from __future__ import annotations
 import contextlib
 import math
 import time
-from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
 from drivers.contract import SourceError, SourceRefused, SourceTimeout, UnusableCapture
 from drivers.visa import answers
 from drivers.visa.acquisition import acquire, answers_poll
-from drivers.visa.blocks import MOST_BYTES
+from drivers.visa.blocks import MOST_BYTES, Block
 from drivers.visa.conversation import Conversation
 from drivers.visa.dialect import Acquire, Dialect, Encoding
+from drivers.visa.formula import FormulaError
 from drivers.visa.frame import Converted, Reading, convert
 from drivers.visa.kept import KeptSettings
 from drivers.visa.memory import Known
-from drivers.visa.preamble import ask_fields, fields_in_block
+from drivers.visa.preamble import ask_fields, fields_in_block, matches
 
 PROBE_S = 0.7
 """Longest wait for an answer that may not come."""
@@ -105,6 +105,8 @@ class Speaker:
             self._choose(self._encoding(), deadline)
         if self.known.acquire is None:
             self._find_acquire(deadline)
+        if self.known.windows is None:
+            self._find_windows(deadline)
         self._points = None
         if self.dialect.length is not None and self.dialect.length.default is not None:
             self.ask_points(self.dialect.length.default, deadline)
@@ -113,14 +115,16 @@ class Speaker:
     def ask_points(self, points: int, deadline: float) -> None:
         """Ask for so many samples, where the dialect can."""
         length = self.dialect.length
-        if length is None or not length.send or points == self._points:
+        if length is None or points == self._points:
+            return
+        self._points = points
+        if not length.send:
             return
         for setting in length.keep:
             self.kept.keep(self.talk, setting, deadline)
         for command in length.send:
             self.talk.tell(command, deadline, points=points)
         self.talk.faults(self.dialect.errors, deadline)  # an instrument may have fewer
-        self._points = points
 
     def ask_average(self, count: int, deadline: float) -> None:
         """Ask for the average of `count` frames, where it gives true bits.
@@ -129,7 +133,7 @@ class Speaker:
         them, nothing is gained, and nothing is asked.
         """
         average = self.dialect.average
-        if average is None or count == self.averages:
+        if average is None or count == self.averages or self.known.encoding:
             return
         if count <= 1:
             self.kept.put_back(self.talk, average.keep, deadline)
@@ -167,16 +171,18 @@ class Speaker:
 
     def read_frame(self, complete_at: float, deadline: float) -> Frame:
         """Read the frame that the stopped instrument holds."""
-        fields: dict[str, Any] = {"channel": float(self._channel), **self._optional(deadline)}
+        fields: dict[str, Any] = {
+            "channel": float(self._channel),
+            "encoding": float(self.known.encoding or 0),
+            **self._optional(deadline),
+        }
+        self._open_window(fields, deadline)
         if self.known.preamble is None:
             fields |= self._find_preamble(deadline)
         else:
             fields |= ask_fields(self.talk, self.dialect.preamble[self.known.preamble], deadline)
         preamble = self.dialect.preamble[self.known.preamble or 0]
-        block = self._blocks(fields, deadline)
-        if isinstance(block, bytes):
-            return Frame(fields, block, complete_at)
-        inside, payload = fields_in_block(preamble, block)
+        inside, payload = fields_in_block(preamble, self._blocks(fields, deadline))
         return Frame({**fields, **inside}, payload, complete_at)
 
     def convert(self, frame: Frame) -> Converted:
@@ -223,7 +229,12 @@ class Speaker:
 
     def _accepts(self, encoding: Encoding, deadline: float) -> bool:
         self._choose(encoding, deadline)
-        return not self.talk.faults(self.dialect.errors, deadline)
+        if self.talk.faults(self.dialect.errors, deadline):
+            return False
+        if encoding.ask is None or encoding.matches is None:
+            return True
+        answer = self.talk.quietly(encoding.ask, PROBE_S, deadline)
+        return answer is not None and matches(answer, encoding.matches)
 
     def _choose(self, encoding: Encoding | None, deadline: float) -> None:
         for command in encoding.send if encoding is not None else ():
@@ -251,7 +262,8 @@ class Speaker:
         ways = self.dialect.acquire
         for index, way in enumerate(ways):
             if len(ways) == 1 or answers_poll(self.talk, way, PROBE_S, deadline):
-                self.talk.faults(self.dialect.errors, deadline)
+                if way.poll is not None or index > 0:  # those of the silent ones do not count
+                    self.talk.faults(self.dialect.errors, deadline)
                 self.known = self.known.changed(acquire=index)
                 return
         raise SourceRefused(
@@ -299,30 +311,53 @@ class Speaker:
         self._also, self._also_at = asked, time.monotonic()
         return asked
 
-    def _blocks(self, fields: dict[str, Any], deadline: float) -> Any:
-        """Read the samples: one block, or slices one after the other."""
+    def _find_windows(self, deadline: float) -> None:
+        """See whether the instrument knows windows on its record."""
         length = self.dialect.length
-        points = self.dialect.codes.points
-        if length is None or not length.slice or points is None or not points.names <= set(fields):
-            block = self.talk.ask_block(self.dialect.data, deadline, self._expect)
-            self._expect = len(block.payload) + _SPARE_BYTES
-            return block
-        total = int(points.number(fields))
+        known = length is not None and bool(length.window)
+        if known:
+            self._window(1, 1000, deadline)
+            known = not self.talk.faults(self.dialect.errors, deadline)
+        self.known = self.known.changed(windows=known)
+
+    def _window(self, first: int, last: int, deadline: float) -> None:
+        assert self.dialect.length is not None
+        for command in self.dialect.length.window:
+            self.talk.tell(command, deadline, first=first, last=last)
+
+    def _open_window(self, fields: dict[str, Any], deadline: float) -> None:
+        """Before the preamble is asked for: the window must span what will be read."""
+        length = self.dialect.length
+        if length is None or not self.known.windows:
+            return
+        record = None
+        if length.record is not None:
+            with contextlib.suppress(FormulaError):
+                record = int(length.record.number(fields))
+        wanted = self._points or record or length.window_points
+        self._window(1, min(wanted, record or wanted), deadline)
+
+    def _blocks(self, fields: dict[str, Any], deadline: float) -> Block:
+        """Read the samples: one block, or windows one after the other."""
+        length, points = self.dialect.length, self.dialect.codes.points
+        if length is not None and self.known.windows and points is not None:
+            total = int(points.number(fields))
+            if total > length.window_points:
+                return self._windows(fields, total, length.window_points, deadline)
+        block = self.talk.ask_block(self.dialect.data, deadline, self._expect)
+        self._expect = len(block.payload) + _SPARE_BYTES
+        return block
+
+    def _windows(self, fields: dict[str, Any], total: int, most: int, deadline: float) -> Block:
         width = int(self.dialect.codes.width.number(fields))
         if total * width > MOST_BYTES:
             raise UnusableCapture(
                 f"the record has {total} samples", "Choose a shorter record on the instrument."
             )
-        return self._slices(total, width, length.slice, length.slice_points, deadline)
-
-    def _slices(
-        self, total: int, width: int, commands: Sequence[str], most: int, deadline: float
-    ) -> bytes:
         parts = []
         for first in range(1, total + 1, most):
             last = min(total, first + most - 1)
-            for command in commands:
-                self.talk.tell(command, deadline, first=first, last=last)
+            self._window(first, last, deadline)
             expect = (last - first + 1) * width
             block = self.talk.ask_block(self.dialect.data, deadline, expect + _SPARE_BYTES)
             if len(block.payload) != expect:
@@ -330,4 +365,4 @@ class Speaker:
                     f"samples {first} to {last} came as {len(block.payload)} bytes, not {expect}"
                 )
             parts.append(block.payload)
-        return b"".join(parts)
+        return Block("", b"".join(parts))
