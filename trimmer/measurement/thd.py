@@ -69,7 +69,7 @@ def thd_of(parts: Array, covariance: Array, disturbance: Disturbance) -> Interva
     stretch = _stretch(parts, covariance, middle, unit, trace_2, disturbance.freedom)
     root = math.sqrt(unit)
     high = max(middle + stretch * (high * root - middle), value)
-    low = min(max(middle - stretch * (middle - low * root), 0.0), value)
+    low = min(max(middle - stretch * (middle - low * root), 0.0), value) if low > 0.0 else 0.0
     return Interval(value, 0.5 * (high - low) / NORMAL_95, low, high)
 
 
