@@ -45,7 +45,7 @@ def kill_command(home: Path, seed: int) -> Kill:
     program = subprocess.Popen(
         [sys.executable, "-m", "trimmer", "demo", "--hands", "auto", "--json", "--seed", str(seed)],
         stdout=subprocess.PIPE,
-        stderr=subprocess.DEVNULL,
+        stderr=subprocess.PIPE,
         text=True,
         env={**os.environ, "TRIMMER_HOME": str(home)},
     )
@@ -55,7 +55,8 @@ def kill_command(home: Path, seed: int) -> Kill:
         program.wait(dice.uniform(0.0, 1.5))
     except subprocess.TimeoutExpired:
         program.kill()
-    rest, _ = program.communicate()
+    rest, trouble = program.communicate()
+    assert said[0], f"the command said nothing but: {trouble}"
     events = [json.loads(line) for line in said + rest[: rest.rfind("\n") + 1].splitlines()]
     with open_book(demo=True, location=home / "demo-book.sqlite") as book:
         return _compare(book, [event for event in events if event["event"] == "reading"])

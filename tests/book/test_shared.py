@@ -127,6 +127,33 @@ def test_an_import_into_a_server_is_delivered(url: str, tmp_path: Path) -> None:
         assert book.sheet(sheet).row.unit == "Bench 9"
 
 
+def test_a_forged_export_is_held_against_what_the_server_has(url: str, tmp_path: Path) -> None:
+    with opened(url) as book:
+        sheet = written(book, 0)
+        export_book(book, tmp_path / "x.json")
+    other_machine(url)
+    forged = (tmp_path / "x.json").read_text().replace('"unit":"Bench 7"', '"unit":"Bench 8"')
+    (tmp_path / "x.json").write_text(forged)
+    with opened(url) as book:
+        with pytest.raises(BookError, match="says another unit"):
+            import_book(book, tmp_path / "x.json")
+        assert book.waiting == 0
+        assert book.sheet(sheet).row.unit == "Bench 7"
+
+
+def test_a_courier_that_stumbles_says_so_and_loses_nothing(
+    url: str, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    with opened(url) as book:
+        assert book.settle(10)
+        with monkeypatch.context() as patch:
+            patch.setattr("trimmer.book.outbox.insert", lambda *_: 1 / 0)
+            sheet = book.begin_sheet(s.start())
+            until(lambda: bool(book.waiting and book.notices()))
+        until(lambda: book.waiting == 0)
+        assert book.sheet(sheet).row.unit == "Bench 7"
+
+
 def test_several_benches_write_at_once_and_every_row_is_there_once(
     url: str, tmp_path: Path
 ) -> None:

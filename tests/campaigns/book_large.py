@@ -2,7 +2,8 @@
 
 Run as ``python -m tests.campaigns.book_large [SHEETS] [TURNS]``. The sheets are whole: readings with
 their covariances, waveforms, states, ends. Each figure is the slowest of ten tries, the first of
-them with a book just opened; the bar is 0.2 s. Two thousand units, twenty kinds, ten years.
+them with a book just opened; the bar is 0.2 s by the clock. The processor's time beside it tells a
+slow book from a busy machine. Two thousand units, twenty kinds, ten years.
 """
 
 from __future__ import annotations
@@ -20,7 +21,7 @@ from typing import Any
 import sqlalchemy as sa
 
 from tests.book import samples as s
-from trimmer.book import Book, SheetFilter, open_book
+from trimmer.book import Book, SheetFilter, export_book, open_book
 from trimmer.book import rows as r
 from trimmer.book import tables as t
 from trimmer.book.cards import refresh
@@ -123,14 +124,26 @@ def _measure(path: Path) -> int:
         "a sheet by its beginning": lambda book: book.sheet(_some_id(book)[:20]),
         "all units": lambda book: book.units(),
     }
-    worst = 0.0
+    worst = most = 0.0
     for name, question in questions.items():
-        times = [_time(path, question) for _ in range(10)]
-        worst = max(worst, max(times))
-        print(f"{name:46} {max(times):7.3f} s, median {statistics.median(times):.3f} s")
+        tries = [_time(path, question) for _ in range(10)]
+        walls, works = [wall for wall, _ in tries], [work for _, work in tries]
+        worst, most = max(worst, *walls), max(most, *works)
+        print(
+            f"{name:46} {max(walls):7.3f} s, median {statistics.median(walls):.3f} s, "
+            f"of the processor {max(works):.3f} s"
+        )
+    print(f"most of the processor {most:.3f} s")
     print(f"slowest {worst:.3f} s: {'passed' if worst < BAR_S else 'FAILED'}")
-    everything = _time(path, lambda book: book.sheets())
+    everything, _ = _time(path, lambda book: book.sheets())
     print(f"(every one of the sheets in one list: {everything:.2f} s)")
+    for ending in (".csv", ".json"):
+        target = path.with_suffix(ending)
+        took, _ = _time(path, lambda book: export_book(book, target, SheetFilter(kind="kind 7")))  # noqa: B023
+        print(
+            f"(one kind, exported as {ending}: {took:.1f} s, {target.stat().st_size / 1e6:.0f} MB)"
+        )
+        target.unlink()
     return 0 if worst < BAR_S else 1
 
 
@@ -144,11 +157,12 @@ def _some_id(book: Book) -> str:
     return book.sheets(limit=1, offset=777)[0].id
 
 
-def _time(path: Path, question: Callable[[Book], object]) -> float:
-    started = time.perf_counter()
+def _time(path: Path, question: Callable[[Book], object]) -> tuple[float, float]:
+    """Give the seconds of the clock and of the processor that opening a book and a question took."""
+    started, worked = time.perf_counter(), time.process_time()
     with open_book(path) as book:
         question(book)
-        return time.perf_counter() - started
+        return time.perf_counter() - started, time.process_time() - worked
 
 
 if __name__ == "__main__":

@@ -6,7 +6,7 @@ import threading
 from typing import Literal
 
 from trimmer.book.entries import Notice
-from trimmer.book.outbox import Outbox, ServerLost
+from trimmer.book.outbox import Outbox
 from trimmer.errors import BookError
 
 _FIRST_PAUSE_S = 0.5
@@ -62,6 +62,12 @@ class Courier:
             self._change.wait_for(lambda: self._state != "working", wait_s)
             return self._state == "idle"
 
+    @property
+    def away(self) -> bool:
+        """Whether the server could not be reached when it was last tried."""
+        with self._change:
+            return self._away
+
     def say(self, notice: Notice) -> None:
         """Have a notice given to the person."""
         with self._change:
@@ -88,7 +94,7 @@ class Courier:
         while self._called(pause if self._state == "lost" else None):
             try:
                 delivered = self._deliver()
-            except (ServerLost, BookError) as error:
+            except Exception as error:  # noqa: BLE001 (said to the person; the rows wait on)
                 self._gone(error)
                 pause = min(2 * pause, _LONGEST_PAUSE_S)
             else:

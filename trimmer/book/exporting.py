@@ -23,6 +23,7 @@ from trimmer.book.book import Book
 from trimmer.book.columns import dumps, stamp
 from trimmer.book.entries import SheetFilter
 from trimmer.book.migrate import applied
+from trimmer.book.summaries import sheets_in_short
 from trimmer.book.tabled import write_table
 from trimmer.book.waveforms import unpack_samples
 from trimmer.errors import BookError
@@ -59,7 +60,7 @@ def export_book(book: Book, path: Path, which: SheetFilter | None = None) -> int
         )
     with _replaced(path) as file:
         if ending == ".csv":
-            return write_table(_whole_sheets(book, which or SheetFilter()), file)
+            return book.examine(lambda connection: _write_table(connection, file, which))
         return write_rows(book, file, which)
 
 
@@ -92,8 +93,16 @@ def _mask() -> int:
     return mask
 
 
-def _whole_sheets(book: Book, which: SheetFilter) -> Iterator[Any]:
-    return (book.sheet(row.id) for row in book.sheets(which))
+def _write_table(connection: sa.Connection, to: TextIO, which: SheetFilter | None) -> int:
+    _begin_anew(to)
+    return write_table(sheets_in_short(connection, which or SheetFilter()), to)
+
+
+def _begin_anew(to: TextIO) -> None:
+    """Empty the file: a question to a server that went away half-way is put again elsewhere."""
+    if to.seekable():
+        to.seek(0)
+        to.truncate()
 
 
 def write_rows(book: Book, to: TextIO, which: SheetFilter | None = None) -> int:
@@ -109,10 +118,7 @@ def _write_rows(connection: sa.Connection, to: TextIO, which: SheetFilter | None
         "exported_at": stamp(datetime.now(UTC)),
         "steps": sorted(applied(connection)),
     }
-    # A sheet to be written again (a server that went away meanwhile) begins the file anew.
-    if to.seekable():
-        to.seek(0)
-        to.truncate()
+    _begin_anew(to)
     to.write("[\n" + dumps(head))
     number = 0
     for table, row in _rows(connection, which):

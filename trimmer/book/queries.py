@@ -9,6 +9,7 @@ import sqlalchemy as sa
 
 from trimmer.book import tables as t
 from trimmer.book.entries import SheetFilter
+from trimmer.book.ids import is_id
 
 _NEWEST_FIRST = (t.card.c.taken_at.desc(), t.card.c.sheet_id.desc())
 
@@ -49,6 +50,8 @@ def _conditions(which: SheetFilter) -> list[sa.ColumnElement[bool]]:
 def like_id(fragment: str) -> sa.Select[Any]:
     """Select sheet ids that begin or end with `fragment`, at most nine."""
     column = t.card.c.sheet_id
+    if is_id(fragment):
+        return sa.select(column).where(column == fragment)
     matches = sa.or_(
         column.startswith(fragment, autoescape=True), column.endswith(fragment, autoescape=True)
     )

@@ -16,11 +16,15 @@ from trimmer.book.faults import is_lost, turned_away
 from trimmer.book.opening import open_store
 from trimmer.book.outbox import Outbox
 from trimmer.book.places import Place
-from trimmer.book.store import Row, Store, by_id
+from trimmer.book.store import Row, Store, by_id, unknown
 from trimmer.errors import BookError
 
 T = TypeVar("T")
 
+_UNDER_WAY = Notice(
+    "What was written here is still on its way to the server, and may be missing from what is shown.",
+    "Look again in a moment.",
+)
 _SETTLE_S = 2.0
 _CLOSE_S = 6.0
 _PARENTS = {"sheet_id": t.sheet, "record_id": t.record}
@@ -95,12 +99,22 @@ class SharedBook(Book):
 
     def merge(self, batches: Iterable[Sequence[Row]]) -> Merged:
         """Add rows of another bench's book, all of them or none; they are delivered like one's own."""
-        merged = self._store.merge(batches, waits=True)
+        merged = self._store.merge(map(self._checked, batches), waits=True)
         self._courier.wake()
         return merged
 
+    def _checked(self, batch: Sequence[Row]) -> Sequence[Row]:
+        """Refuse rows that say something else than those the server has."""
+        if not self._courier.away:
+            with self._server.reading() as connection:
+                unknown(connection, batch)
+        return batch
+
     def _ask(self, question: Callable[[sa.Connection], T]) -> T:
-        if self._courier.settle(_SETTLE_S):
+        settled = self._courier.settle(_SETTLE_S)
+        if not self._courier.away:
+            if not settled:
+                self._courier.say(_UNDER_WAY)
             try:
                 with self._server.reading() as connection:
                     return question(connection)

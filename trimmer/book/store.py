@@ -115,7 +115,7 @@ class Store:
         sheets = rows = new = 0
         with guarded(self.shown), self.writing() as connection:
             for batch in batches:
-                new += insert(connection, _fresh(connection, batch), waits=waits)
+                new += insert(connection, unknown(connection, batch), waits=waits)
                 sheets += sum(row.table is t.sheet for row in batch)
                 rows += len(batch)
         return Merged(sheets, rows, new)
@@ -152,7 +152,7 @@ def insert(connection: sa.Connection, rows: Sequence[Row], *, waits: bool = Fals
     return added
 
 
-def _fresh(connection: sa.Connection, batch: Sequence[Row]) -> list[Row]:
+def unknown(connection: sa.Connection, batch: Sequence[Row]) -> list[Row]:
     """Give the rows that are not there yet, each once.
 
     Raises
@@ -163,7 +163,7 @@ def _fresh(connection: sa.Connection, batch: Sequence[Row]) -> list[Row]:
     there: dict[str, Row] = {}
     for table in {row.table for row in batch}:
         there |= by_id(connection, table, {r.values["id"] for r in batch if r.table is table})
-    fresh = []
+    fresh: list[Row] = []
     for row in batch:
         known = there.get(row.values["id"])
         if known is None:

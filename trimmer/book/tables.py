@@ -201,7 +201,6 @@ card = sa.Table(
     sa.Index("card_of_unit", "unit", "taken_at", "sheet_id"),
     sa.Index("card_of_kind", "kind", "taken_at", "sheet_id"),
     sa.Index("card_of_verdict", "verdict", "taken_at", "sheet_id"),
-    sa.Index("card_by_thd", "thd"),
     sa.Index("card_unfinished", "finished", "taken_at"),
 )
 

@@ -35,7 +35,6 @@ def _statements(w: Words) -> list[str]:
         "CREATE INDEX card_of_unit ON card (unit, taken_at, sheet_id)",
         "CREATE INDEX card_of_kind ON card (kind, taken_at, sheet_id)",
         "CREATE INDEX card_of_verdict ON card (verdict, taken_at, sheet_id)",
-        "CREATE INDEX card_by_thd ON card (thd)",
         "CREATE INDEX card_unfinished ON card (finished, taken_at)",
         f"""INSERT INTO card SELECT sheet.id,
             {_CORRECTED.format(name="unit")}, {_CORRECTED.format(name="kind")}, sheet.taken_at,
