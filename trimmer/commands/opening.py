@@ -121,12 +121,11 @@ def _open(word: str, options: argparse.Namespace, stack: contextlib.ExitStack) -
         )
     from drivers.files import open_file, open_folder
 
-    opener = open_file if shape == "file" else open_folder
-    return Opened(
-        stack.enter_context(
-            opener(Path(word), channel=options.channel, interval_s=options.interval)
-        )
-    )
+    path, channel, interval_s = Path(word), options.channel, options.interval
+    if shape == "file":
+        file = open_file(path, channel=channel, interval_s=interval_s)
+        return Opened(stack.enter_context(file))
+    return Opened(stack.enter_context(open_folder(path, channel=channel, interval_s=interval_s)))
 
 
 def _instrument(resource: str, name: str, options: argparse.Namespace) -> WaveformSource:
