@@ -98,7 +98,7 @@ def no_signal(seen: str) -> MeasurementError:
 def check_times(times_s: ArrayLike | None, samples: int, interval_s: float) -> None:
     """Check a file's own time column for even steps.
 
-    A column rounded to few digits is let pass: it is off by no more than half its last digit.
+    A column rounded to few digits is let pass: no instant is off by more than its last digit.
 
     Raises
     ------
@@ -119,12 +119,13 @@ def check_times(times_s: ArrayLike | None, samples: int, interval_s: float) -> N
         raise _uneven("Time does not run forward.")
     off = np.abs(times - (times[0] + step * np.arange(samples)))
     worst = float(off.max())
-    allowed = max(UNEVEN_SHARE * step, 0.75 * _last_digit(times, step))
+    digit = _last_digit(times, step)
+    allowed = max(UNEVEN_SHARE * step, 1.05 * digit)  # half a digit there, half at the ends
     if worst > allowed:
         raise _uneven(
             f"Instant {int(off.argmax())} is {worst:.3g} s off an even grid of {step:.6g} s steps."
         )
-    if abs(step - interval_s) > 1e-3 * interval_s:
+    if abs(step - interval_s) > 1e-3 * interval_s + 2.0 * digit / samples:
         raise _uneven(f"The time column steps by {step:.6g} s, not by {interval_s:.6g} s.")
 
 

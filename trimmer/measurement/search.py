@@ -22,6 +22,7 @@ _WHOLE = 1 << 15
 _SEGMENTS = 6
 _SLOW_CELLS = 10.0
 """Below so many periods in a segment the averaged record decides."""
+_GRAIN = 1e-12
 _GOLDEN = 0.6180339887498949
 
 
@@ -40,7 +41,10 @@ def _power_spectrum(values: Array, padded: int) -> Array:
     weight = float(window.sum())
     values = values - float(window @ values) / weight
     slope = float((window * t) @ values) / float(window @ (t * t))
-    spectrum = np.fft.rfft((values - slope * t) * window, padded)
+    values -= slope * t
+    if float(np.abs(values).max()) < _GRAIN:  # a straight line, and the arithmetic's grain
+        return np.zeros(padded // 2 + 1)
+    spectrum = np.fft.rfft(values * window, padded)
     return spectrum.real**2 + spectrum.imag**2
 
 
