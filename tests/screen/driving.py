@@ -16,7 +16,7 @@ from trimmer.screen.tune import TuneScreen
 QUIET = Options("bench", cautions=False, bell=False)
 
 
-async def until(pilot: Pilot[int], condition: Callable[[], bool], patience_s: float = 5.0) -> None:
+async def until(pilot: Pilot[int], condition: Callable[[], bool], patience_s: float = 20.0) -> None:
     """Let the application run until a condition holds, and fail if it never does."""
     async with asyncio.timeout(patience_s):
         while not condition():

@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from trimmer.measurement.figures import shape_at
 from trimmer.screen.pictures.raster import Dots, Mask, told
-from trimmer.screen.pictures.runs import Picture, Role, Row, Run, blank, joined, longest, row
+from trimmer.screen.pictures.runs import Picture, Role, Run, blank, joined, longest, row
 
 Curve = NDArray[np.float64]
 """Shape (n,), ratios to the fundamental, over one period that begins at the rising zero."""
@@ -20,6 +20,8 @@ _ROOM = 0.55
 _SCALES = (0.02, 0.05, 0.1, 0.2, 0.5, 1.0, 2.0, 5.0, 10.0, 20.0, 50.0, 100.0)
 _APART = 10
 """From this many rows on the difference has a strip of its own."""
+_LABEL = 8
+"""Cells to the left of it for its scale."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -34,12 +36,20 @@ class Trace:
     """Samples to a period, not a whole number as a rule."""
 
 
-def period_of(trace: Trace, points: int) -> tuple[Curve, Curve]:
-    """Give one period of the ideal sine and of the difference from it.
+@dataclass(frozen=True, slots=True, eq=False)
+class Period:
+    """One period in points: the upper crest a quarter of the way along, the lower at three quarters."""
 
-    The samples are folded: each falls into the part of the period it was taken at, and the mean of
-    what they differ from the ideal sine *there* is shown. The sine is the samples' own fundamental
-    over whole periods, so that nothing of the difference depends on a phase told from elsewhere.
+    ideal: Curve
+    """The sine."""
+    difference: Curve
+    """What the fitted shape has more than the sine."""
+    folded: Curve | None
+    """What the samples have more than the sine; None where they are too few."""
+
+
+def period_of(trace: Trace, points: int) -> Period:
+    """Give one period of a trace.
 
     Parameters
     ----------
@@ -47,34 +57,34 @@ def period_of(trace: Trace, points: int) -> tuple[Curve, Curve]:
         The samples and the fitted parts.
     points
         Points over the period.
-
-    Returns
-    -------
-    ideal, difference
-        Shape (points,) each: ``cos theta`` and what is left, with the upper crest a quarter of the
-        way along and the lower one at three quarters.
     """
     theta = 2 * np.pi * ((np.arange(points) + 0.5) / points - 0.25)
+    fitted = np.asarray(shape_at(trace.parts, theta) - np.cos(theta))
+    return Period(np.cos(theta), fitted, folded(trace, points))
+
+
+def folded(trace: Trace, points: int) -> Curve | None:
+    """Fold the samples: each falls into the part of the period that it was taken in.
+
+    The mean of what the samples differ from the ideal sine *there* is given. The sine is the samples'
+    own fundamental over whole periods, so that nothing of the difference depends on a phase told from
+    elsewhere.
+    """
     whole = int(trace.samples.size // trace.period * trace.period) if trace.period > 0 else 0
     if whole < 3 * points:
-        return np.cos(theta), _fitted(trace.parts, theta)
-    samples = trace.samples[:whole]
+        return None
+    samples = trace.samples[:whole] - trace.samples[:whole].mean()
     turn = np.exp(-2j * np.pi * np.arange(whole) / trace.period)
-    fundamental = 2.0 * np.mean((samples - samples.mean()) * turn)
+    fundamental = 2.0 * np.mean(samples * turn)
     if abs(fundamental) == 0.0:
-        return np.cos(theta), np.zeros(points)
+        return None
     angle = np.angle(np.conj(turn) * fundamental)
-    rest = (samples - samples.mean()) / abs(fundamental) - np.cos(angle)
+    rest = samples / abs(fundamental) - np.cos(angle)
     place = ((angle / (2 * np.pi) + 0.25) % 1.0 * points).astype(int) % points
     count = np.bincount(place, minlength=points)
     if not count.all():
-        return np.cos(theta), _fitted(trace.parts, theta)
-    return np.cos(theta), np.bincount(place, weights=rest, minlength=points) / count
-
-
-def _fitted(parts: Curve, theta: Curve) -> Curve:
-    """Give the difference of the fitted shape from its fundamental."""
-    return np.asarray(shape_at(parts, theta) - np.cos(theta))
+        return None
+    return np.asarray(np.bincount(place, weights=rest, minlength=points) / count)
 
 
 def magnification(difference: Curve) -> int:
@@ -125,72 +135,69 @@ def wave(trace: Trace | None, width: int, rows: int, dots: Dots = Dots.BRAILLE) 
     """
     if trace is None or rows < 3 or width < 12:
         return (row("shape", width, "quiet"), *blank(width, rows - 1))
+    period = period_of(trace, width * dots.value[0])
+    caption = row(_caption(period.difference, width), width, "quiet")
     if rows < _APART:
-        ideal, difference = period_of(trace, width * dots.value[0])
-        return (_caption(difference, width), *_over(ideal, difference, rows - 1, dots))
-    under = max(4, (rows - 2) * 2 // 5)
-    ideal, difference = period_of(trace, width * dots.value[0])
-    return (
-        _caption(difference, width),
-        *_over(ideal, difference, rows - 2 - under, dots),
-        *_strip(trace, width, under + 1, dots),
-    )
+        return (caption, *_over(period, rows - 1, dots))
+    under = max(5, (rows - 1) // 2)
+    strip = _strip(period_of(trace, (width - _LABEL) * dots.value[0]), under, dots)
+    return (caption, *_over(period, rows - 1 - under, dots), *strip)
 
 
-def _caption(difference: Curve, width: int) -> Row:
+def _caption(difference: Curve, width: int) -> str:
     times, peak = magnification(difference), 100.0 * float(np.max(np.abs(difference)))
-    text = longest(
+    return longest(
         width,
         f"shape against its ideal sine, difference ×{times}, {peak:.2f} % at most",
         f"shape, difference ×{times}, {peak:.2f} % at most",
         f"difference ×{times}, peak {peak:.2f} %",
         f"×{times}",
     )
-    return row(text, width, "quiet")
 
 
-def _over(ideal: Curve, difference: Curve, rows: int, dots: Dots) -> Picture:
+def _over(period: Period, rows: int, dots: Dots) -> Picture:
     """Lay the magnified period over the ideal sine, the space between them dotted."""
-    shown = ideal + magnification(difference) * difference
+    shown = period.ideal + magnification(period.difference) * period.difference
     high = float(max(1.0, np.max(np.abs(shown)))) * 1.02
     line = drawn(shown, -high, high, rows, dots)
-    sine = drawn(ideal, -high, high, rows, dots)
-    a, b = _pixel(shown, -high, high, rows, dots), _pixel(ideal, -high, high, rows, dots)
+    sine = drawn(period.ideal, -high, high, rows, dots)
+    a, b = (_pixel(curve, -high, high, rows, dots) for curve in (shown, period.ideal))
     y, x = np.indices(line.shape)
     between = (y >= np.minimum(a, b)) & (y <= np.maximum(a, b)) & ((x + y) % 2 == 0)
-    return _layers(((line | between, line, "trace"), (sine, sine, "ideal")), dots)
+    return _layers(((line | between, "trace"), (sine, "ideal")), dots)
 
 
-def _strip(trace: Trace, width: int, rows: int, dots: Dots) -> Picture:
-    """Draw the difference by itself: its scale to the left, its zero as a line."""
-    label = 8
-    _, difference = period_of(trace, (width - label) * dots.value[0])
-    peak = 100.0 * float(np.max(np.abs(difference)))
+def _strip(period: Period, rows: int, dots: Dots) -> Picture:
+    """Draw the difference by itself over a scale in percent, what the samples say dotted behind it."""
+    peak = 100.0 * float(np.max(np.abs(period.difference)))
     scale = next((step for step in _SCALES if step >= peak), 100.0)
     high = scale / 100.0
-    curve = drawn(difference, -high, high, rows, dots)
-    zero = drawn(np.zeros_like(difference), -high, high, rows, dots)
-    body = _layers(((curve, curve, "care"), (zero, zero, "ideal")), dots)
+    curve = drawn(period.difference, -high, high, rows, dots)
+    zero = drawn(np.zeros_like(period.difference), -high, high, rows, dots)
+    layers: list[tuple[Mask, Role]] = [(curve, "care"), (zero, "ideal")]
+    if period.folded is not None:
+        at = _pixel(period.folded, -high, high, rows, dots)
+        layers.insert(1, (np.arange(curve.shape[0])[:, None] == at, "quiet"))
     marks = {0: f"+{scale:g} %", rows // 2: "0", rows - 1: f"-{scale:g} %"}
     return tuple(
-        (Run(f"{marks.get(y, ''):>{label - 1}} ", "quiet"), *runs) for y, runs in enumerate(body)
+        (Run(f"{marks.get(y, ''):>{_LABEL - 1}} ", "quiet"), *runs)
+        for y, runs in enumerate(_layers(tuple(layers), dots))
     )
 
 
-def _layers(layers: tuple[tuple[Mask, Mask, Role], ...], dots: Dots) -> Picture:
+def _layers(layers: tuple[tuple[Mask, Role], ...], dots: Dots) -> Picture:
     """Lay pictures over each other; a cell belongs to the first that has ink there.
 
-    Each is what to show, what it takes a cell for, and its role. Without braille the ideal sine is
-    told by dots, so that two curves differ by glyph and not by colour alone.
+    Without braille what is not the first is told by dots, so that two curves differ by glyph and not
+    by colour alone.
     """
     cells: list[list[tuple[str, Role]]] = []
-    for ink, claim, role in reversed(layers):
-        glyphs, claims = told(ink, dots), told(claim | ink, dots)
+    for depth, (ink, role) in reversed(list(enumerate(layers))):
+        glyphs = told(ink, dots)
         if not cells:
             cells = [[(" ", role)] * len(glyphs[0]) for _ in glyphs]
         for y, line in enumerate(glyphs):
             for x, glyph in enumerate(line):
-                if claims[y][x] != " ":
-                    plain = dots is Dots.BLOCK and role == "ideal"
-                    cells[y][x] = ("·" if plain else glyph, role)
+                if glyph != " ":
+                    cells[y][x] = ("·" if dots is Dots.BLOCK and depth else glyph, role)
     return tuple(joined(line) for line in cells)
