@@ -157,7 +157,7 @@ def test_a_courier_that_stumbles_says_so_and_loses_nothing(
 def test_several_benches_write_at_once_and_every_row_is_there_once(
     url: str, tmp_path: Path
 ) -> None:
-    benches, sheets = 4, 6
+    benches, sheets = 3, 4
     with running_benches(url, tmp_path, benches, sheets) as acknowledged:
         pass
     assert len(set(acknowledged)) == benches * sheets
@@ -419,6 +419,13 @@ def test_many_benches_may_open_a_new_book_at_once(url: str) -> None:
         thread.join()
     assert errors == []
     assert counts(url)["migration"] == 6
+
+
+def test_a_missing_driver_is_said_with_what_to_install(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("trimmer.book.engines.find_spec", lambda _name: None)
+    with pytest.raises(BookError, match="driver") as refusal:
+        open_book("postgresql://bench@127.0.0.1/book")
+    assert "trimmer[postgres]" in refusal.value.remedy
 
 
 def test_no_thread_is_left_when_a_shared_book_is_closed(url: str) -> None:
