@@ -95,8 +95,7 @@ def choose(
     if outlook.is_there():
         return None
     plans = [(outlook.turns_after(t, way), t, way) for t in trims for way in outlook.ways(t)]
-    gaining = (p for p in sorted(plans) if outlook.gains(p[1], p[2]))
-    plan = next(gaining, None)
+    plan = next((p for p in sorted(plans) if outlook.is_worth(p[1], p[2])), None)
     if plan is None:
         return None
     _, trim, way = plan

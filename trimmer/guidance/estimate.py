@@ -109,7 +109,8 @@ def _start(record: Record, walk: Walk, before: Estimate) -> Array:
     size = walk.parts.shape[1]
     if before.known[last.trim] and not last.dead and before.belief.mean.shape[0] == size:
         sigma = float(np.sqrt(walk.spread[-1, -1]))
-        thought = Movement(last.trim, step, 2.0 * sigma, 1.6 * abs(last.asked) + 0.02)
+        span = 1.6 * abs(last.asked) + 0.02
+        thought = Movement(last.trim, step, 2.0 * sigma, -span, span)
         step = explain(before.belief, walk.parts[-1], walk.variance[-1], thought).way
     return np.append(steps, step)
 

@@ -9,7 +9,7 @@ import numpy as np
 
 from trimmer.guidance.field import Array, FieldBelief, features, slopes
 
-_SHARES: Final = np.linspace(-1.0, 1.0, 33)
+_SHARES: Final = np.linspace(0.0, 1.0, 33)
 _ROUNDS: Final = 4
 
 
@@ -37,9 +37,11 @@ class Movement:
     expected: float
     """Signed share of the travel."""
     sigma: float
-    """Its standard deviation; infinite where nothing is known."""
-    span: float
-    """Longest movement thought of."""
+    """Its standard deviation."""
+    low: float
+    """Least movement thought of."""
+    high: float
+    """Largest movement thought of."""
 
 
 def explain(belief: FieldBelief, parts: Array, variance: Array, thought: Movement) -> Explained:
@@ -57,10 +59,11 @@ def explain(belief: FieldBelief, parts: Array, variance: Array, thought: Movemen
     thought
         The movement, before the reading.
     """
-    ways = thought.span * _SHARES
+    reach = thought.high - thought.low
+    ways = thought.low + reach * _SHARES
     _, surprise = _surprise(belief, parts, variance, thought, ways)
     best = float(ways[int(np.argmin(surprise))])
-    step = thought.span / 16.0
+    step = reach / (_SHARES.size - 1)
     held = 1.0 / thought.sigma**2
     strength = held
     for _ in range(_ROUNDS):
@@ -68,14 +71,11 @@ def explain(belief: FieldBelief, parts: Array, variance: Array, thought: Movemen
         weight = 1.0 / (variance + belief.variance(place[0]))
         column = slopes(place[0])[thought.trim] @ belief.mean.T
         strength = float(column @ (weight * column)) + held
-        if strength <= 0.0:
-            break
         pull = float(column @ (weight * (parts - belief.at(place[0]))))
         move = (pull + held * (thought.expected - best)) / strength
-        best = float(np.clip(best + np.clip(move, -step, step), -thought.span, thought.span))
+        best = float(np.clip(best + np.clip(move, -step, step), thought.low, thought.high))
     misfit, surprise = _surprise(belief, parts, variance, thought, np.array([best]))
-    sigma = float("inf") if strength <= 0.0 else strength**-0.5
-    return Explained(best, sigma, float(misfit[0]), float(surprise[0]))
+    return Explained(best, strength**-0.5, float(misfit[0]), float(surprise[0]))
 
 
 def _place(trim: int, ways: Array) -> Array:
@@ -94,7 +94,28 @@ def _surprise(
     outer = (phi[:, :, None] * phi[:, None, :]).reshape(size[0], -1)
     total = variance + outer @ belief.covariance.reshape(size[1], -1).T
     misfit: Array = np.sum(miss**2 / total, axis=1)
-    surprise: Array = misfit + np.sum(np.log(total), axis=1)
-    if np.isfinite(thought.sigma):
-        surprise += ((ways - thought.expected) / thought.sigma) ** 2 + 2.0 * np.log(thought.sigma)
-    return misfit, surprise
+    slip = (ways - thought.expected) / thought.sigma
+    surprise: Array = misfit + np.sum(np.log(total), axis=1) + slip**2
+    return misfit, surprise + 2.0 * np.log(thought.sigma)
+
+
+def explain_both(
+    belief: FieldBelief, parts: Array, variance: Array, start: Array
+) -> tuple[Array, Array]:
+    """Find the movement of both trims together that best explains a reading, from a start.
+
+    Returns
+    -------
+    tuple
+        Shape (2,), the movement; shape (2,), its standard deviations.
+    """
+    best = start.copy()
+    normal = np.eye(2)
+    for _ in range(2 * _ROUNDS):
+        weight = 1.0 / (variance + belief.variance(best))
+        columns = belief.columns(best)
+        normal = (columns * weight) @ columns.T + 1e-6 * np.eye(2)
+        pull = (columns * weight) @ (parts - belief.at(best))
+        move = np.linalg.solve(normal, pull)
+        best = best + np.clip(move, -0.1, 0.1)
+    return best, np.sqrt(np.diag(np.linalg.inv(normal)))

@@ -1,42 +1,52 @@
 """While the hand turns: how far each trim has gone, and the one word for the hand.
 
-The change of the parts since the turn began is laid on the two columns. The trim that was asked for
-alone, the other alone: whichever explains the change is the one that moves.
+Every live reading is explained in turn by the asked trim in the asked sense, by the other sense, and by
+the other trim, under the belief about the field and its doubt. The likeliest is what the hand does; a
+mistake must be much likelier, twice running, before it is called one.
 """
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import Final
 
 import numpy as np
 
 from trimmer.guidance.advice import Follow, Say
+from trimmer.guidance.aim import Aim, Box
+from trimmer.guidance.explain import Explained, Movement, explain, explain_both
 from trimmer.guidance.field import Array, FieldBelief
+from trimmer.guidance.pace import Lag, Pace
+from trimmer.guidance.rails import excess
 from trimmer.guidance.seen import Seen
 from trimmer.guidance.words import TRIMS
 
+MOVED: Final = 5.0
+"""Standard deviations by which a reading must differ from the last still one to count as moved."""
+STILL: Final = 3.0
+"""Standard deviations within which readings are the same."""
 STILL_S: Final = 0.6
-"""A reading unchanged for so long is still, seconds."""
-FIRST_LAG_S: Final = 0.25
-"""Lag of a person from word to hand before it is known, seconds (a common figure, no source)."""
-SLOW_S: Final = 0.7
-"""`slow` is said when the target is nearer than this many seconds."""
-BENT: Final = 0.2
-"""A change may bend away from its column by this share of itself."""
+"""Readings unchanged for so long are still, seconds .."""
+PAUSE_S: Final = 1.6
+""".. but on the way, a pause this long."""
+NEAR: Final = 0.8
+"""Share of the way from which on the hand is no longer on the way."""
+MISTAKE: Final = 14.0
+"""How much better a mistake must explain a reading than the turn asked for."""
+RUNNING: Final = 2
+"""Readings in a row that must show a mistake."""
+ENOUGH: Final = 25.0
+"""A change this many times the noise teaches a column well."""
 
 
-@dataclass(slots=True)
-class Lag:
-    """A person's lag from `stop` to the hand's rest, seconds, learned from overshoot."""
+@dataclass(frozen=True, slots=True)
+class Outcome:
+    """What a followed turn came to."""
 
-    mean_s: float = FIRST_LAG_S
-    count: float = 2.0
-
-    def learn(self, lag_s: float) -> None:
-        """Take one overshoot in."""
-        self.count += 1.0
-        self.mean_s += (min(max(lag_s, 0.0), 1.5) - self.mean_s) / self.count
+    way: float | None
+    """Signed way of the asked trim, share of the travel; None where it cannot be told."""
+    other: float
+    """Signed way of the other trim, 0 where it did not move."""
 
 
 @dataclass(slots=True)
@@ -46,132 +56,156 @@ class Following:
     turn: int
     trim: int
     asked: float
-    """Signed share of the travel asked for, without the play."""
+    """Signed share of the travel that the asked trim is to make."""
     base: Seen
-    here: Array
+    """The last still reading."""
     belief: FieldBelief
+    """The field around the present place."""
+    best: Array
+    """Shape (2,), the best setting from here."""
+    box: Box
     known: tuple[bool, bool]
     lag: Lag
-    times: list[float] = field(default_factory=list)
-    ways: list[float | None] = field(default_factory=list)
-    seen: list[Seen] = field(default_factory=list)
-    stop_said: tuple[float, float, float] | None = None
-    """Time, way and speed when `stop` was first said."""
     moved: bool = False
-    wrong: int = 0
+    strayed: bool = False
+    """Whether the other trim was seen to move."""
+    wrong: Say | None = None
+    running: int = 0
+    place: Array = field(default_factory=lambda: np.zeros(2))
+    history: list[tuple[float, Seen]] = field(default_factory=list)
+    pace: Pace = field(init=False)
+
+    def __post_init__(self) -> None:
+        self.pace = Pace(self.lag)
 
     def take(self, reading: Seen, time_s: float) -> Follow:
-        """Take a live reading."""
-        self.times.append(time_s)
-        self.seen.append(reading)
-        size = min(reading.parts.size, self.base.parts.size)
-        change = reading.parts[:size] - self.base.parts[:size]
-        variance = reading.variance[:size] + self.base.variance[:size]
-        self.moved = self.moved or _stands_out(change, variance)
-        way, say = self._judge(change, variance)
-        self.ways.append(way)
-        still = self.moved and self._still()
-        if say is None:
-            say = self._pace(way, time_s)
+        """Take a live reading and give the word for the hand."""
+        self.history.append((time_s, reading))
+        self.moved = self.moved or excess(self.base, reading) > MOVED
+        if not self.moved:
+            share = 0.0 if self.known[self.trim] else None
+            return self._word(share, "turn", False, reading)
+        say = self._watch(reading)
+        share, pace = self._progress(reading, time_s)
+        still = self._is_still(share)
         if still:
-            say = "stop" if say in ("stop", "slow") else say
-            self._learn_lag()
-        share = None if way is None else way / self.asked
+            self.pace.rest()
+            say = say or "wait"
+        return self._word(share, say or pace, still, reading)
+
+    def outcome(self) -> Outcome:
+        """Give what the turn came to, once it is made."""
+        if not self.moved or not self.known[self.trim]:
+            return Outcome(None, 0.0)
+        other = float(self.place[1 - self.trim]) if self.strayed else 0.0
+        return Outcome(float(self.place[self.trim]), other)
+
+    def _word(self, share: float | None, say: Say, still: bool, reading: Seen) -> Follow:
         return Follow(self.turn, TRIMS[self.trim], share, say, still, reading.thd)
 
-    def _judge(self, change: Array, variance: Array) -> tuple[float | None, Say | None]:
-        """Give the way made by the asked trim, and a word where the hand errs."""
-        columns = self.belief.columns(self.here)[:, : change.size]
-        own, misfit = _explain(change, variance, columns[self.trim])
-        if not self.moved:
-            return (0.0 if self.known[self.trim] else None), "turn"
-        if not self.known[self.trim]:
-            if self.known[1 - self.trim]:
-                _, other = _explain(change, variance, columns[1 - self.trim])
-                if _is_clear(change, variance) and other < 0.05:
-                    return None, self._wrong("wrong-trim")
-            return None, None
+    # ---- which trim, which way ---------------------------------------------------------------
+
+    def _watch(self, reading: Seen) -> Say | None:
+        """Give a word where the hand errs, None where it does not or cannot be judged."""
+        if not any(self.known):
+            return None
+        parts, variance = self._fit(reading)
+        asked = explain(self.belief, parts, variance, self._thought(self.trim, 1.0))
+        likely: list[tuple[float, Say, Explained]] = []
+        if self.known[self.trim]:
+            back = explain(self.belief, parts, variance, self._thought(self.trim, -1.0))
+            likely.append((back.surprise, "wrong-way", back))
         if self.known[1 - self.trim]:
-            _, other = _explain(change, variance, columns[1 - self.trim])
-            if misfit > BENT**2 and other < 0.5 * misfit:
-                return own, self._wrong("wrong-trim")
-        elif misfit > 0.3 and _is_clear(change, variance):
-            return own, self._wrong("wrong-trim")
-        if own * self.asked < 0.0 and misfit < 0.5:
-            return own, self._wrong("wrong-way")
-        self.wrong = 0
-        return own, None
+            for sense in (1.0, -1.0):
+                other = explain(self.belief, parts, variance, self._thought(1 - self.trim, sense))
+                likely.append((other.surprise, "wrong-trim", other))
+        self.place = np.zeros(2)
+        self.place[self.trim] = asked.way
+        surprise, say, mistake = min(likely, key=lambda x: x[0])
+        erring = surprise + MISTAKE < asked.surprise
+        if self.strayed and all(self.known):
+            return self._astray(parts, variance, say if erring else None)
+        self.running = self.running + 1 if erring else 0
+        if self.running < RUNNING:
+            return None
+        self.place = np.zeros(2)
+        self.place[self.trim if say == "wrong-way" else 1 - self.trim] = mistake.way
+        self.strayed = self.strayed or say == "wrong-trim"
+        return say
 
-    def _wrong(self, say: Say) -> Say | None:
-        self.wrong += 1
-        return say if self.wrong >= 2 else None
+    def _astray(self, parts: Array, variance: Array, say: Say | None) -> Say | None:
+        """Judge once the other trim has moved: both may now be off their places."""
+        self.place, sigma = explain_both(self.belief, parts, variance, self.place)
+        own, other = self.place[self.trim], self.place[1 - self.trim]
+        if abs(other) > max(4.0 * float(sigma[1 - self.trim]), 0.01) and abs(other) > abs(own):
+            return "wrong-trim"
+        back = own * self.asked < 0.0 and abs(own) > max(4.0 * float(sigma[self.trim]), 0.01)
+        return "wrong-way" if back and say == "wrong-way" else None
 
-    def _pace(self, way: float | None, time_s: float) -> Say:
-        if way is None:
+    def _fit(self, reading: Seen) -> tuple[Array, Array]:
+        """Cut a reading to the orders of the belief, and the belief to the reading's."""
+        size = min(reading.parts.size, self.belief.mean.shape[0])
+        if size < self.belief.mean.shape[0]:
+            self.belief = replace(
+                self.belief,
+                mean=self.belief.mean[:size],
+                covariance=self.belief.covariance[:size],
+            )
+        return reading.parts[:size], reading.variance[:size]
+
+    def _thought(self, trim: int, sense: float) -> Movement:
+        """A movement of a trim in the asked sense (+1) or against it (-1)."""
+        way = sense * self.asked
+        far = 1.5 * way + float(np.sign(way)) * 0.03
+        return Movement(trim, 0.5 * way, 0.7 * abs(way) + 0.02, min(0.0, far), max(0.0, far))
+
+    # ---- how far -----------------------------------------------------------------------------
+
+    def _progress(self, reading: Seen, time_s: float) -> tuple[float | None, Say]:
+        if not self.known[self.trim]:
+            return None, self._probing(reading)
+        target = abs(self._target(reading))
+        way = float(self.place[self.trim]) * float(np.sign(self.asked))
+        return way / target, self.pace.say(way, target, time_s)
+
+    def _target(self, reading: Seen) -> float:
+        """Way to go in all, what the reading shows beyond the belief taken into account.
+
+        The bend of the response that the turn itself brings to light shifts the best setting; the
+        turn is then called to where it was meant to end as seen from there.
+        """
+        if not all(self.known):
+            return self.asked
+        parts, _ = self._fit(reading)
+        mean = self.belief.mean.copy()
+        mean[:, 0] += parts - self.belief.at(self.place)
+        there = Aim(replace(self.belief, mean=mean), caution=0.0).joint(self.place, self.box)
+        wanted = self.asked + float(there[self.trim] - self.best[self.trim])
+        low, high = sorted((0.6 * self.asked, 1.4 * self.asked))
+        return float(np.clip(wanted, low, high))
+
+    def _probing(self, reading: Seen) -> Say:
+        """Say *stop* on a first turn once it has taught enough and going on leads away."""
+        size = min(reading.parts.size, self.base.parts.size)
+        change = reading.parts[:size] - self.base.parts[:size]
+        noise = float(np.sum(reading.variance[:size] + self.base.variance[:size]))
+        if float(change @ change) < ENOUGH**2 * noise / 4.0:
             return "turn"
-        left = (self.asked - way) * np.sign(self.asked)
-        speed = self._speed()
-        if left <= max(0.0, speed) * self.lag.mean_s:
-            if self.stop_said is None:
-                self.stop_said = (time_s, way, speed)
-            return "stop"
-        if left <= max(0.0, speed) * (self.lag.mean_s + SLOW_S):
-            return "slow"
-        return "turn"
+        rows = [change]
+        if self.known[1 - self.trim]:
+            rows.append(self.belief.columns(np.zeros(2))[1 - self.trim, :size])
+        basis = np.array(rows)
+        normal = basis @ basis.T + 1e-12 * np.eye(len(rows))
+        wanted = -np.linalg.solve(normal, basis @ self.base.parts[:size])
+        return "stop" if wanted[0] <= 1.0 else "turn"
 
-    def _speed(self) -> float:
-        """Shares of the travel a second, in the asked sense, over the last few readings."""
-        recent = [
-            (t, w) for t, w in zip(self.times[-4:], self.ways[-4:], strict=True) if w is not None
-        ]
-        if len(recent) < 2 or recent[-1][0] <= recent[0][0]:
-            return 0.0
-        return float(
-            np.sign(self.asked) * (recent[-1][1] - recent[0][1]) / (recent[-1][0] - recent[0][0])
-        )
+    # ---- still -------------------------------------------------------------------------------
 
-    def _still(self) -> bool:
-        if self.times[-1] - self.times[0] < STILL_S:
+    def _is_still(self, share: float | None) -> bool:
+        on_the_way = share is not None and share < NEAR
+        wanted = PAUSE_S if on_the_way else STILL_S
+        now, last = self.history[-1]
+        if now - self.history[0][0] < wanted:
             return False
-        size = self.base.parts.size
-        recent = [
-            s for s, t in zip(self.seen, self.times, strict=True) if self.times[-1] - t <= STILL_S
-        ]
-        if len(recent) < 3:
-            return False
-        first, last = recent[0], recent[-1]
-        size = min(first.parts.size, last.parts.size)
-        return not _stands_out(
-            last.parts[:size] - first.parts[:size], last.variance[:size] + first.variance[:size]
-        )
-
-    def _learn_lag(self) -> None:
-        if self.stop_said is None or self.ways[-1] is None:
-            return
-        _, way, speed = self.stop_said
-        if speed > 1e-4:
-            self.lag.learn(abs(self.ways[-1] - way) / speed)
-        self.stop_said = None
-
-
-def _explain(change: Array, variance: Array, column: Array) -> tuple[float, float]:
-    """Way along one column, and the share of the squared change it leaves."""
-    weight = 1.0 / variance
-    strength = float(column @ (weight * column))
-    if strength == 0.0:
-        return 0.0, 1.0
-    way = float(column @ (weight * change)) / strength
-    left = change - way * column
-    total = float(change @ change)
-    return way, float(left @ left) / total if total > 0.0 else 1.0
-
-
-def _stands_out(change: Array, variance: Array) -> bool:
-    """Whether a change is no chance: squared length in sigmas far out for its number of parts."""
-    n = change.size
-    return float(np.sum(change**2 / variance)) > n + 6.0 * float(np.sqrt(2.0 * n))
-
-
-def _is_clear(change: Array, variance: Array) -> bool:
-    """Whether the change is large enough for its direction to be read within some per cent."""
-    return float(change @ change) > 400.0 * float(np.sum(variance)) / 4.0
+        recent = [s for t, s in self.history if now - t <= wanted]
+        return len(recent) >= 3 and all(excess(s, last) < STILL for s in recent[:-1])

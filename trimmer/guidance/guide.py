@@ -20,10 +20,11 @@ from trimmer.guidance.choice import (
 )
 from trimmer.guidance.estimate import Estimate, estimate
 from trimmer.guidance.field import Array, shift_matrix
-from trimmer.guidance.following import Following, Lag
+from trimmer.guidance.following import Following
 from trimmer.guidance.hand import Hand, hand_for
 from trimmer.guidance.memory import KindPrior, Learned
 from trimmer.guidance.moves import Move
+from trimmer.guidance.pace import Lag
 from trimmer.guidance.rails import Verdict as Explanation
 from trimmer.guidance.rails import is_dead, look_into
 from trimmer.guidance.record import Record
@@ -143,8 +144,9 @@ class Guide:
                 trim=self._pending.trim,
                 asked=self._pending.way,
                 base=self._record.here,
-                here=self._estimate.here,
                 belief=self._estimate.belief,
+                best=self._estimate.best,
+                box=self._estimate.box,
                 known=self._estimate.known,
                 lag=self._lag,
             )
@@ -263,9 +265,7 @@ class Guide:
     def _followed_way(self) -> float | None:
         """Way of the asked trim as seen by following, where it was followed and known."""
         watched, self._following = self._following, None
-        if watched is None or not watched.moved or not watched.ways:
-            return None
-        return watched.ways[-1]
+        return None if watched is None else watched.outcome().way
 
     def _step(
         self, call: Call, one: Seen | None, way: float | None, reading: Reading | None

@@ -17,14 +17,22 @@ from scipy.special import erf
 from trimmer.guidance.aim import Aim
 from trimmer.guidance.estimate import Estimate
 from trimmer.guidance.field import Array, features
-from trimmer.guidance.hand import Hand
+from trimmer.guidance.hand import UNEVEN, Hand
 from trimmer.guidance.moves import last_sense
 from trimmer.guidance.record import Record
 
-CLOSE_SHARE: Final = 0.02
+CLOSE_SHARE: Final = 0.015
 """A setting is there when THD is within this share of the floor .."""
-CLOSE_THD: Final = 8e-5
+CLOSE_THD: Final = 6e-5
 """.. or this much THD of it, whichever is more."""
+GOOD_SHARE: Final = 0.03
+"""A setting is good enough to be left where only luck would better it within this share .."""
+GOOD_THD: Final = 1.2e-4
+""".. or this much THD."""
+CLEARLY: Final = 0.9
+"""A turn gains clearly when it leaves less than this share of the squared THD over the floor's."""
+FAIR_CHANCE: Final = 0.25
+"""Chance within two turns that makes trying worth while."""
 LONGEST_SHARE: Final = 0.35
 """Longest turn ever asked for at once, share of the travel."""
 SETTABLE: Final = 1.0
@@ -49,8 +57,7 @@ class Outlook:
         columns = est.belief.columns(est.best)
         self.h = columns @ columns.T
         self.floor = est.floor_thd
-        close = self.floor + max(CLOSE_SHARE * self.floor, CLOSE_THD)
-        self.radius2 = close**2 - self.floor**2
+        self.radius2 = self._radius2(CLOSE_SHARE, CLOSE_THD)
         self.doubt = self._doubt(columns)
         self.thd_now = float(np.sqrt(self.floor**2 + self._energy(self.away)))
 
@@ -71,8 +78,15 @@ class Outlook:
 
     def is_there(self) -> bool:
         """Tell whether the present setting is close enough, what is not known of the best counted."""
-        doubt = float(np.sum(self.h * self.doubt))
-        return bool(self._energy(self.away) + 2.0 * doubt <= self.radius2)
+        return bool(self._energy(self.away) + 2.0 * self._lost() <= self.radius2)
+
+    def _lost(self) -> float:
+        """Squared distortion that not knowing the best setting costs on average."""
+        return float(np.sum(self.h * self.doubt))
+
+    def _radius2(self, share: float, thd: float) -> float:
+        """Energy within a share of the floor, or within so much THD of it if that is more."""
+        return (self.floor + max(share * self.floor, thd)) ** 2 - self.floor**2
 
     def noise(self, trim: int, way: float) -> float:
         """Give the standard deviation of a turn, share of the travel."""
@@ -112,21 +126,30 @@ class Outlook:
         """Give the turns expected to be left once this one is made."""
         ends, chances = self._outcomes(trim, way)
         energy = self._energy(ends)
-        further = np.min([self._one_more(ends, energy, s) for s in self.trims], axis=0)
-        left = np.where(energy <= self.radius2, 0.0, further)
-        return float(chances @ left)
+        chance, rest = self._one_more(ends, energy)
+        further = 1.0 + (1.0 - chance) * (BEYOND + 0.2 * np.log1p(rest / self.radius2))
+        return float(chances @ np.where(energy <= self.radius2, 0.0, further))
 
-    def _one_more(self, ends: Array, energy: Array, trim: int) -> Array:
-        """Turns left from each place when the next one is this trim's, to its own least."""
+    def _one_more(self, ends: Array, energy: Array) -> tuple[Array, Array]:
+        """Chance of getting there with the best next turn from each place, and the energy left."""
+        options = [self._one_more_of(ends, energy, trim) for trim in self.trims]
+        chances = np.array([o[0] for o in options])
+        rests = np.array([o[1] for o in options])
+        best = np.argmin((1.0 - chances) * (1.0 + np.log1p(rests / self.radius2)), axis=0)
+        pick = best[None, :]
+        return (
+            np.take_along_axis(chances, pick, axis=0)[0],
+            np.take_along_axis(rests, pick, axis=0)[0],
+        )
+
+    def _one_more_of(self, ends: Array, energy: Array, trim: int) -> tuple[Array, Array]:
         length = self.h[trim, trim]
         way = -(ends @ self.h[trim]) / length
-        across = energy - length * way**2
-        sigma2 = (self.hand.scatter**2 + 0.05**2) * way**2 + self.hand.jitter**2
+        across = np.maximum(energy - length * way**2, 0.0)
+        sigma2 = (self.hand.scatter**2 + UNEVEN**2) * way**2 + self.hand.jitter**2
         room = np.maximum(self.radius2 - across, 0.0)
-        chance = erf(np.sqrt(room / (2.0 * length * sigma2)))
-        rest = (np.maximum(across, 0.0) + length * sigma2) / self.radius2
-        result: Array = 1.0 + (1.0 - chance) * (BEYOND + 0.2 * np.log1p(rest))
-        return result
+        chance: Array = erf(np.sqrt(room / (2.0 * length * sigma2)))
+        return chance, across + length * sigma2
 
     def thd_after(self, trim: int, way: float) -> float:
         """Give the THD expected after a turn."""
@@ -136,15 +159,17 @@ class Outlook:
         scatter = self.h[trim, trim] * self.noise(trim, way) ** 2
         return float(np.sqrt(parts @ parts + scatter))
 
-    def gains(self, trim: int, way: float) -> bool:
-        """Tell whether a turn, and the one that may follow, promise to lower THD at all."""
+    def is_worth(self, trim: int, way: float) -> bool:
+        """Tell whether a turn, and the one that may follow, are worth making.
+
+        They are where they promise to lower THD clearly; and, while the setting is not good enough,
+        where the hand may well get there by trying, though it may as well not.
+        """
         ends, chances = self._outcomes(trim, way)
         energy = self._energy(ends)
-        least = energy
-        for s in self.trims:
-            move = -(ends @ self.h[s]) / self.h[s, s]
-            sigma2 = (self.hand.scatter**2 + 0.05**2) * move**2 + self.hand.jitter**2
-            least = np.minimum(least, energy - self.h[s, s] * (move**2 - sigma2))
-        doubt = float(np.sum(self.h * self.doubt))
-        now = float(self._energy(self.away)) + doubt
-        return bool(float(chances @ least) < 0.9 * now)
+        chance, rest = self._one_more(ends, energy)
+        now = float(self._energy(self.away)) + self._lost()
+        if float(chances @ np.minimum(energy, rest)) < CLEARLY * now:
+            return True
+        soon = float(chances @ np.where(energy <= self.radius2, 1.0, chance))
+        return now > self._radius2(GOOD_SHARE, GOOD_THD) and soon > FAIR_CHANCE

@@ -29,24 +29,24 @@ STRANGE: Final = 8.0
 """Standard deviations of misfit from which on no turn of a unit of this kind explains a reading."""
 
 
-def is_no_change(before: Seen, after: Seen) -> bool:
-    """Tell whether two readings differ by no more than chance."""
-    return _excess(before, after)[0] < CHANCE
-
-
-def _excess(before: Seen, after: Seen) -> tuple[float, Array]:
-    """How far the squared change stands above chance, in standard deviations; its variances."""
-    size = min(before.parts.size, after.parts.size)
-    variance = after.variance[:size] + before.variance[:size]
+def excess(before: Seen, after: Seen) -> float:
+    """Give how far the squared change of a reading stands above chance, in standard deviations."""
+    variance = _variance(before, after)
+    size = variance.size
     square = float(np.sum((after.parts[:size] - before.parts[:size]) ** 2 / variance))
-    return (square - size) / float(np.sqrt(2.0 * size)), variance
+    return (square - size) / float(np.sqrt(2.0 * size))
+
+
+def _variance(before: Seen, after: Seen) -> Array:
+    size = min(before.parts.size, after.parts.size)
+    return after.variance[:size] + before.variance[:size]
 
 
 def is_dead(before: Seen, after: Seen, move: Move, est: Estimate) -> bool:
     """Tell whether a turn that was due to change the reading changed nothing."""
-    excess, variance = _excess(before, after)
-    if excess >= CHANCE:
+    if excess(before, after) >= CHANCE:
         return False
+    variance = _variance(before, after)
     size = variance.size
     column = column_scale(size // 2 + 1)
     if est.known[move.trim]:
@@ -126,7 +126,6 @@ def _explained(
     size = before.belief.mean.shape[0]
     expected = expected_moves([*moves[:-1], move], hand, 0.1)
     sigma = float(np.sqrt(expected.covariance[-1, -1]))
-    thought = Movement(
-        move.trim, float(expected.steps[-1]), sigma, 1.6 * abs(move.asked) + 3.0 * hand.jitter
-    )
+    span = 1.6 * abs(move.asked) + 3.0 * hand.jitter
+    thought = Movement(move.trim, float(expected.steps[-1]), sigma, -span, span)
     return explain(before.belief, after.parts[:size], after.variance[:size], thought)
