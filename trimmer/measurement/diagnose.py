@@ -156,8 +156,7 @@ def _symmetry(reading: Reading) -> _Share:
     template = time_symmetry(reading.orders)
     rows = np.flatnonzero(template)
     mark = template[rows]
-    floor = (_MODEL * reading.parts[rows]) ** 2
-    weight = mark / (np.diag(reading.random_covariance)[rows] + floor + 1e-30)
+    weight = mark / (np.diag(reading.random_covariance)[rows] + 1e-30)
     delta = float(weight @ reading.parts[rows]) / float(weight @ mark)
     cut = reading.random_covariance[np.ix_(rows, rows)]
     sigma = math.sqrt(max(float(weight @ cut @ weight), 0.0)) / float(weight @ mark)

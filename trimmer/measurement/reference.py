@@ -125,10 +125,9 @@ def apply_reference(reading: Reading, reference: Reference) -> Reading:
     if not 1.0 / _FREQUENCY_OFF <= ratio <= _FREQUENCY_OFF:
         take[1::2] = False
     systematic = own + np.diag(_doubt(chain, take, mismatch, ratio) ** 2)
-    beyond = reading.systematic.diagonal()[known:] if reading.systematic.size else ()
-    systematic[range(known, size), range(known, size)] += beyond
-    if not take.all() and reading.systematic.size:
-        systematic += np.diag(np.where(take, 0.0, reading.systematic.diagonal()))
+    if reading.systematic.size:  # the reference has seen the non-linearity of what it took off
+        seen = take & (np.arange(size) < known)
+        systematic += np.diag(np.where(seen, 0.0, reading.systematic.diagonal()))
     told = with_parts(
         reading,
         reading.parts - np.where(take, chain, 0.0),
