@@ -95,7 +95,7 @@ NOMINAL = Parts(
     knees_v=(0.15,) * 2 * TAPS,
     upper=Ladder(8.2e3, (680.0, 820.0, 620.0, 470.0), 51e3, 47e3),
     lower=Ladder(8.2e3, (680.0, 820.0, 620.0, 470.0), 51e3, 47e3),
-    shared_ohm=200.0,
+    shared_ohm=180.0,
     rails_v=(10.0, -10.0),
     node_f=25e-12,
     output=OutputStage(gain=2.0, slew_v_s=0.515e6, unity_hz=1.5e6),
