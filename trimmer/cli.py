@@ -109,6 +109,9 @@ def _reading(parser: argparse.ArgumentParser) -> None:
         type=positive,
         help="average until THD is known this well, in percentage points",
     )
+    group.add_argument(
+        "--reference", metavar="NAME", help="a stored clean source, to be taken into account"
+    )
     group.add_argument("--set-range", action="store_true", help="let the instrument's range be set")
 
 
@@ -162,6 +165,13 @@ def build_parser() -> argparse.ArgumentParser:
     measure.add_argument("sources", metavar="SOURCE", nargs="+", help=SOURCE_HELP)
     for add in (_output, _reading, _bench, _book):
         add(measure)
+
+    measure.add_argument(
+        "--store", action="store_true", help="store the reading as the reference of that name"
+    )
+
+    sources = command("sources", "what can be read from this machine, and what each answers")
+    _output(sources)
 
     bench = command("bench", "run the simulated unit alone, as an SCPI instrument on loopback")
     bench.add_argument(

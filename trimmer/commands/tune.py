@@ -6,6 +6,7 @@ import argparse
 import sys
 
 from trimmer.book import Book, open_book
+from trimmer.commands.chain import reference_of
 from trimmer.commands.faces import JsonFace, PlainFace, converse
 from trimmer.commands.measure import wanted
 from trimmer.commands.opening import Opened, opened, shape_of
@@ -57,7 +58,8 @@ def session_of(options: argparse.Namespace, source: Opened, book: Book, *, follo
     keeper = Keeper(book, notes, travel_turns=options.travel, orders=options.orders)
     follows = follow and not paced(source)
     guide = Guide(travel_turns=options.travel, followed=follows, prior=prior_of(book, keeper.kind))
-    manner = Manner(wanted=wanted(options, frames=STILL_FRAMES), follow=follows)
+    asked = wanted(options, frames=STILL_FRAMES, reference=reference_of(book, options))
+    manner = Manner(wanted=asked, follow=follows)
     return Session(source.source, guide, keeper, manner)
 
 
