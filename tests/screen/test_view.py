@@ -209,9 +209,9 @@ def test_the_hand_on_the_keyboard_turns_the_trim_it_holds() -> None:
 def test_the_trim_to_be_left_alone_is_named_and_where_the_screwdriver_is() -> None:
     hand = KeyedHand(Turned(), 0.75)
     value = shown(state("advice-lower"), 100.0, hand, silent=False)
-    assert value.lines["lower-rest"] == ()
-    assert "leave it alone" in value.lines["upper-rest"][0]
-    assert "↓ moves it down" in value.lines["upper-rest"][0]
+    assert value.resting["lower"] == ()
+    assert "leave it alone" in value.resting["upper"][0]
+    assert "↓ moves it down" in value.resting["upper"][0]
 
 
 def test_only_keys_that_do_something_now_are_on_show() -> None:

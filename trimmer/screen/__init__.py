@@ -8,6 +8,9 @@ from typing import TYPE_CHECKING
 if TYPE_CHECKING:
     from trimmer.reports import Conversation, Screwdriver
 
+WITHOUT_BRAILLE = ("linux", "cons25", "vt220")
+"""Terminals whose font has no braille: text consoles without a window system."""
+
 
 def run_tune(
     session: Conversation,
@@ -17,7 +20,7 @@ def run_tune(
     hand: Screwdriver | None = None,
     travel: float = 0.75,
     bell: bool = True,
-    braille: bool = True,
+    braille: bool | None = None,
     dark: bool = True,
     wait_to_close: bool = True,
 ) -> int:
@@ -38,7 +41,7 @@ def run_tune(
     bell
         Ring the terminal's bell for slow, stop, wrong and done.
     braille
-        Draw curves in braille; False keeps to block characters.
+        Draw curves in braille or keep to block characters; None lets the terminal decide.
     dark
         Light on dark, or dark on light.
     wait_to_close
@@ -55,7 +58,8 @@ def run_tune(
 
     for stale in ("COLUMNS", "LINES"):
         os.environ.pop(stale, None)  # exported by some shells; they would pin the screen's size
-    dots = Dots.BRAILLE if braille else Dots.BLOCK
+    shown = os.environ.get("TERM") not in WITHOUT_BRAILLE if braille is None else braille
+    dots = Dots.BRAILLE if shown else Dots.BLOCK
     options = Options(source, cautions, hand, travel, bell, dots, wait_to_close, dark)
     try:
         status = TuneApp(session, options).run()

@@ -72,14 +72,12 @@ class CautionsScreen(Screen[bool]):
             for headline, rest in CAUTIONS:
                 yield Static(Content.assemble((headline, "bold $warning"), f" {rest}"))
             yield Static(READY, id="ready", markup=False)
-        yield KeysWidget(id="keys")
-
-    def on_mount(self) -> None:
-        """Show the keys."""
-        self.query_one(KeysWidget).keys = (
+        keys = KeysWidget(id="keys")
+        keys.keys = (
             Key("Enter", "I have read this: go on", "screen.go_on"),
             Key("q", "leave", "app.leave"),
         )
+        yield keys
 
     def action_go_on(self) -> None:
         """Go on."""

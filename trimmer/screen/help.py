@@ -56,19 +56,17 @@ class HelpScreen(ModalScreen[str | None]):
 
     def compose(self) -> ComposeResult:
         """Lay out the words, the keys, the way back."""
-        with VerticalScroll(id="help"):
-            yield Static(self._words, markup=False)
-            yield DeedsWidget(id="deeds")
-        yield KeysWidget(id="keys")
-
-    def on_mount(self) -> None:
-        """Show the keys."""
-        self.query_one(DeedsWidget).deeds = self._deeds
-        self.query_one(KeysWidget).keys = (
+        deeds, keys = DeedsWidget(id="deeds"), KeysWidget(id="keys")
+        deeds.deeds = self._deeds
+        keys.keys = (
             Key("Esc", "back", "screen.close"),
             Key("↑", "", "screen.scroll(-8)"),
             Key("↓", "more", "screen.scroll(8)"),
         )
+        with VerticalScroll(id="help"):
+            yield Static(self._words, markup=False)
+            yield deeds
+        yield keys
 
     def action_close(self) -> None:
         """Go back."""

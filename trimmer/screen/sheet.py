@@ -20,6 +20,12 @@ from trimmer.screen.widgets.keys import Key, KeysWidget
 from trimmer.screen.widgets.panes import CourseWidget, ShapeWidget
 from trimmer.screen.widgets.turn import SignWidget, WordsWidget
 
+KEYS = (
+    Key("Enter", "close", "screen.close"),
+    Key("?", "help", "app.explain"),
+    Key("t", "light/dark", "app.turn_light"),
+)
+
 
 class SheetScreen(Screen[None]):
     """Shows how a session ended."""
@@ -34,35 +40,31 @@ class SheetScreen(Screen[None]):
     def __init__(self, view: View) -> None:
         super().__init__()
         self.view = view
+        self.set_class(view.reading is None, "-unread")
 
     def compose(self) -> ComposeResult:
         """Lay out the verdict, the words, the pictures, the key."""
+        sign, words = SignWidget(id="sign"), WordsWidget(id="words")
+        shape, course, keys = (
+            ShapeWidget(id="shape"),
+            CourseWidget(id="course"),
+            KeysWidget(id="keys"),
+        )
+        sign.order = words.order = order(self.view)
+        shape.trace = self.view.trace
+        course.steps, course.floor = self.view.steps, self.view.floor
+        keys.keys = KEYS
         with Horizontal(id="verdict"):
-            yield SignWidget(id="sign")
-            yield WordsWidget(id="words")
+            yield sign
+            yield words
         with VerticalScroll(id="sheet"):
             lines = failed_lines(self.view) if self.view.failed else sheet_lines(self.view)
             for kind, text in lines:
                 yield Static(clean(text, 1000), classes=kind, markup=False)
         with Horizontal(id="panes"):
-            yield ShapeWidget(id="shape")
-            yield CourseWidget(id="course")
-        yield KeysWidget(id="keys")
-
-    def on_mount(self) -> None:
-        """Give every widget its value."""
-        todo = order(self.view)
-        self.query_one(SignWidget).order = todo
-        self.query_one(WordsWidget).order = todo
-        self.query_one(ShapeWidget).trace = self.view.trace
-        course = self.query_one(CourseWidget)
-        course.steps, course.floor = self.view.steps, self.view.floor
-        self.set_class(self.view.reading is None, "-unread")
-        self.query_one(KeysWidget).keys = (
-            Key("Enter", "close", "screen.close"),
-            Key("?", "help", "app.explain"),
-            Key("t", "light/dark", "app.turn_light"),
-        )
+            yield shape
+            yield course
+        yield keys
 
     def action_close(self) -> None:
         """Close."""

@@ -26,8 +26,10 @@ class Shown:
     """The word for the hand."""
     asked: bool
     """Whether a turn is asked for."""
-    lines: dict[str, tuple[str, ...]]
-    """Lines of text by the place they stand in."""
+    resting: dict[Trim, tuple[str, ...]]
+    """What is said of each trim that is to be left alone."""
+    matters: tuple[str, ...]
+    """What the eyes should see besides."""
     why: tuple[str, str]
     """Why, and what to expect."""
     status: tuple[str, str, str, str]
@@ -62,11 +64,8 @@ def shown(
         share=None if word is None else word.share,
         say="turn" if word is None else word.say,
         asked=view.advice is not None and not view.over,
-        lines={
-            "upper-rest": resting("upper", todo, hand),
-            "lower-rest": resting("lower", todo, hand),
-            "matters": ((BESIDE,) if beside else ()) + sentences.matters(view),
-        },
+        resting={"upper": resting("upper", todo, hand), "lower": resting("lower", todo, hand)},
+        matters=((BESIDE,) if beside else ()) + sentences.matters(view),
         why=(sentences.why(view), sentences.expectation(view)),
         status=sentences.status(view, now),
         keys=keys(view, hand, silent),

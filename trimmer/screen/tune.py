@@ -39,9 +39,9 @@ FRAME_S = 1 / 20
 """The shortest time between two frames."""
 
 
-PANES_S = 0.25
-"""The shortest time between two pictures of the panes while the hand turns: a slow line has no room
-for more, and the eyes are on the bar."""
+PANES_S = 0.5
+"""The shortest time between two pictures of the panes, and two sentences, while the hand turns: a slow
+line has no room for more, and the eyes are on the bar."""
 BESIDE_S = 20.0
 """How long the cautions stand beside a session on the simulated unit."""
 
@@ -92,6 +92,7 @@ class TuneScreen(Screen[None]):
         self.hand = None if options.hand is None else KeyedHand(options.hand, options.travel)
         self.silent = not options.bell
         self.dots = options.dots
+        self._place_widgets()
         self._session = session
         self._mailbox = Mailbox()
         self.leaving = False
@@ -103,22 +104,34 @@ class TuneScreen(Screen[None]):
         self._panes_due = 0.0
         self._panes_follow = False
 
+    def _place_widgets(self) -> None:
+        """Make the widgets; held by name, so that nothing is looked up in every frame."""
+        self.resting: dict[Trim, LineWidget] = {
+            "upper": LineWidget(id="upper-rest", classes="rest"),
+            "lower": LineWidget(id="lower-rest", classes="rest"),
+        }
+        self.sign, self.words = SignWidget(id="sign"), WordsWidget(id="words")
+        self.bar, self.why = BarWidget(id="bar"), WordyWidget(id="why")
+        self.shape, self.parts = ShapeWidget(id="shape"), PartsWidget(id="parts")
+        self.course, self.matters = CourseWidget(id="course"), LineWidget(id="matters")
+        self.status, self.keys = StatusWidget(id="status"), KeysWidget(id="keys")
+
     def compose(self) -> ComposeResult:
         """Lay out: the turn, the bar, why, the panes, what matters, where things stand, keys."""
-        yield LineWidget(id="upper-rest", classes="rest")
+        yield self.resting["upper"]
         with Horizontal(id="turn"):
-            yield SignWidget(id="sign")
-            yield WordsWidget(id="words")
-        yield LineWidget(id="lower-rest", classes="rest")
-        yield BarWidget(id="bar")
-        yield WordyWidget(id="why")
+            yield self.sign
+            yield self.words
+        yield self.resting["lower"]
+        yield self.bar
+        yield self.why
         with Horizontal(id="panes"):
-            yield ShapeWidget(id="shape")
-            yield PartsWidget(id="parts")
-            yield CourseWidget(id="course")
-        yield LineWidget(id="matters")
-        yield StatusWidget(id="status")
-        yield KeysWidget(id="keys")
+            yield self.shape
+            yield self.parts
+            yield self.course
+        yield self.matters
+        yield self.status
+        yield self.keys
 
     def on_mount(self) -> None:
         """Begin: the session in its thread, the clock for the reading's age."""
@@ -175,40 +188,26 @@ class TuneScreen(Screen[None]):
         """Give every widget its value; those whose value is the same stay as they are."""
         now = monotonic()
         value = shown(self.view, now, self.hand, self.silent, now < self._beside_until)
-        self.query_one(SignWidget).order = value.order
-        self.query_one(WordsWidget).order = value.order
-        self._show_lines(value)
-        self._show_bar(value)
-        self._show_panes(now)
-        self.query_one(KeysWidget).keys = value.keys
-
-    def _show_panes(self, now: float) -> None:
-        """Show shape, parts and course; while the hand turns less often than the bar."""
+        self.sign.order = self.words.order = value.order
+        self.bar.asked, self.bar.sense = value.asked, value.order.sense
+        self.bar.say, self.bar.share = value.say, value.share
+        for trim, line in self.resting.items():
+            line.lines = value.resting[trim]
+            line.display = bool(value.resting[trim])
+        self.matters.lines, self.status.parts = value.matters, value.status
+        self.status.set_class(value.stale, "-stale")
+        self.keys.keys = value.keys
         following = self.view.word is not None
-        if following and self._panes_follow and now < self._panes_due:
-            return
-        self._panes_due, self._panes_follow = now + PANES_S, following
-        shape = self.query_one(ShapeWidget)
-        shape.trace, shape.dots = self.view.trace, self.dots
-        self.query_one(PartsWidget).split = self.view.parts
-        course = self.query_one(CourseWidget)
-        course.steps, course.floor = self.view.steps, self.view.floor
+        if not (following and self._panes_follow and now < self._panes_due):
+            self._panes_due, self._panes_follow = now + PANES_S, following
+            self._show_panes(value)
 
-    def _show_lines(self, value: Shown) -> None:
-        self.query_one(WordyWidget).sentences = value.why
-        for name, lines in value.lines.items():
-            self.query_one(f"#{name}", LineWidget).lines = lines
-        for trim in ("upper", "lower"):
-            rest = self.query_one(f"#{trim}-rest")
-            rest.display = bool(value.lines[f"{trim}-rest"])
-        status = self.query_one(StatusWidget)
-        status.parts = value.status
-        status.set_class(value.stale, "-stale")
-
-    def _show_bar(self, value: Shown) -> None:
-        bar = self.query_one(BarWidget)
-        bar.asked, bar.share = value.asked, value.share
-        bar.sense, bar.say = value.order.sense, value.say
+    def _show_panes(self, value: Shown) -> None:
+        """Show why, shape, parts and course; while the hand turns less often than the bar."""
+        self.why.sentences = value.why
+        self.shape.trace, self.shape.dots = self.view.trace, self.dots
+        self.parts.split = self.view.parts
+        self.course.steps, self.course.floor = self.view.steps, self.view.floor
 
     def check_action(self, action: str, parameters: tuple[object, ...]) -> bool | None:  # noqa: ARG002
         """Only the simulated unit's trims can be turned from here."""

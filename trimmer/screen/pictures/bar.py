@@ -22,8 +22,13 @@ _ROLES: dict[Say, Role] = {
 
 def cell_of(share: float, width: int) -> int:
     """Say in which of `width` cells a share lies, the ends taking what is beyond them."""
-    place = (share - BEGIN) / (END - BEGIN) * width
-    return min(width - 1, max(0, int(place)))
+    return half_of(share, width) // 2
+
+
+def half_of(share: float, width: int) -> int:
+    """Say in which of ``2 width`` half cells a share lies, the ends taking what is beyond them."""
+    place = (share - BEGIN) / (END - BEGIN) * 2 * width
+    return min(2 * width - 1, max(0, int(place)))
 
 
 def bar(
@@ -50,9 +55,12 @@ def bar(
     zero, goal = cell_of(0.0, width), cell_of(1.0, width)
     cells: list[tuple[str, Role]] = [_track(at, zero, goal, share is None) for at in range(width)]
     if share is not None:
-        here = cell_of(share, width)
+        half = half_of(share, width)
+        here = half // 2
         for at in range(zero, min(here, goal)):
             cells[at] = ("█", _ROLES[say])
+        if half % 2 and zero <= here < goal:
+            cells[here] = ("▌" if sense == "clockwise" else "▐", _ROLES[say])
         for at in range(goal + 1, here + 1):
             cells[at] = ("▚", "halt")
         for at in range(here, zero):

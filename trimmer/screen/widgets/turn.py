@@ -2,12 +2,12 @@
 
 from __future__ import annotations
 
-from textual.geometry import Size
+from textual.geometry import Region, Size
 from textual.reactive import reactive
 
 from trimmer.guidance.advice import Say, Sense
 from trimmer.screen.orders import Order, slot_radians
-from trimmer.screen.pictures.bar import bar
+from trimmer.screen.pictures.bar import bar, cell_of, half_of
 from trimmer.screen.pictures.runs import Picture, Role, fitted, picture, row, wrapped
 from trimmer.screen.pictures.signs import sign
 from trimmer.screen.pictures.words import words
@@ -44,10 +44,24 @@ class WordsWidget(PictureWidget):
 class BarWidget(PictureWidget):
     """The bar that fills while the hand turns."""
 
-    share: reactive[float | None] = reactive(None)
+    share: reactive[float | None] = reactive(None, repaint=False)
     sense: reactive[Sense] = reactive("clockwise")
     say: reactive[Say] = reactive("turn")
     asked: reactive[bool] = reactive(False)
+
+    def watch_share(self, old: float | None, new: float | None) -> None:
+        """Paint only the cells that change: a slow line has to carry them 20 times a second."""
+        width, height = self.size.width, self.size.height
+        if old is None or new is None or width == 0:
+            self.refresh()
+            return
+        halves = [half_of(share, width) for share in (old, new)]
+        begin, end = min(halves) // 2, max(halves) // 2 + 1
+        if (old >= 1.0) != (new >= 1.0):
+            end = max(end, cell_of(1.0, width) + 1)
+        if halves[0] != halves[1]:
+            left = begin if self.sense == "clockwise" else width - end
+            self.refresh(Region(left, 0, end - begin, height))
 
     def picture(self, width: int, height: int) -> Picture:
         """Draw the bar, or nothing while no turn is asked for."""
@@ -90,7 +104,13 @@ class WordyWidget(PictureWidget):
     """Sentences over as many rows as they need, up to `MOST`."""
 
     MOST = 3
-    sentences: reactive[tuple[str, ...]] = reactive((), layout=True)
+    sentences: reactive[tuple[str, ...]] = reactive(())
+
+    def watch_sentences(self) -> None:
+        """Ask for another height only where it changes: a layout costs ten times a painting."""
+        width = self.size.width
+        if width and len(self._broken(width, self.MOST)) not in (self.size.height, 1):
+            self.refresh(layout=True)
 
     def get_content_height(self, _container: Size, _viewport: Size, width: int) -> int:
         """Count the rows."""
