@@ -77,12 +77,15 @@ class Projections:
         Exact at `self.w`; away from it the error is of the order of ``(K (w - self.w) B)^2 / 24``.
         `orders` keeps only that many orders, besides the offset and the nuisance lines.
         """
-        keep = slice(None) if orders is None else self.lines.kept(orders)
-        k = self.lines.multiples()[keep]
-        turn = twists(self.centres, self.lines, w)[:, keep]
-        moments = self.moments[:, keep]
+        lines, sums, moments = self.lines, self.sums, self.moments
+        if orders is not None and orders < lines.orders:
+            keep = lines.kept(orders)
+            lines = Lines(orders, lines.fixed)
+            sums, moments = sums[:, keep], moments[:, keep]
+        turn = twists(self.centres, lines, w)
         shift = w - self.w
-        sums = self.sums[:, keep] if shift == 0.0 else self.sums[:, keep] - 1j * shift * k * moments
+        if shift != 0.0:
+            sums = sums - (1j * shift) * lines.multiples() * moments
         first = turn * sums
         second = self.centres @ first + np.einsum("ml,ml->l", turn, moments)
         return first.sum(axis=0), second
@@ -119,13 +122,8 @@ def twists(t: Array, lines: Lines, w: float) -> Complex:
 
 
 def block_length(samples: int) -> int:
-    """Choose B: about as many samples in a block as there are blocks, even.
-
-    In a short record the blocks are shorter: they are cheap there, and the shorter they are, the
-    further the frequency may move before the samples have to be projected again.
-    """
-    share = 0.5 if samples > SHORT else 0.2
-    return max(8, 2 * round(share * float(np.sqrt(samples))))
+    """Choose B: about as many samples in a block as there are blocks, even."""
+    return max(8, 2 * round(0.5 * float(np.sqrt(samples))))
 
 
 def project(record: Record, lines: Lines, w: float) -> Projections:
