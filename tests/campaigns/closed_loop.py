@@ -1,23 +1,65 @@
-"""The closed loop at full size: ``python -m tests.campaigns.closed_loop [SEEDS] [--kind] [--past-the-stop]``.
+"""The closed loop at full size: ``python -m tests.campaigns.closed_loop [SEEDS] [OPTION ...]``.
 
 For each circuit and seed: a unit as it comes is trimmed through the real command, on captures of
 the simulator. About four seconds a trial on one core. With ``--kind`` the units of a circuit are
 trimmed one after another as one kind, in one book, so that each learns from those before it. With
-``--past-the-stop`` a part of each unit is so far off that its best setting is at an end stop.
+``--past-the-stop`` a part of each unit is so far off that its best setting is at an end stop. With
+``--clean`` all captures are as the simulator gives them, else every tenth unit's.
 """
 
 from __future__ import annotations
 
 import argparse
 import tempfile
+from dataclasses import dataclass
 from pathlib import Path
 
 import numpy as np
 
 from tests.circuits.closed_loop import PAST_THE_STOP, bench_of, reached
+from tests.circuits.maps import Best
 from tests.circuits.netlist import CIRCUITS
 from tests.circuits.optimum import optimum
-from tests.circuits.person import trim_by_the_command
+from tests.circuits.person import Outcome, trim_by_the_command
+
+
+@dataclass(frozen=True, slots=True)
+class Trial:
+    """One unit, trimmed."""
+
+    best: Best
+    """What its trims can reach."""
+    outcome: Outcome
+    """What came of it."""
+
+    @property
+    def good(self) -> bool:
+        """Whether it was reached."""
+        return reached(self.outcome, self.best)
+
+    def told(self, circuit: str, seed: int) -> str:
+        """Give it in a line, or in some more where it failed."""
+        outcome = self.outcome
+        verdict = (outcome.done or {}).get("verdict", f"status {outcome.status}")
+        line = (
+            f"{circuit:22} {seed:3} best {100 * self.best.thd:.3f} % ended {100 * outcome.thd:.3f} %"
+            f" after {outcome.turns:2} turns, {verdict}"
+        )
+        return line if self.good else f"{line}  NOT REACHED\n{outcome.told()}"
+
+
+def trial(circuit: str, seed: int, options: argparse.Namespace, room: Path) -> Trial:
+    """Trim one unit in a folder of its own under `room`."""
+    bench = bench_of(
+        circuit,
+        seed,
+        clean=options.clean or seed % 10 == 9,
+        past_the_stop=options.past_the_stop,
+    )
+    more = ("--kind", circuit, "--book", str(room / f"{circuit}.db")) if options.kind else ()
+    folder = room / f"{circuit}-{seed}"
+    folder.mkdir()
+    return Trial(optimum(bench.unit), trim_by_the_command(bench, folder, *more))
 
 
 def main() -> int:
@@ -26,33 +68,20 @@ def main() -> int:
     parser.add_argument("seeds", type=int, nargs="?", default=10, help="units of each circuit")
     parser.add_argument("--kind", action="store_true", help="units of a circuit share a memory")
     parser.add_argument("--past-the-stop", action="store_true", help="units that end at a stop")
+    parser.add_argument("--clean", action="store_true", help="captures without noise")
     parser.add_argument("--circuit", choices=CIRCUITS, action="append", help="only this one")
     options = parser.parse_args()
-    turns, failed = [], []
+    names = options.circuit or (PAST_THE_STOP if options.past_the_stop else CIRCUITS)
+    trials = []
     with tempfile.TemporaryDirectory(prefix="closed-loop-") as room:
-        for circuit in options.circuit or (PAST_THE_STOP if options.past_the_stop else CIRCUITS):
-            more = ("--kind", circuit, "--book", f"{room}/{circuit}.db") if options.kind else ()
+        for circuit in names:
             for seed in range(options.seeds):
-                bench = bench_of(
-                    circuit, seed, clean=seed % 10 == 9, past_the_stop=options.past_the_stop
-                )
-                best = optimum(bench.unit)
-                folder = Path(room) / f"{circuit}-{seed}"
-                folder.mkdir()
-                outcome = trim_by_the_command(bench, folder, *more)
-                good = reached(outcome, best)
-                turns.append(outcome.turns)
-                verdict = (outcome.done or {}).get("verdict", f"status {outcome.status}")
-                print(
-                    f"{circuit:22} {seed:3} best {100 * best.thd:.3f} % ended {100 * outcome.thd:.3f} %"
-                    f" after {outcome.turns:2} turns, {verdict}{'' if good else '  NOT REACHED'}",
-                    flush=True,
-                )
-                if not good:
-                    failed.append(outcome)
-                    print(outcome.told(), flush=True)
+                trials.append(trial(circuit, seed, options, Path(room)))
+                print(trials[-1].told(circuit, seed), flush=True)
+    turns = [one.outcome.turns for one in trials]
+    failed = sum(not one.good for one in trials)
     print(
-        f"{len(turns)} trials, {len(failed)} not reached; turns until done: median"
+        f"{len(trials)} trials, {failed} not reached; turns until done: median"
         f" {np.median(turns):g}, 95th percentile {np.percentile(turns, 95):g}, most {max(turns)}"
     )
     return 1 if failed else 0

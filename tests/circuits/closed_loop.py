@@ -14,7 +14,7 @@ PAST_THE_STOP = {
     "ladder_junctions": ("rail_n", 0.8),
     "tapped_string_diodes": ("rail_p", 1.2),
     "pair_coupled": ("r_leg", 0.8),
-    "few_sections": ("rail_p", 1.2),
+    "few_sections": ("rail_p", 1.3),
 }
 """A part so far off that the best setting lies past an end stop: its name, times its value."""
 

@@ -9,9 +9,10 @@ import pytest
 from numpy.typing import NDArray
 from scipy.optimize import minimize
 
+from tests.circuits.closed_loop import PAST_THE_STOP, bench_of
 from tests.circuits.facts import Facts, facts
-from tests.circuits.make_maps import SAMPLES, values_of
-from tests.circuits.maps import ORDERS, PARTS, Map, load_maps
+from tests.circuits.make_maps import SAMPLES, sample, values_of
+from tests.circuits.maps import ORDERS, PARTS, Map, from_values, load_maps
 from tests.circuits.netlist import CIRCUITS, toleranced_unit, with_values
 from tests.circuits.optimum import optimum
 from tests.circuits.runner import needs_ngspice, simulate
@@ -57,6 +58,16 @@ def test_the_map_and_a_search_on_the_simulator_find_the_same_best(name: str) -> 
     searched, mapped = optimum(toleranced_unit(name, 7)), unit.best()
     assert searched.thd == pytest.approx(mapped.thd, abs=2e-6)
     assert (searched.u, searched.l) == pytest.approx((mapped.u, mapped.l), abs=0.01)
+
+
+@needs_ngspice
+@pytest.mark.circuit
+@pytest.mark.parametrize("name", PAST_THE_STOP)
+def test_the_search_finds_a_best_at_an_end_stop(name: str) -> None:
+    unit = bench_of(name, seed=2, past_the_stop=True).unit
+    searched, mapped = optimum(unit), from_values(name, 2, sample(unit)).best()
+    assert {round(mapped.u, 3), round(mapped.l, 3)} & {0.0, 1.0}
+    assert searched.thd == pytest.approx(mapped.thd, abs=1e-5)
 
 
 def test_positions_beyond_the_travel_are_the_end_stops() -> None:
