@@ -282,6 +282,10 @@ class Scale(Part):
     """Frames averaged into this one."""
     code: FormulaText | None = None
     """Size of one code where the values are volts already."""
+    low_rail: FormulaText | None = None
+    """Lowest value where the values are volts already."""
+    high_rail: FormulaText | None = None
+    """Highest value where the values are volts already."""
 
 
 class Length(Part):
@@ -323,6 +327,8 @@ class Range(Part):
     """Setting of the scale, in proportion to the range; without its question mark."""
     offset: Command | None = None
     """Setting of the offset in volts."""
+    span: Annotated[float, Field(gt=0)] | None = None
+    """The whole range in units of the scale, for values that come without rails."""
     offset_from_centre: FormulaText = Field(default_factory=lambda: Formula("centre"))
     """Offset to send so that `centre` volts stand in the middle of the range."""
 
@@ -373,6 +379,8 @@ class Dialect(Part):
             ("scale.interval_s", self.scale.interval_s, none),
             ("scale.averaged", self.scale.averaged, none),
             ("scale.code", self.scale.code, none),
+            ("scale.low_rail", self.scale.low_rail, none),
+            ("scale.high_rail", self.scale.high_rail, none),
             ("codes.width", self.codes.width, none),
             ("codes.signed", self.codes.signed, none),
             ("codes.big_endian", self.codes.big_endian, none),

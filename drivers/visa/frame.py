@@ -197,15 +197,16 @@ def _floats(
         )
     volts[over], volts[under] = volts[good].max(), volts[good].min()
     volts = np.asarray(dialect.scale.volts({**fields, "code": volts}), dtype=np.float64)
-    code = None
-    if dialect.scale.code is not None:
-        try:
-            code = abs(dialect.scale.code.number(fields)) or None
-        except FormulaError:
-            code = None
+    code = _known(dialect.scale.code, fields)
     bits = _bits(dialect, fields, None, 0)
     clipped = int(np.count_nonzero(over) + np.count_nonzero(under))
-    return Converted(volts, interval_s, bits, code, None, None, clipped, averaged)
+    low_v, high_v = _known(dialect.scale.low_rail, fields), _known(dialect.scale.high_rail, fields)
+    near = 0.5 * abs(code or 0.0)
+    if low_v is None or high_v is None or volts.min() < low_v - near or volts.max() > high_v + near:
+        return Converted(volts, interval_s, bits, code, None, None, clipped, averaged)
+    if not clipped:
+        clipped = int(np.count_nonzero((volts <= low_v + near) | (volts >= high_v - near)))
+    return Converted(volts, interval_s, bits, code, low_v, high_v, clipped, averaged)
 
 
 def code_step(codes: NDArray[Any]) -> int:
@@ -242,14 +243,20 @@ def _volts(dialect: Dialect, fields: Fields, code: float) -> float:
     return dialect.scale.volts.number({**fields, "code": float(code)})
 
 
-def _whole(formula: Formula | None, fields: Fields) -> int | None:
-    """Work out a whole number, None where its fields are not known."""
+def _known(formula: Formula | None, fields: Fields) -> float | None:
+    """Work out a number, None where its fields are not known."""
     if formula is None:
         return None
     try:
-        return round(formula.number(fields))
+        return formula.number(fields)
     except FormulaError:
         return None
+
+
+def _whole(formula: Formula | None, fields: Fields) -> int | None:
+    """Work out a whole number, None where its fields are not known."""
+    value = _known(formula, fields)
+    return None if value is None else round(value)
 
 
 def _marked(values: NDArray[np.float64], mark: Formula | None, fields: Fields) -> NDArray[np.bool_]:

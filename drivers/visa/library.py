@@ -6,6 +6,7 @@ import contextlib
 import os
 import socket
 import threading
+import traceback
 from dataclasses import dataclass
 from typing import Any, Literal
 
@@ -99,7 +100,11 @@ def _named(error: Exception, shown: str, again: bool) -> SourceError:
 def _open(visa: Any, resource: str, timeout_s: float) -> Opened:
     from pyvisa.constants import InterfaceType, ResourceAttribute
 
-    session = visa.open_resource(resource, open_timeout=max(1, int(timeout_s * 1000.0)))
+    try:
+        session = visa.open_resource(resource, open_timeout=max(1, int(timeout_s * 1000.0)))
+    except Exception as error:
+        _close_left_open(error)
+        raise
     try:
         held = getattr(session.visalib, "sessions", {}).get(session.session)
         interface = getattr(held, "interface", None)
@@ -126,6 +131,21 @@ def _open(visa: Any, resource: str, timeout_s: float) -> Opened:
             session.close()
         raise
     return Opened(clean(resource), kind, kind in ("SOCKET", "ASRL"), session, interface)
+
+
+def _close_left_open(error: Exception) -> None:
+    """Close the sockets of an opening that failed half way.
+
+    The library leaves them to the garbage collector: only the frames of the failure know them.
+    """
+    failures: list[BaseException] = [error]
+    while failures:
+        failure = failures.pop()
+        failures += [one for one in (failure.__cause__, failure.__context__) if one is not None]
+        for frame, _ in traceback.walk_tb(failure.__traceback__):
+            for used in sockets_of(frame.f_locals.get("self")):
+                with contextlib.suppress(OSError):
+                    used.close()
 
 
 def _kind(session: Any) -> LinkKind:

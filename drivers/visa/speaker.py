@@ -135,6 +135,7 @@ class Speaker:
         average = self.dialect.average
         if average is None or count == self.averages or self.known.encoding:
             return
+        self.forget_optional()
         if count <= 1:
             self.kept.put_back(self.talk, average.keep, deadline)
             self.averages = 1
@@ -155,6 +156,10 @@ class Speaker:
             self.kept.put_back(self.talk, average.keep, deadline)
             wanted = 1
         self.averages = wanted
+
+    def forget_optional(self) -> None:
+        """Ask the optional fields again with the next frame: a setting was changed."""
+        self._also_at = -math.inf
 
     # Frames --------------------------------------------------------------------------------
 

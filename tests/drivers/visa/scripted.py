@@ -77,4 +77,3 @@ class ScriptedLink:
         if self._at < len(self._lines):
             left = [sent for sent, _ in self._lines[self._at :]]
             raise Mismatch(f"never sent: {left}")
-

@@ -31,7 +31,9 @@ def test_a_number_is_read_with_its_unit(text, value) -> None:
     assert answers.number(text) == pytest.approx(value, rel=1e-15)
 
 
-@pytest.mark.parametrize("text", ["", "DC", "V", "1.5 parsec", "1.5 xV", "--", "1,5", "0x10", "nan"])
+@pytest.mark.parametrize(
+    "text", ["", "DC", "V", "1.5 parsec", "1.5 xV", "--", "1,5", "0x10", "nan"]
+)
 def test_what_is_no_number_is_refused(text) -> None:
     with pytest.raises(answers.AnswerError):
         answers.number(text)
@@ -71,7 +73,14 @@ def test_keyed_values_are_read_whatever_their_case() -> None:
 
 @pytest.mark.parametrize(
     ("word", "yes"),
-    [("YMU", True), ("YMUL", True), ("ymult", True), ("YM", False), ("YMULTI", False), ("YOF", False)],
+    [
+        ("YMU", True),
+        ("YMUL", True),
+        ("ymult", True),
+        ("YM", False),
+        ("YMULTI", False),
+        ("YOF", False),
+    ],
 )
 def test_a_word_is_a_form_of_another_between_short_and_long(word, yes) -> None:
     assert answers.matches_form(word, "YMUlt") is yes

@@ -114,7 +114,11 @@ def test_ten_gigabytes_cannot_even_be_written_in_nine_digits() -> None:
         of_message(b"#A10000000000" + b"x" * 20)
 
 
-@given(payload=st.binary(max_size=300), digits=st.integers(3, 9), tail=st.sampled_from(["", "\n", "\n\n"]))
+@given(
+    payload=st.binary(max_size=300),
+    digits=st.integers(3, 9),
+    tail=st.sampled_from(["", "\n", "\n\n"]),
+)
 def test_every_payload_comes_back_as_it_was(payload: bytes, digits: int, tail: str) -> None:
     sent = f"#{digits}{len(payload):0{digits}d}".encode() + payload + tail.encode()
     assert of_message(sent) == payload

@@ -59,10 +59,10 @@ def test_text_scales_read_negative_codes_as_twos_complement() -> None:
 
 def test_a_keyword_preamble_by_its_worked_example() -> None:
     """YMULT 31.25e-6, offsets 0, code 6400 is 0.2 V."""
-    fields = dict(
-        channel=1.0, width=2.0, bits=16.0, format="RI", order="MSB", points=2.0, shape="Y",
-        interval=1e-6, multiplier=31.25e-6, offset=0.0, zero=0.0, mode=None, averages=None,
-    )  # fmt: skip
+    fields = {
+        "channel": 1.0, "width": 2.0, "bits": 16.0, "format": "RI", "order": "MSB", "points": 2.0, "shape": "Y",
+        "interval": 1e-6, "multiplier": 31.25e-6, "offset": 0.0, "zero": 0.0, "mode": None, "averages": None,
+    }  # fmt: skip
     payload = np.array([6400, -6400], dtype=">i2").tobytes()
     read = convert(DIALECTS["keyword-curve"], fields, payload, Reading())
     assert read.volts == pytest.approx([0.2, -0.2], rel=1e-14)
@@ -96,9 +96,7 @@ def test_eight_bits_shifted_into_sixteen_are_seen_as_eight() -> None:
 
 def test_averaged_words_have_their_true_bits() -> None:
     words = np.random.default_rng(1).integers(0x2000, 0xD000, 1000) & 0xFFF0
-    read = ten(
-        "ten-field", words.astype("<u2").tobytes(), format=1.0, points=1000.0, count=64.0
-    )
+    read = ten("ten-field", words.astype("<u2").tobytes(), format=1.0, points=1000.0, count=64.0)
     assert read.bits == 12
     assert read.averaged == 64
 
@@ -175,11 +173,11 @@ def test_the_step_between_codes_is_at_least_the_shift(codes: list[int], shift: i
 )
 def test_both_byte_orders_give_the_same_volts(codes: list[int], big: bool) -> None:
     order = ">" if big else "<"
-    fields = dict(
-        channel=1.0, width=2.0, bits=16.0, format="RI", order="MSB" if big else "LSB",
-        points=float(len(codes)), shape="Y", interval=1e-6, multiplier=1.0, offset=0.0, zero=0.0,
-        mode=None, averages=None,
-    )  # fmt: skip
+    fields = {
+        "channel": 1.0, "width": 2.0, "bits": 16.0, "format": "RI", "order": "MSB" if big else "LSB",
+        "points": float(len(codes)), "shape": "Y", "interval": 1e-6, "multiplier": 1.0, "offset": 0.0, "zero": 0.0,
+        "mode": None, "averages": None,
+    }  # fmt: skip
     payload = np.array(codes, dtype=f"{order}i2").tobytes()
     volts = convert(DIALECTS["keyword-curve"], fields, payload, Reading()).volts
     assert list(volts) == [float(code) for code in codes]

@@ -123,7 +123,6 @@ KEYWORD_CURVE: list[Line] = [
     ("DATa:ENCdg RIBinary", None),
     ("DATa:WIDth 2", None),
     WELL,
-    WELL,
     ("DATa:STOP 1000000", None),
     ("*ESR?", "16"),
     ("EVENT?", "222"),
@@ -201,6 +200,10 @@ DATA_HEADER: list[Line] = [
     ("CHANnel1:COUPling?", "DCL"),
     ("CHANnel1:DATA:YINCrement?", "0.25"),
     ("CHANnel1:DATA:YRESolution?", "8"),
+    ("CHANnel1:RANGe?", "10"),
+    ("CHANnel1:OFFSet?", "0"),
+    ("CHANnel1:ARIThmetics?", "OFF"),
+    ("ACQuire:AVERage:COUNt?", "8"),
     ("CHANnel1:DATA:HEADer?", "-1.0E-6,1.0E-6,3,1"),
     ("CHANnel1:DATA?", b"#212" + struct.pack("<3f", 0.25, 0.5, -0.75)),
     NO_ERROR,
@@ -297,9 +300,7 @@ def test_a_refused_command_is_told_with_its_words(monkeypatch) -> None:
 def test_an_error_beside_a_frame_makes_it_be_taken_again(monkeypatch) -> None:
     error: Line = ("SYSTem:ERRor?", '-222,"Data out of range"')
     frame = [*TEN_FIELD[15:18], *TEN_FIELD[21:23]]
-    link = played(
-        monkeypatch, [*TEN_FIELD[:23], error, NO_ERROR, *frame, NO_ERROR, (":RUN", None)]
-    )
+    link = played(monkeypatch, [*TEN_FIELD[:23], error, NO_ERROR, *frame, NO_ERROR, (":RUN", None)])
     with open_instrument("SCRIPT", dialect="ten-field") as source:
         assert source.capture(CaptureRequest()).samples.size == 3
     link.finished()

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import re
 from collections import deque
+from collections.abc import Callable
 from fractions import Fraction
 
 import numpy as np
@@ -67,6 +68,11 @@ class Brain:
     def new_frame(self) -> None:
         """Take a frame: sets `codes` and `meant`."""
         raise NotImplementedError
+
+    def mean(self, volts: Callable[[int], Fraction]) -> None:
+        """Work out what each code means; every code but once."""
+        values = {code: volts(code) for code in set(self.codes.tolist())}
+        self.meant = [values[code] for code in self.codes.tolist()]
 
     def arm(self) -> None:
         """Take a new frame, unless the instrument is told to hand out the one of before."""
@@ -132,4 +138,5 @@ def block(payload: bytes, digits: int | None = None) -> bytes:
 def packed(codes: np.ndarray, width: int, *, signed: bool, big: bool) -> bytes:
     """Write codes one by one, by Python's own integers."""
     order = "big" if big else "little"
-    return b"".join(int(code).to_bytes(width, order, signed=signed) for code in codes)
+    written = {c: c.to_bytes(width, order, signed=signed) for c in set(codes.tolist())}
+    return b"".join(map(written.__getitem__, codes.tolist()))

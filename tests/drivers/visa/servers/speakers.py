@@ -58,14 +58,13 @@ class TenField(Brain):
         low, high = (-100, 100) if self.form == "signed" else (20, 230)
         self.codes = self.draw(low, high)
         increment, origin = Fraction(self.y_increment), Fraction(self.y_origin)
-        code = [Fraction(int(value)) for value in self.codes]
         match self.form:
             case "volts":
-                self.meant = [(c - self.y_reference) * increment + origin for c in code]
+                self.mean(lambda code: (code - self.y_reference) * increment + origin)
             case "code":
-                self.meant = [(c - origin - self.y_reference) * increment for c in code]
+                self.mean(lambda code: (code - origin - self.y_reference) * increment)
             case _:
-                self.meant = [c * increment + origin for c in code]
+                self.mean(lambda code: code * increment + origin)
 
     def own(self, head: str, argument: str) -> bytes | None:
         if forms(":WAVeform:PREamble?").fullmatch(head):
@@ -151,7 +150,7 @@ class KeywordCurve(Brain):
         self.multiplier = Fraction("0.0015625")
         self.offset = Fraction("-12.5")
         self.zero = Fraction("0.3")
-        self.meant = [(c - self.offset) * self.multiplier + self.zero for c in map(int, self.codes)]
+        self.mean(lambda code: (code - self.offset) * self.multiplier + self.zero)
 
     def own(self, head: str, argument: str) -> bytes | None:
         word = argument.upper()
@@ -234,7 +233,7 @@ class Descriptor(Brain):
     def new_frame(self) -> None:
         self.codes = self.draw(-110, 110)
         self.gain, self.offset = Fraction("0.01"), Fraction("0.2")
-        self.meant = [self.gain * int(code) - self.offset for code in self.codes]
+        self.mean(lambda code: self.gain * code - self.offset)
 
     def own(self, head: str, argument: str) -> bytes | None:
         word = argument.upper()
@@ -291,7 +290,7 @@ class VdivText(Brain):
         self.codes = self.draw(-120, 120)
         self.interval = Fraction(1, 1_250_000)
         self.vdiv, self.offset = Fraction("0.5"), Fraction("-0.75")
-        self.meant = [Fraction(int(c)) * self.vdiv / 25 - self.offset for c in self.codes]
+        self.mean(lambda code: code * self.vdiv / 25 - self.offset)
 
     def own(self, head: str, argument: str) -> bytes | None:
         upper = head.upper()
@@ -336,7 +335,7 @@ class DataHeader(Brain):
     def new_frame(self) -> None:
         self.codes = self.draw(20, 230)
         # Sixteenths of a volt are exact in 32 bits.
-        self.meant = [Fraction(int(code) - 128, 16) for code in self.codes]
+        self.mean(lambda code: Fraction(code - 128, 16))
 
     def own(self, head: str, argument: str) -> bytes | None:
         if forms("FORMat").fullmatch(head):
@@ -369,7 +368,7 @@ class MemoryHeader(Brain):
 
     def new_frame(self) -> None:
         self.codes = self.draw(-110, 110)
-        self.meant = [Fraction(int(code)) / 25 * Fraction("0.2") for code in self.codes]
+        self.mean(lambda code: Fraction(code, 25) * Fraction("0.2"))
 
     def own(self, head: str, argument: str) -> bytes | None:
         if forms(":ACQuire1:MEMory?").fullmatch(head):
@@ -407,7 +406,7 @@ class FormatTrace(Brain):
     def new_frame(self) -> None:
         self.codes = self.draw(-100, 100)
         step = Fraction(1, 64) if self.widest == 32 else Fraction(1, 70)
-        self.meant = [Fraction(int(code)) * step for code in self.codes]
+        self.mean(lambda code: code * step)
 
     def own(self, head: str, argument: str) -> bytes | None:
         if forms("FORMat:DATA").fullmatch(head) or forms("FORMat").fullmatch(head):
