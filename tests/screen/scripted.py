@@ -6,12 +6,14 @@ import time
 from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass, field
 from datetime import UTC, datetime
+from functools import cache
 from queue import Empty, SimpleQueue
 
 import numpy as np
 from numpy.typing import NDArray
 
 from trimmer.guidance.advice import Advice, Cause, Done, Follow, Say, Sense, Trim
+from trimmer.measurement.figures import shape_at
 from trimmer.measurement.reading import Crests, Flag, Interval, Reading
 from trimmer.reports import (
     Advised,
@@ -86,11 +88,27 @@ OPENED = Opened(
 )  # fmt: skip
 
 
+PERIOD = 437.3
+"""Samples to a period of the pictured captures."""
+INTERVAL_S = 1.0 / (1000.02 * PERIOD)
+
+
+@cache
+def _noise() -> NDArray[np.float64]:
+    return np.random.default_rng(11).normal(size=2000)
+
+
+def capture(parts: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Samples of a wave of these parts as an 8-bit digitiser gives them, 4 periods and a half."""
+    theta = 2 * np.pi * np.arange(2000) / PERIOD + 0.7
+    volts = 2.51 * shape_at(parts, theta) + 0.012 + 0.012 * _noise()
+    return np.asarray(np.round(volts / 0.024) * 0.024)
+
+
 def measured(turn: int, upper: float, lower: float, flags: tuple[Flag, ...] = ()) -> Measured:
     """A still reading after so many turns."""
-    return Measured(
-        turn, TAKEN_AT, "bench", reading(parts_at(upper, lower), flags), np.zeros(0), 1e-6
-    )
+    parts = parts_at(upper, lower)
+    return Measured(turn, TAKEN_AT, "bench", reading(parts, flags), capture(parts), INTERVAL_S)
 
 
 def advised(
@@ -124,10 +142,10 @@ def followed(
     still: bool = False,
 ) -> Followed:
     """A live reading."""
-    live = reading(parts_at(upper, lower))
-    return Followed(
-        Follow(turn, trim, share, say, still, live.thd.value), live, np.zeros(0), 1e-6, 0.02
-    )
+    parts = parts_at(upper, lower)
+    live = reading(parts)
+    word = Follow(turn, trim, share, say, still, live.thd.value)
+    return Followed(word, live, capture(parts), INTERVAL_S, 0.02)
 
 
 CONFIRMING = Awaiting(
@@ -195,8 +213,8 @@ STATES |= {
     "no-signal": (*_SO_FAR, NO_SIGNAL),
     "drifting": (*_SO_FAR, DRIFTING),
     "file": (*_SO_FAR[:-1], advised(follows=False), FILE),
-    "confirming": (*_SO_FAR[:-1], measured(4, 0.01, 0.005), CONFIRMING),
-    "finished": (*_SO_FAR[:-1], measured(4, 0.01, 0.005), measured(5, 0.002, 0.001), FINISHED),
+    "confirming": (*_SO_FAR, measured(4, 0.01, 0.005), CONFIRMING),
+    "finished": (*_SO_FAR, measured(4, 0.04, 0.02), measured(5, 0.018, 0.012), FINISHED),
     "failed": (*_SO_FAR, FAILED),
 }
 
