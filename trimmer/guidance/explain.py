@@ -62,8 +62,23 @@ def explain(belief: FieldBelief, parts: Array, variance: Array, thought: Movemen
     reach = thought.high - thought.low
     ways = thought.low + reach * _SHARES
     _, surprise = _surprise(belief, parts, variance, thought, ways)
-    best = float(ways[int(np.argmin(surprise))])
-    step = reach / (_SHARES.size - 1)
+    coarse = float(ways[int(np.argmin(surprise))])
+    fine, sigma = _refined(belief, parts, variance, thought, coarse)
+    misfit, surprise = _surprise(belief, parts, variance, thought, np.array([coarse, fine]))
+    best = int(np.argmin(surprise))
+    return Explained((coarse, fine)[best], sigma, float(misfit[best]), float(surprise[best]))
+
+
+def _refined(
+    belief: FieldBelief, parts: Array, variance: Array, thought: Movement, coarse: float
+) -> tuple[float, float]:
+    """Refine a movement found on the grid by least squares; also its standard deviation.
+
+    The doubt of the field is held at each round, so where it is all there is (a column that is not
+    known) this may lead away: the caller compares.
+    """
+    best = coarse
+    step = (thought.high - thought.low) / (_SHARES.size - 1)
     held = 1.0 / thought.sigma**2
     strength = held
     for _ in range(_ROUNDS):
@@ -74,8 +89,7 @@ def explain(belief: FieldBelief, parts: Array, variance: Array, thought: Movemen
         pull = float(column @ (weight * (parts - belief.at(place[0]))))
         move = (pull + held * (thought.expected - best)) / strength
         best = float(np.clip(best + np.clip(move, -step, step), thought.low, thought.high))
-    misfit, surprise = _surprise(belief, parts, variance, thought, np.array([best]))
-    return Explained(best, strength**-0.5, float(misfit[0]), float(surprise[0]))
+    return best, strength**-0.5
 
 
 def _place(trim: int, ways: Array) -> Array:

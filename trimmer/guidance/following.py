@@ -2,7 +2,7 @@
 
 Every live reading is explained in turn by the asked trim in the asked sense, by the other sense, and by
 the other trim, under the belief about the field and its doubt. The likeliest is what the hand does; a
-mistake must be much likelier, twice running, before it is called one.
+mistake must be much likelier over a few readings before it is called one.
 """
 
 from __future__ import annotations
@@ -23,6 +23,8 @@ from trimmer.guidance.words import TRIMS
 
 MOVED: Final = 5.0
 """Standard deviations by which a reading must differ from the last still one to count as moved."""
+MOVED_ALONG: Final = 4.0
+"""Standard deviations along the asked trim's column, twice running, that count as moved too."""
 STILL: Final = 3.0
 """Standard deviations within which readings are the same."""
 STILL_S: Final = 0.6
@@ -31,10 +33,12 @@ PAUSE_S: Final = 1.6
 """.. but on the way, a pause this long."""
 NEAR: Final = 0.8
 """Share of the way from which on the hand is no longer on the way."""
-MISTAKE: Final = 14.0
-"""How much better a mistake must explain a reading than the turn asked for."""
-RUNNING: Final = 2
-"""Readings in a row that must show a mistake."""
+MISTAKE: Final = 16.0
+"""How much better, over the last few readings together, a mistake must explain what is read."""
+LIKELIER: Final = 5.0
+"""How much better it must explain the last one."""
+RUNNING: Final = 3
+"""The last few readings."""
 ENOUGH: Final = 25.0
 """A change this many times the noise teaches a column well."""
 
@@ -69,8 +73,10 @@ class Following:
     moved: bool = False
     strayed: bool = False
     """Whether the other trim was seen to move."""
-    wrong: Say | None = None
     running: int = 0
+    """Readings in a row that show a movement along a column."""
+    odds: list[float] = field(default_factory=list)
+    """How much better a mistake explains the last few readings than the turn asked for."""
     place: Array = field(default_factory=lambda: np.zeros(2))
     history: list[tuple[float, Seen]] = field(default_factory=list)
     pace: Pace = field(init=False)
@@ -81,11 +87,11 @@ class Following:
     def take(self, reading: Seen, time_s: float) -> Follow:
         """Take a live reading and give the word for the hand."""
         self.history.append((time_s, reading))
-        self.moved = self.moved or excess(self.base, reading) > MOVED
+        say = self._watch(reading)
+        self.moved = self.moved or say is not None or excess(self.base, reading) > MOVED
         if not self.moved:
             share = 0.0 if self.known[self.trim] else None
             return self._word(share, "turn", False, reading)
-        say = self._watch(reading)
         share, pace = self._progress(reading, time_s)
         still = self._is_still(share)
         if still:
@@ -111,27 +117,38 @@ class Following:
             return None
         parts, variance = self._fit(reading)
         asked = explain(self.belief, parts, variance, self._thought(self.trim, 1.0))
-        likely: list[tuple[float, Say, Explained]] = []
-        if self.known[self.trim]:
-            back = explain(self.belief, parts, variance, self._thought(self.trim, -1.0))
-            likely.append((back.surprise, "wrong-way", back))
-        if self.known[1 - self.trim]:
-            for sense in (1.0, -1.0):
-                other = explain(self.belief, parts, variance, self._thought(1 - self.trim, sense))
-                likely.append((other.surprise, "wrong-trim", other))
+        surprise, say, mistake = min(self._mistakes(parts, variance), key=lambda x: x[0])
+        self._note(asked, mistake)
         self.place = np.zeros(2)
         self.place[self.trim] = asked.way
-        surprise, say, mistake = min(likely, key=lambda x: x[0])
-        erring = surprise + MISTAKE < asked.surprise
+        self.odds = [*self.odds[1 - RUNNING :], asked.surprise - surprise]
+        erring = self.odds[-1] > LIKELIER and sum(self.odds) > MISTAKE
         if self.strayed and all(self.known):
             return self._astray(parts, variance, say if erring else None)
-        self.running = self.running + 1 if erring else 0
-        if self.running < RUNNING:
+        if not erring:
             return None
         self.place = np.zeros(2)
         self.place[self.trim if say == "wrong-way" else 1 - self.trim] = mistake.way
         self.strayed = self.strayed or say == "wrong-trim"
         return say
+
+    def _mistakes(self, parts: Array, variance: Array) -> list[tuple[float, Say, Explained]]:
+        """Explanations by a trim or a sense that was not asked for, where its column is known."""
+        found: list[tuple[float, Say, Explained]] = []
+        if self.known[self.trim]:
+            back = explain(self.belief, parts, variance, self._thought(self.trim, -1.0))
+            found.append((back.surprise, "wrong-way", back))
+        if self.known[1 - self.trim]:
+            for sense in (1.0, -1.0):
+                other = explain(self.belief, parts, variance, self._thought(1 - self.trim, sense))
+                found.append((other.surprise, "wrong-trim", other))
+        return found
+
+    def _note(self, asked: Explained, mistake: Explained) -> None:
+        """Note a movement that shows along the columns before it shows in the parts as a whole."""
+        clear = max(abs(x.way) / x.sigma for x in (asked, mistake)) > MOVED_ALONG
+        self.running = self.running + 1 if clear and self.known[self.trim] else 0
+        self.moved = self.moved or self.running >= RUNNING
 
     def _astray(self, parts: Array, variance: Array, say: Say | None) -> Say | None:
         """Judge once the other trim has moved: both may now be off their places."""

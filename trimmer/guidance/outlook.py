@@ -55,7 +55,7 @@ class Outlook:
         self.best = est.best
         self.away = est.here - est.best
         columns = est.belief.columns(est.best)
-        self.h = columns @ columns.T
+        self.h = columns @ columns.T + 1e-9 * np.eye(2)
         self.floor = est.floor_thd
         self.radius2 = self._radius2(CLOSE_SHARE, CLOSE_THD)
         self.doubt = self._doubt(columns)
