@@ -6,7 +6,7 @@ from drivers.bench.speakers.descriptor import Descriptor
 from drivers.bench.speakers.format_trace import FormatTrace
 from drivers.bench.speakers.keyword_curve import KeywordCurve
 from drivers.bench.speakers.memory_header import MemoryHeader
-from drivers.bench.speakers.ten_field import CodeOrigin, Signed, VoltsOrigin
+from drivers.bench.speakers.ten_field_forms import CodeOrigin, Signed, VoltsOrigin
 from drivers.bench.speakers.vdiv_text import VdivText
 
 SPEAKERS: dict[str, type[Instrument]] = {
