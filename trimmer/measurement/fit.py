@@ -20,14 +20,14 @@ from trimmer.measurement.search import beat
 
 _BLUR = 3e-6
 """Most that the highest order may turn within half a block (rad) between projection and fit."""
-_BLUR_OF_MOMENTS = 1e-8
+_BLUR_OF_MOMENTS = 4e-9
 """The same, times the block's share of the record."""
 _STEPS = 30
 _ROUNDS = 8
 _GRAIN = 1e-14
 _STAGES = (2, 8)
 """Orders fitted on the way: the more orders, the narrower the way to the minimum."""
-_ROUGH, _NEAR, _FINE = 1e-2, 1e-3, 1e-7
+_ROUGH, _NEAR, _FINE = 1e-2, 0.1, 1e-7
 """A frequency counts as settled when the next step turns the highest order by less than this (rad)
 over half the record. The step is still taken, and what it leaves is its square."""
 

@@ -122,8 +122,14 @@ def twists(t: Array, lines: Lines, w: float) -> Complex:
 
 
 def block_length(samples: int) -> int:
-    """Choose B, even: twice as many samples in a block as there are blocks, for the blocks' sums are kept."""
-    return max(8, 2 * round(0.7 * float(np.sqrt(samples))))
+    """Choose B, even.
+
+    In a long record twice as many samples in a block as there are blocks, because the blocks' sums
+    are kept; in a short one half as many, so that the frequency may move further before the samples
+    have to be projected again.
+    """
+    share = 0.7 if samples > SHORT else 0.35
+    return max(8, 2 * round(share * float(np.sqrt(samples))))
 
 
 def project(record: Record, lines: Lines, w: float) -> Projections:
