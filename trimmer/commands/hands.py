@@ -42,7 +42,7 @@ class HandsOn:
                     turns = SIGN[advice.sense] * advice.turns
                     self._hand.make(advice.trim, turns, seconds=BY_EYE_S)
                 case Advised(advice=advice, follows=True):
-                    self._hand.start(advice.trim, SIGN[advice.sense])
+                    self._hand.start(advice.trim, SIGN[advice.sense], advice.turns)
                     self._turning = True
                 case Followed(word=word) if self._turning and word.say in STOPS:
                     self._hand.stop()
