@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from trimmer.guidance.aim import Aim, Box
 from trimmer.guidance.explain import Movement, explain
-from trimmer.guidance.field import Array, FieldBelief, features
+from trimmer.guidance.field import VALUE, Array, FieldBelief, features
 from trimmer.guidance.floor import floor_at
 from trimmer.guidance.general import general_belief
 from trimmer.guidance.habit import Habit, habit
@@ -16,6 +16,7 @@ from trimmer.guidance.hand import Hand
 from trimmer.guidance.memory import KindPrior
 from trimmer.guidance.path import Found, Walk, find_walk
 from trimmer.guidance.record import Record
+from trimmer.guidance.warming import WarmDrift
 
 GENERAL_FREEDOM = 3.0
 KIND_SCALE = 0.12
@@ -25,6 +26,43 @@ START_SIGMA = 0.3
 
 _AXIS = np.linspace(-0.9, 0.9, 25)
 _GRID = np.stack(np.meshgrid(_AXIS, _AXIS), axis=-1).reshape(-1, 2)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Offsets:
+    """What is added to the field before the trims are aimed at it."""
+
+    warm: WarmDrift | None = None
+    """The change until the unit is warm: reckoned with."""
+    foreign: Array | None = None
+    """Shape (m,), parts that the trims must not be used to hide: left out."""
+
+    def aimed(self, belief: FieldBelief) -> FieldBelief:
+        """Give the field to aim at."""
+        warm = self._warm(belief)
+        if self.foreign is None:
+            return warm
+        return _shifted(warm, -self.foreign, np.zeros(self.foreign.size))
+
+    def warmed(self, found: Found) -> Found:
+        """Give the walk with the field as it will be when warm."""
+        return found if self.warm is None else replace(found, belief=self._warm(found.belief))
+
+    def _warm(self, belief: FieldBelief) -> FieldBelief:
+        return belief if self.warm is None else _shifted(belief, self.warm.change, self.warm.sigma)
+
+
+def _shifted(belief: FieldBelief, by: Array, sigma: Array) -> FieldBelief:
+    """Give a field moved by a constant that is itself known with some uncertainty."""
+    mean, covariance = belief.mean.copy(), belief.covariance.copy()
+    size = min(mean.shape[0], by.size)
+    mean[:size, VALUE] += by[:size]
+    covariance[:size, VALUE, VALUE] += sigma[:size] ** 2
+    return FieldBelief(belief.anchor, mean, covariance)
+
+
+def _length(parts: Array) -> float:
+    return float(np.linalg.norm(parts))
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -41,6 +79,10 @@ class Estimate:
     """How far the trims can go, as far as is known."""
     best: Array
     """Shape (2,), the best setting inside the box."""
+    aimed: FieldBelief
+    """The field as the trims are aimed at it: what is not theirs to mend left out, warm."""
+    warm_thd: float | None
+    """THD to expect at the present setting once warm, where the drift is known."""
     floor_thd: float
     """THD there, ratio."""
     floor_sigma: float
@@ -62,7 +104,11 @@ class Estimate:
 
 
 def estimate(
-    record: Record, hand: Hand, kind: KindPrior | None, before: Estimate | None = None
+    record: Record,
+    hand: Hand,
+    kind: KindPrior | None,
+    before: Estimate | None = None,
+    offsets: Offsets | None = None,
 ) -> Estimate:
     """Put all readings together.
 
@@ -76,6 +122,8 @@ def estimate(
         What is known of units of this kind.
     before
         The estimate before the last reading, to start the search from.
+    offsets
+        What the aim is to leave out of account or to reckon with.
     """
     scale_sigma = 0.0 if kind is None else KIND_SCALE
     walk = record.walk(hand, scale_sigma)
@@ -83,14 +131,18 @@ def estimate(
     found = _general(walk, start) if kind is None else _with_kind(walk, kind, start)
     here = np.zeros(2)
     box = _box(record, found.places)
-    best = _best(found.belief, here, box)
-    floor, sigma = floor_at(found, best, record.here)
+    offsets = offsets or Offsets()
+    aimed = offsets.aimed(found.belief)
+    best = _best(aimed, here, box)
+    floor, sigma = floor_at(offsets.warmed(found), best, record.here)
     return Estimate(
         found=found,
         here=here,
         origin=found.places[0],
         box=box,
         best=best,
+        aimed=aimed,
+        warm_thd=None if offsets.warm is None else _length(offsets.warmed(found).belief.at(here)),
         floor_thd=floor,
         floor_sigma=sigma,
         habit=habit(record.moves, hand, scale_sigma, found.steps[-len(record.moves) :]),
@@ -104,6 +156,8 @@ def _start(record: Record, walk: Walk, before: Estimate) -> Array:
     added = len(record.places) - before.found.places.shape[0]
     if added == 0 or not record.moves:
         return steps
+    if added > 1:
+        return np.append(steps, walk.expected[-added:])
     last = record.moves[-1]
     step = float(walk.expected[-1])
     size = walk.parts.shape[1]

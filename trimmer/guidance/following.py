@@ -33,9 +33,9 @@ PAUSE_S: Final = 1.6
 """.. but on the way, a pause this long."""
 NEAR: Final = 0.8
 """Share of the way from which on the hand is no longer on the way."""
-MISTAKE: Final = 16.0
+MISTAKE: Final = 20.0
 """How much better, over the last few readings together, a mistake must explain what is read."""
-LIKELIER: Final = 5.0
+LIKELIER: Final = 6.0
 """How much better it must explain the last one."""
 RUNNING: Final = 3
 """The last few readings."""
@@ -123,6 +123,8 @@ class Following:
         self.place[self.trim] = asked.way
         self.odds = [*self.odds[1 - RUNNING :], asked.surprise - surprise]
         erring = self.odds[-1] > LIKELIER and sum(self.odds) > MISTAKE
+        if self.odds[-1] < 0.0:
+            self.strayed = False  # the asked trim alone explains it: back again, or a false alarm
         if self.strayed and all(self.known):
             return self._astray(parts, variance, say if erring else None)
         if not erring:

@@ -25,7 +25,8 @@ ODD: Final = 3.0
 ROUNDS: Final = 12
 
 
-def _read_only(holder: object, *names: str) -> None:
+def read_only(holder: object, *names: str) -> None:
+    """Copy the named arrays of a frozen value and make them read-only."""
     for name in names:
         values = np.array(getattr(holder, name), dtype=np.float64, copy=True)
         values.flags.writeable = False
@@ -51,7 +52,7 @@ class Learned:
     """Where it was learned, Hz."""
 
     def __post_init__(self) -> None:
-        _read_only(self, "weights", "sigma", "columns_sigma")
+        read_only(self, "weights", "sigma", "columns_sigma")
 
     @property
     def columns(self) -> Array:
@@ -84,15 +85,16 @@ class Learned:
         m = 2 * (orders - 1)
         return cls(
             orders=orders,
-            weights=_table(document["weights"], (m, FEATURES)),
-            sigma=_table(document["sigma"], (m, FEATURES)),
-            columns_sigma=_table(document["columns_sigma"], (2, m)),
+            weights=table(document["weights"], (m, FEATURES)),
+            sigma=table(document["sigma"], (m, FEATURES)),
+            columns_sigma=table(document["columns_sigma"], (2, m)),
             travel_turns=float(document["travel_turns"]),
             fundamental_hz=float(document["fundamental_hz"]),
         )
 
 
-def _table(values: Any, shape: tuple[int, ...]) -> Array:
+def table(values: Any, shape: tuple[int, ...]) -> Array:
+    """Read an array of finite numbers of a document; raises ValueError where it is not one."""
     table = np.array(values, dtype=np.float64)
     if table.shape != shape or not np.all(np.isfinite(table)):
         raise ValueError(f"a table of shape {table.shape} where finite numbers {shape} belong")
@@ -113,7 +115,7 @@ class KindPrior:
     """Units it comes from."""
 
     def __post_init__(self) -> None:
-        _read_only(self, "weights", "sigma")
+        read_only(self, "weights", "sigma")
 
     def belief(self, orders: int) -> FieldBelief:
         """Give the belief about the field, anchored at the best setting, for orders up to `orders`.
@@ -151,8 +153,8 @@ class KindPrior:
         shape = (2 * (orders - 1), FEATURES)
         return cls(
             orders,
-            _table(document["weights"], shape),
-            _table(document["sigma"], shape),
+            table(document["weights"], shape),
+            table(document["sigma"], shape),
             int(document["units"]),
         )
 

@@ -18,6 +18,8 @@ class Move:
     """Whether the trim would not go further."""
     followed: float | None = None
     """Signed share of the travel really made, as seen while it was followed."""
+    extra: bool = False
+    """Whether it came on top of the turn asked for and is not counted."""
     dead: bool = False
     """Whether nothing changed: the turn did not reach the wiper."""
 

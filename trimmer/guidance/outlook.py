@@ -14,7 +14,6 @@ from typing import Final
 import numpy as np
 from scipy.special import erf
 
-from trimmer.guidance.aim import Aim
 from trimmer.guidance.estimate import Estimate
 from trimmer.guidance.field import Array, features
 from trimmer.guidance.hand import UNEVEN, Hand
@@ -51,7 +50,6 @@ class Outlook:
         self.record = record
         self.hand = hand
         self.trims = trims
-        self.aim = Aim(est.belief)
         self.best = est.best
         self.away = est.here - est.best
         columns = est.belief.columns(est.best)

@@ -22,6 +22,12 @@ CHANCE: Final = 3.0
 """A change within so many standard deviations of none is none."""
 DUE: Final = 8.0
 """A turn must be due to change the reading by so many times that, for no change to mean anything."""
+DRIFT: Final = 6.0
+"""Standard deviations of change of a reading that nobody turned .."""
+DRIFT_SHARE: Final = 0.05
+""".. and its size over THD .."""
+DRIFT_THD: Final = 3e-4
+""".. or by itself, from which on it matters."""
 MISTAKE: Final = 12.0
 """How much better a mistake must explain a reading than the turn asked for: hands err in about one turn
 of fifty (a guess), and a wrong alarm costs more than a late one."""
@@ -54,6 +60,13 @@ def is_dead(before: Seen, after: Seen, move: Move, est: Estimate) -> bool:
     way = max(0.0, abs(move.asked) - est.habit.play[move.trim])
     due = float(np.sum((column * way) ** 2 / variance)) / float(np.sqrt(2.0 * size))
     return due > DUE * CHANCE
+
+
+def drifted(before: Seen, after: Seen) -> bool:
+    """Tell whether a reading moved, for sure and enough to matter, while nobody turned."""
+    size = min(before.parts.size, after.parts.size)
+    change = float(np.linalg.norm(after.parts[:size] - before.parts[:size]))
+    return excess(before, after) > DRIFT and change > max(DRIFT_SHARE * before.thd, DRIFT_THD)
 
 
 class Verdict(Enum):

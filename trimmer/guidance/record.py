@@ -10,7 +10,7 @@ from trimmer.guidance.habit import expected_moves
 from trimmer.guidance.hand import Hand
 from trimmer.guidance.moves import Move
 from trimmer.guidance.path import Walk
-from trimmer.guidance.seen import Seen, merged
+from trimmer.guidance.seen import Seen, is_read, merged, nothing_seen
 
 
 @dataclass(slots=True)
@@ -31,6 +31,15 @@ class Record:
         self.moves.append(move)
         self.places.append([reading])
 
+    def add_unread(self, move: Move) -> None:
+        """Take a move of whose end there is no reading, another one following."""
+        self.moves.append(move)
+        self.places.append([nothing_seen(self.here)])
+
+    def replace_last(self, reading: Seen) -> None:
+        """Take a reading instead of all earlier ones of the present place."""
+        self.places[-1] = [reading]
+
     def again(self, reading: Seen) -> None:
         """Take a further reading of the present place."""
         self.places[-1].append(reading)
@@ -49,9 +58,18 @@ class Record:
         """The highest order that all readings have."""
         return min(r.orders for place in self.places for r in place)
 
-    def with_last(self, move: Move) -> Record:
-        """Give a copy in which the last move is another one."""
-        return Record(places=list(self.places), moves=[*self.moves[:-1], move])
+    def readable(self) -> list[int]:
+        """Give the indices of the places that were read."""
+        return [i for i, place in enumerate(self.places) if is_read(place[0])]
+
+    def thds(self) -> list[float]:
+        """Give the THD of each place that was read, by its surest reading."""
+        return [min(self.places[i], key=lambda r: r.thd_sigma).thd for i in self.readable()]
+
+    def thd_before_last(self) -> float:
+        """Give the THD before the last move."""
+        thds = self.thds()
+        return thds[-2] if len(thds) > 1 else thds[-1]
 
     def walk(self, hand: Hand, scale_sigma: float) -> Walk:
         """Give the walk for the search of the most probable path, the present place at 0."""

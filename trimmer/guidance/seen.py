@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -58,6 +58,27 @@ def seen(reading: Reading) -> Seen:
         amplitude=reading.amplitude,
         flags=tuple(flag.code for flag in reading.flags),
     )
+
+
+UNREAD = 1e6
+"""Variance of the parts of a place that was passed but not read."""
+
+
+def nothing_seen(like: Seen) -> Seen:
+    """Give what stands for the reading of a place that was passed but not read."""
+    size = like.parts.size
+    return replace(
+        like,
+        parts=np.zeros(size),
+        variance=np.full(size, UNREAD),
+        thd=float("inf"),
+        thd_sigma=float("inf"),
+    )
+
+
+def is_read(one: Seen) -> bool:
+    """Tell whether it stands for a reading."""
+    return bool(np.isfinite(one.thd))
 
 
 def merged(readings: Sequence[Seen]) -> Seen:

@@ -24,6 +24,7 @@ AT_STOP = "The best setting lies past the end of the {trim} trim; this is the be
 NO_RESPONSE = (
     "Neither trim changes the wave: check that these are the shaping trims and their wipers."
 )
+ONE_SILENT = "One trim gives no answer; this is the best that the other one reaches."
 UNSTABLE = "The unit drifts while nobody turns: let it warm up, then start again."
 STOPPED = "Ended by the person."
 END_OF_TRAVEL = (
@@ -35,6 +36,11 @@ WRONG_TRIM = "It was the {trim} trim that moved; the guide goes on from there."
 WRONG_WAY = "The {trim} trim went the other way; the guide goes on from there."
 KIND_TURNED = "In this unit the {trim} trim works the other way round than in others of its kind."
 KIND_DIFFERS = "This unit answers differently from its kind; it is learned afresh."
+SLEWING = (
+    "The output is slewing and makes {thd:.2g} % by itself: lower the frequency or the amplitude; the "
+    "trims are not used to hide it."
+)
+SYMMETRY_FIRST = "Set the time symmetry first if it can be set: it makes {thd:.2g} % by itself."
 SWAPPED = "The trim called upper shapes the lower crest, and the other way round."
 DRIFTING = "The reading moves while nobody turns: still warming up?"
 

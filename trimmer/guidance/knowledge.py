@@ -1,0 +1,137 @@
+"""What a guide knows at a moment, and how a reading changes it."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field, replace
+
+from trimmer.guidance import words
+from trimmer.guidance.estimate import Estimate, Offsets, estimate
+from trimmer.guidance.following import Outcome
+from trimmer.guidance.hand import Hand
+from trimmer.guidance.memory import KindPrior
+from trimmer.guidance.moves import Move
+from trimmer.guidance.rails import Verdict, drifted, is_dead, look_into
+from trimmer.guidance.record import Record
+from trimmer.guidance.seen import Seen
+
+
+@dataclass(slots=True)
+class Knowledge:
+    """The record so far and what follows from it."""
+
+    hand: Hand
+    kind: KindPrior | None
+    """What is known of units of this kind; None where nothing is, or where this unit differs."""
+    offsets: Offsets
+    record: Record = field(default_factory=Record)
+    estimate: Estimate | None = None
+    notice: str = ""
+    """A guard rail's word on the last reading."""
+    drifts: int = 0
+    """How often in a row the reading moved while nobody turned."""
+
+    def begin(self, one: Seen) -> None:
+        """Take the first reading."""
+        self.record.begin(one)
+        self._think(None)
+
+    def again(self, one: Seen) -> None:
+        """Take a further reading of the present setting."""
+        self.notice = ""
+        if drifted(self.record.here, one):
+            self.drifts += 1
+            self.notice = words.DRIFTING
+            self.record.replace_last(one)
+        else:
+            self.drifts = 0
+            self.record.again(one)
+        self._think(self.estimate)
+
+    def turned(self, trim: int, asked: float, one: Seen, stopped: bool, seen: Outcome) -> None:
+        """Take a reading after a turn.
+
+        Parameters
+        ----------
+        trim, asked
+            The turn asked for, signed share of the travel.
+        one
+            The reading.
+        stopped
+            Whether the trim would not go further.
+        seen
+            What following saw of the turn.
+        """
+        assert self.estimate is not None
+        self.notice = ""
+        self.drifts = 0
+        before = self.record.here
+        move = Move(trim, asked, stopped=stopped, followed=seen.way)
+        if seen.other != 0.0:
+            move = self._astray(move, seen)
+        self.record.add(move, one)
+        if is_dead(before, one, move, self.estimate):
+            known = self.estimate.known[move.trim]
+            self.record.change_last(
+                replace(move, dead=True, stopped=stopped or known, followed=None)
+            )
+            self._think(self.estimate)
+            return
+        self._think(self._explained() if seen.other == 0.0 else self.estimate)
+
+    def _astray(self, move: Move, seen: Outcome) -> Move:
+        """Take in that the other trim was turned, instead of or besides the one asked for."""
+        self.notice = words.WRONG_TRIM.format(trim=words.TRIMS[1 - move.trim])
+        other = Move(1 - move.trim, seen.other, followed=seen.other)
+        if not seen.way:
+            return other
+        self.record.add_unread(replace(other, extra=True))
+        return move
+
+    def _explained(self) -> Estimate | None:
+        """See whether a mistake, or another kind of unit, explains the last reading.
+
+        Returns the estimate to search on from, None where it has to begin afresh.
+        """
+        before = self.estimate
+        assert before is not None
+        moves = self.record.moves
+        last = moves[-1]
+        found = look_into(before, moves, self.hand, self.record.here)
+        trim = words.TRIMS[found.move.trim]
+        first = all(m.trim != last.trim or m.dead for m in moves[:-1])
+        match found.verdict:
+            case Verdict.WRONG_WAY if self.kind is not None and first:
+                self.kind = self.kind.turned(last.trim == 0, last.trim == 1)
+                self.notice = words.KIND_TURNED.format(trim=trim)
+                return None
+            case Verdict.WRONG_WAY:
+                self.notice = words.WRONG_WAY.format(trim=trim)
+                self.record.change_last(found.move)
+            case Verdict.WRONG_TRIM:
+                self.notice = words.WRONG_TRIM.format(trim=trim)
+                self.record.change_last(found.move)
+            case Verdict.STRANGE if self.kind is not None:
+                self.kind = None
+                self.notice = words.KIND_DIFFERS
+                return None
+            case _:
+                pass
+        return before
+
+    def _think(self, before: Estimate | None) -> None:
+        self.estimate = estimate(self.record, self.hand, self.kind, before, self.offsets)
+
+    def given_up(self, trim: int) -> bool:
+        """Tell whether a trim answered in neither sense, the last times it was turned."""
+        senses = set()
+        for move in reversed(self.record.moves):
+            if move.trim != trim:
+                continue
+            if not move.dead:
+                break
+            senses.add(move.sense)
+        return len(senses) == 2
+
+    def dead_senses(self, trim: int) -> list[int]:
+        """Give the senses in which a trim did not answer, in order."""
+        return [m.sense for m in self.record.moves if m.trim == trim and m.dead]
