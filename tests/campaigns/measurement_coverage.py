@@ -32,6 +32,8 @@ SHAPED = parts_of(
 COARSE = parts_of(k2=0.05 - 0.03j, k3=-0.1 + 0.02j, k5=0.05, k7=-0.03 + 0.04j, k11=0.02)
 """A badly trimmed wave, invented, THD 14 %."""
 CLEAN = np.zeros(28)
+FAINT = parts_of(k2=3e-4, k3=2e-4j)
+"""A wave, invented, whose THD is three times the standard deviation of one part."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -55,6 +57,7 @@ CASES = (
     Case("250 cycles", SHAPED, 250.61, 10000, 0.02),
     Case("coarse wave", COARSE, 6.62, 3000, 0.005),
     Case("near zero", CLEAN, 10.4, 4000, 0.005),
+    Case("faint", FAINT, 9.6, 4000, 0.005),
     Case("8 bits", SHAPED, 10.37, 10000, 0.5 * 2.2 / 256, 8),
     Case("8 bits, 5 cycles", COARSE, 5.21, 5000, 0.6 * 2.2 / 256, 8),
     Case("8 bits, near zero", CLEAN, 12.7, 10000, 0.5 * 2.2 / 256, 8),

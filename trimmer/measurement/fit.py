@@ -27,7 +27,7 @@ _ROUNDS = 8
 _GRAIN = 1e-14
 _STAGES = (2, 8)
 """Orders fitted on the way: the more orders, the narrower the way to the minimum."""
-_ROUGH, _NEAR, _FINE = 1e-2, 0.1, 1e-7
+_ROUGH, _NEAR, _FINE = 1e-2, 0.1, 1e-6
 """A frequency counts as settled when the next step turns the highest order by less than this (rad)
 over half the record. The step is still taken, and what it leaves is its square."""
 

@@ -78,7 +78,11 @@ def measure(
     Returns
     -------
     Reading
-        The least-squares fit of the record, with its flags.
+        The least-squares fit of the record, with its flags. `extra` holds, as ratios to the
+        fundamental, ``hum_ratio`` (``mains_ratio`` and ``sideband_ratio`` together, where there is
+        any, with ``mains_hz``) and ``slow_ratio``; ``flat_upper`` and ``flat_lower``, the time near
+        each crest over a sine's; ``piled_upper`` and ``piled_lower``, the share of the samples
+        piled up in the outermost code.
 
     Raises
     ------

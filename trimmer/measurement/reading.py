@@ -20,8 +20,8 @@ class MeasurementError(Exception):
     Parameters
     ----------
     code
-        Short name of the refusal: ``no-signal``, ``too-few-cycles``, ``too-few-orders``, ``clipped``,
-        ``not-a-number``, ``uneven-time``.
+        Short name of the refusal: ``no-signal``, ``too-few-cycles``, ``too-few-orders``,
+        ``too-many-orders``, ``clipped``, ``not-a-number``, ``uneven-time``.
     message
         What was seen, with the numbers.
     remedy
@@ -39,7 +39,8 @@ class Flag:
     """Something a reading wants said of itself, without being refused."""
 
     code: str
-    """``few-codes``, ``hum``, ``drifting``, ``stale``, ``chain-floor``, ``ac-coupled``, ``orders-cut``, ..."""
+    """``few-codes``, ``flat-without-noise``, ``hum``, ``wandering``, ``drifting``, ``stale``,
+    ``chain-floor``, ``reference-unmatched``, ``ac-coupled``, ``orders-cut`` or ``not-settled``."""
     message: str
     """What was seen, with the numbers."""
     remedy: str
