@@ -17,7 +17,7 @@ import threading
 import time
 from collections.abc import Iterator, Sequence
 
-_LOOK_S = 0.25
+_LOOK_S = 0.2
 """Seconds between looks at the deadline; a hang-up is noticed at once."""
 
 _LEFTOVERS_S = 0.1

@@ -22,7 +22,8 @@ from drivers.visa.kept import KeptSettings
 from drivers.visa.memory import Known, recall, remember
 from drivers.visa.preamble import carries, matches
 from drivers.visa.shelf import chosen, shelf
-from drivers.visa.speaker import PROBE_S, Speaker
+from drivers.visa.speaker import Speaker
+from drivers.visa.ways import PROBE_S
 
 _LONGEST_S = 25.0
 """Seconds after which finding out is given up."""

@@ -14,7 +14,8 @@ from pathlib import Path
 from pydantic import ValidationError
 
 from drivers.contract import SourceRefused, clean
-from drivers.visa.dialect import Dialect, faults_between_parts
+from drivers.visa.dialect import Dialect
+from drivers.visa.soundness import faults_between_parts
 
 _SHIPPED = Path(__file__).parent / "dialects"
 _MOST_BYTES = 1 << 18

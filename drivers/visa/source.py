@@ -38,7 +38,7 @@ _MOST_TRIES = 4
 
 _LEAVING_S = 1.0
 
-_GRACE_S = 0.5
+_GRACE_S = 0.35
 """Seconds past the deadline to ask why nothing came."""
 
 _NOT_CERTAIN = (
@@ -181,8 +181,7 @@ class InstrumentSource:
         _wait_until(request.fresh_after, deadline)
         speaker = self._ready(deadline)
         speaker.ask_average(max(1, request.average), deadline)
-        if request.samples is not None:
-            speaker.ask_points(request.samples, deadline)
+        speaker.ask_points(request.samples, deadline)
         if self._to_fit:
             fit_range(speaker, deadline)
             self._to_fit = False
@@ -240,7 +239,7 @@ class InstrumentSource:
         settled = settle(found.rivals, frame.fields, frame.payload, text) if text else None
         found.rivals = ()
         if settled is None:
-            speaker.known = speaker.known.changed(settled="plausible reference values")
+            speaker.learn(settled="plausible reference values")
             found.notes = (_NOT_CERTAIN,)
             return True
         told = {
@@ -249,7 +248,7 @@ class InstrumentSource:
             "settled": "a frame read as codes and as text",
         }
         if settled.dialect is found.dialect:
-            speaker.known = speaker.known.changed(**told)
+            speaker.learn(**told)
             return True
         known = Known(settled.dialect.name).changed(**told)
         self._speak(Speaker(speaker.talk, settled.dialect, known, self._channel, self._kept))

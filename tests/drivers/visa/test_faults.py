@@ -30,7 +30,7 @@ LINKS = {
     "vxi-11": Vxi11Server,
     "serial": SerialServer,
 }
-TIMEOUT_S = 0.4
+TIMEOUT_S = 0.25
 FAULTS: dict[str, tuple[type[SourceError], ...]] = {
     "silence": (SourceTimeout,),
     "slow-drip": (SourceTimeout,),

@@ -175,8 +175,8 @@ def test_both_byte_orders_give_the_same_volts(codes: list[int], big: bool) -> No
     order = ">" if big else "<"
     fields = {
         "channel": 1.0, "width": 2.0, "bits": 16.0, "format": "RI", "order": "MSB" if big else "LSB",
-        "points": float(len(codes)), "shape": "Y", "interval": 1e-6, "multiplier": 1.0, "offset": 0.0, "zero": 0.0,
-        "mode": None, "averages": None,
+        "points": float(len(codes)), "shape": "Y", "interval": 1e-6, "multiplier": 1.0,
+        "offset": 0.0, "zero": 0.0, "mode": None, "averages": None,
     }  # fmt: skip
     payload = np.array(codes, dtype=f"{order}i2").tobytes()
     volts = convert(DIALECTS["keyword-curve"], fields, payload, Reading()).volts

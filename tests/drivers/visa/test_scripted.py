@@ -16,6 +16,8 @@ CLEAR: Line = ("*CLS", None)
 NO_ERROR: Line = ("SYSTem:ERRor?", '0,"No error"')
 UNKNOWN: Line = ("SYSTem:ERRor?", '-113,"Undefined header"')
 WELL: Line = ("*ESR?", "0")
+LEFT: Line = ("*IDN?", "EXAMPLE WORKS,SCOPE 10,SN0001,1.00")
+"""Asked last, so that nothing is lost on its way when the link closes."""
 
 TEN_FIELD: list[Line] = [
     IDENTITY,
@@ -43,6 +45,7 @@ TEN_FIELD: list[Line] = [
     (":WAVeform:DATA?", b"#9000000006" + struct.pack("<3H", 0x7F00, 0x8000, 0x8200)),
     NO_ERROR,
     (":RUN", None),
+    LEFT,
 ]
 
 TEN_FIELD_CODE: list[Line] = [
@@ -79,6 +82,7 @@ TEN_FIELD_CODE: list[Line] = [
     (":WAVeform:DATA?", b"#9000000003" + bytes([177, 200, 152])),
     NO_ERROR,
     (":RUN", None),
+    LEFT,
 ]
 
 TEN_FIELD_SIGNED: list[Line] = [
@@ -103,6 +107,7 @@ TEN_FIELD_SIGNED: list[Line] = [
     (":WAVeform:DATA?", b"#16" + struct.pack(">3h", -256, 0, 512)),
     NO_ERROR,
     (":RUN", None),
+    LEFT,
 ]
 
 KEYWORDS = (
@@ -139,6 +144,7 @@ KEYWORD_CURVE: list[Line] = [
     WELL,
     ("ACQuire:STOPAfter RUNSTop", None),
     ("ACQuire:STATE RUN", None),
+    LEFT,
 ]
 
 
@@ -169,6 +175,7 @@ DESCRIPTOR: list[Line] = [
     ("C1:CPL?", "D1M"),
     ("C1:WF? ALL", b"#9%09d" % len(descriptor()) + descriptor()),
     ("TRMD AUTO", None),
+    LEFT,
 ]
 
 VDIV_TEXT: list[Line] = [
@@ -187,6 +194,7 @@ VDIV_TEXT: list[Line] = [
     ("SARA?", "1.00MSa/s"),
     ("C1:WF? DAT2", b"DAT2,#9000000003" + bytes([25, 0, 231]) + b"\n\n"),
     ("TRMD AUTO", None),
+    LEFT,
 ]
 
 DATA_HEADER: list[Line] = [
@@ -208,6 +216,7 @@ DATA_HEADER: list[Line] = [
     ("CHANnel1:DATA?", b"#212" + struct.pack("<3f", 0.25, 0.5, -0.75)),
     NO_ERROR,
     ("RUN", None),
+    LEFT,
 ]
 
 MEMORY_HEADER: list[Line] = [
@@ -228,6 +237,7 @@ MEMORY_HEADER: list[Line] = [
     ),
     (":SYSTem:ERRor?", '0,"No error"'),
     (":RUN", None),
+    LEFT,
 ]
 
 FORMAT_TRACE: list[Line] = [
@@ -245,6 +255,7 @@ FORMAT_TRACE: list[Line] = [
     ("SENSe:SWEep:TINTerval?", "+1.0E-06"),
     ("FETCh?", b"#224" + struct.pack(">3d", 0.1, -0.2, 0.3)),
     NO_ERROR,
+    LEFT,
 ]
 
 SCRIPTS: dict[str, tuple[list[Line], list[float], str]] = {
@@ -281,7 +292,7 @@ def test_a_frame_is_asked_for_and_read_as_the_script_says(monkeypatch, dialect) 
 def test_the_second_frame_costs_only_its_own_lines(monkeypatch) -> None:
     again = [(":SINGle", None), (":OPERegister:CONDition?", "0"), *TEN_FIELD[21:24]]
     again[3] = (":WAVeform:DATA?", b"#16" + struct.pack("<3H", 0x7000, 0x8000, 0x8200))
-    link = played(monkeypatch, [*TEN_FIELD[:-1], *again, (":RUN", None)])
+    link = played(monkeypatch, [*TEN_FIELD[:-2], *again, *TEN_FIELD[-2:]])
     with open_instrument("SCRIPT", dialect="ten-field") as source:
         source.capture()
         source.capture()
@@ -300,7 +311,9 @@ def test_a_refused_command_is_told_with_its_words(monkeypatch) -> None:
 def test_an_error_beside_a_frame_makes_it_be_taken_again(monkeypatch) -> None:
     error: Line = ("SYSTem:ERRor?", '-222,"Data out of range"')
     frame = [*TEN_FIELD[15:18], *TEN_FIELD[21:23]]
-    link = played(monkeypatch, [*TEN_FIELD[:23], error, NO_ERROR, *frame, NO_ERROR, (":RUN", None)])
+    link = played(
+        monkeypatch, [*TEN_FIELD[:23], error, NO_ERROR, *frame, NO_ERROR, *TEN_FIELD[-2:]]
+    )
     with open_instrument("SCRIPT", dialect="ten-field") as source:
         assert source.capture(CaptureRequest()).samples.size == 3
     link.finished()
@@ -316,7 +329,7 @@ def test_averaging_is_asked_for_and_put_back(monkeypatch) -> None:
         NO_ERROR,
     ]
     back = [(":ACQuire:COUNt 8", None), (":ACQuire:TYPE NORM", None)]
-    link = played(monkeypatch, [*TEN_FIELD[:15], *ask, *TEN_FIELD[15:-1], *back, (":RUN", None)])
+    link = played(monkeypatch, [*TEN_FIELD[:15], *ask, *TEN_FIELD[15:-2], *back, *TEN_FIELD[-2:]])
     with open_instrument("SCRIPT", dialect="ten-field") as source:
         source.capture(CaptureRequest(average=10))
     link.finished()

@@ -81,6 +81,10 @@ class TenField(Brain):
             return b"STOP" if "STATus" in self.poll else b"+0"
         if forms(":CHANnel1:COUPling?").fullmatch(head):
             return b"DC"
+        if forms(":ACQuire:SRATe?").fullmatch(head):
+            return f"{float(1 / self.interval):.6E}".encode()
+        if forms(":ACQuire:MDEPth?").fullmatch(head) and self.form == "code":
+            return str(self.points).encode()
         kept = self.setting(
             head, argument, ":ACQuire:TYPE", ":ACQuire:COUNt", ":CHANnel1:SCALe", ":CHANnel1:OFFSet"
         )
@@ -183,6 +187,10 @@ class KeywordCurve(Brain):
             return str(abs(self.errors.popleft()) if self.errors else 0).encode()
         if forms("CH1:COUPling?").fullmatch(head):
             return b":CH1:COUPLING AC" if self.header else b"AC"
+        if forms("ACQuire:MODe?").fullmatch(head):
+            return b"SAMPLE"
+        if forms("ACQuire:NUMAVg?").fullmatch(head):
+            return b"16"
         known = ("DATa:SOUrce", "DATa:ENCdg", "DATa:STARt", "ACQuire:STOPAfter", "DATa:STOP")
         if any(forms(pattern).fullmatch(head) for pattern in known):
             return None

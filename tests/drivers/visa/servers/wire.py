@@ -23,7 +23,7 @@ Fault = Literal[
     "late",
 ]
 
-LATE_S = 0.9
+LATE_S = 0.7
 
 
 class Dropped(Exception):
