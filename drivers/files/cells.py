@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import math
 import re
-from collections.abc import Iterable
 from dataclasses import dataclass
 
 from drivers.files.units import Unit, parse_prefix, parse_unit
@@ -20,7 +19,7 @@ _ONLY_MARKS = re.compile(r"^[*\-?.#\u2013\u2014]*[*\-?#\u2013\u2014]+[*\-?.#\u20
 _BLANKS = (
     " '\N{NO-BREAK SPACE}\N{NARROW NO-BREAK SPACE}\N{THIN SPACE}\N{RIGHT SINGLE QUOTATION MARK}"
 )
-_NUMBER = re.compile(
+NUMBER = re.compile(
     rf"^(?P<sign>[+\-\N{{MINUS SIGN}}]?)\s*(?P<body>[0-9.,{_BLANKS}]*[0-9.,])"
     r"(?P<exponent>(?:[eEdD]| [eE](?=[+\-]))[+\-\N{MINUS SIGN}]?[0-9]{1,4})?\s*"
     r"(?P<suffix>[^\s0-9.,+\-][^0-9]{0,12})?$"
@@ -64,8 +63,8 @@ def parse_cell(cell: str, convention: Convention) -> Number | None:
     cell = cell.strip()
     if is_overrange(cell):
         return Number(math.nan)
-    found = _NUMBER.match(cell)
-    if found is None or (digits := _plain(found["body"], convention)) is None:
+    found = NUMBER.match(cell)
+    if found is None or (digits := plain_digits(found["body"], convention)) is None:
         return None
     exponent = _exponent(found["exponent"])
     value = float(f"{digits}e{exponent}")
@@ -76,6 +75,8 @@ def parse_cell(cell: str, convention: Convention) -> Number | None:
 
 def is_overrange(cell: str) -> bool:
     """Say whether a stripped cell stands for a value that could not be had."""
+    if cell == "#":
+        return False  # the usual name of a column that counts
     return not cell or cell.casefold() in _OVERRANGE or bool(_ONLY_MARKS.match(cell))
 
 
@@ -89,7 +90,7 @@ def _with_suffix(value: float, suffix: str | None) -> Number | None:
     return None
 
 
-def _plain(body: str, convention: Convention) -> str | None:
+def plain_digits(body: str, convention: Convention) -> str | None:
     """Give the digits with a decimal point and without group marks; None where they do not fit."""
     whole, mark, fraction = body.partition(convention.decimal)
     if mark and not fraction.isdigit() and (fraction or mark == ","):
@@ -125,7 +126,7 @@ def parse_clock(cell: str) -> float | None:
 
 def looks_numeric(cell: str) -> bool:
     """Say whether a stripped cell could be a number in some convention, or stands for one."""
-    return bool(_NUMBER.match(cell)) or is_overrange(cell) or parse_clock(cell) is not None
+    return bool(NUMBER.match(cell)) or is_overrange(cell) or parse_clock(cell) is not None
 
 
 def last_place(cell: str, convention: Convention) -> tuple[int, int] | None:
@@ -139,8 +140,8 @@ def last_place(cell: str, convention: Convention) -> tuple[int, int] | None:
     """
     if clock := _CLOCK.match(cell.strip()):
         return -len(clock[4] or ""), 5 + len(clock[4] or "")
-    found = _NUMBER.match(cell.strip())
-    if found is None or (digits := _plain(found["body"], convention)) is None:
+    found = NUMBER.match(cell.strip())
+    if found is None or (digits := plain_digits(found["body"], convention)) is None:
         return None
     fraction = digits.partition(".")[2]
     significant = len(digits.replace(".", "").lstrip("0")) or 1
@@ -149,60 +150,3 @@ def last_place(cell: str, convention: Convention) -> tuple[int, int] | None:
 
 def _exponent(text: str | None) -> int:
     return int(text.strip()[1:].replace("\N{MINUS SIGN}", "-")) if text else 0
-
-
-def find_convention(cells: Iterable[str]) -> Convention | None:
-    """Find the decimal mark from the numbers themselves.
-
-    A sine passes through zero, so that grouped numbers have ungrouped ones among them; a comma
-    in every number is a decimal mark.
-
-    Returns
-    -------
-    Convention or None
-        None where points and commas contradict each other.
-    """
-    bodies = [
-        found["body"]
-        for cell in cells
-        if (found := _NUMBER.match(cell.strip())) and not is_date(cell)
-    ]
-    points = [body for body in bodies if "." in body]
-    commas = [body for body in bodies if "," in body]
-    both = [body for body in bodies if "." in body and "," in body]
-    if both:
-        last = {"," if body.rfind(",") > body.rfind(".") else "." for body in both}
-        return _chosen(last.pop(), bodies) if len(last) == 1 else None
-    if points and commas:
-        fits = [mark for mark in ".," if _fits(_other(mark), mark, bodies)]
-        return _chosen(fits[0], bodies) if len(fits) == 1 else None
-    if commas:
-        return _one_mark(",", bodies, commas)
-    return _one_mark(".", bodies, points) if points else Convention()
-
-
-def _other(mark: str) -> str:
-    return "," if mark == "." else "."
-
-
-def _fits(thousands: str, decimal: str, bodies: list[str]) -> bool:
-    convention = Convention(decimal, thousands)
-    return all(_plain(body, convention) is not None for body in bodies)
-
-
-def _chosen(decimal: str, bodies: list[str]) -> Convention | None:
-    thousands = _other(decimal)
-    return Convention(decimal, thousands) if _fits(thousands, decimal, bodies) else None
-
-
-def _one_mark(mark: str, bodies: list[str], marked: list[str]) -> Convention | None:
-    """Settle a file whose numbers show only commas, or only points."""
-    if any(body.count(mark) > 1 for body in marked):
-        return _chosen(_other(mark), bodies)
-    if mark == ".":
-        return Convention()
-    as_groups = _fits(",", ".", bodies)
-    whole = [body for body in bodies if mark not in body]
-    if as_groups and whole and all(len(body.lstrip("0")) <= 3 for body in whole):
-        return Convention(".", ",")
-    return Convention(",")

@@ -93,17 +93,25 @@ def _sorted_out(columns: list[Column], block: Block, layout: Layout) -> _Parts:
     counters = [column for column in rest if _counts(column, block)]
     others = [column for column in rest if column not in counters]
     if not times and not counters and len(others) > 1 and _even(others[0], block):
+        _refuse_other_axis(others[0])
         return _Parts(others[:1], True, [], others[1:])
     return _Parts(times, False, counters, others)
 
 
+def _refuse_other_axis(column: Column) -> None:
+    """Refuse an axis of angle, length or anything but time."""
+    if column.unit is not None or column.unit_text:
+        raise UnusableCapture(
+            f"the first column ({clean(column.name, 40)}) rises evenly and is no time",
+            "Save voltage over time.",
+        )
+
+
 def _counts(column: Column, block: Block) -> bool:
-    """Say whether a column counts the rows: whole numbers in steps of one."""
+    """Say whether a column counts the rows: by its name, or by whole numbers in steps of one."""
     if column.is_index:
         return True
-    if column.is_volts or column.place != 0 or column.word not in ("", "x"):
-        return False
-    numbers = block.numbers[:, 0]
+    numbers = block.numbers[:, column.place]
     return numbers.size > 2 and bool(np.all(np.diff(numbers) == 1.0))
 
 
@@ -115,10 +123,8 @@ def _step(counted: list[Column], block: Block) -> float | None:
 
 
 def _even(column: Column, block: Block) -> bool:
-    """Say whether a nameless first column is an axis: always rising, in nearly equal steps."""
+    """Say whether a column is an axis: always rising, in nearly equal steps. No sine does that."""
     numbers = block.numbers[:, column.place]
-    if column.name and column.word not in ("x", "xaxis"):
-        return False
     steps = np.diff(numbers)
     if numbers.size < 3 or not bool(np.all(steps >= 0.0)) or numbers[-1] <= numbers[0]:
         return False

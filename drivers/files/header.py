@@ -3,12 +3,11 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Callable, Iterable
 from dataclasses import dataclass, field
 
 from drivers.contract import UnusableCapture, clean
 from drivers.files.block import Block
-from drivers.files.cells import parse_cell
+from drivers.files.cells import is_date, parse_cell
 from drivers.files.facts import Fact, collect
 from drivers.files.layout import Layout
 from drivers.files.units import Unit, parse_unit, unit_in_name
@@ -25,6 +24,7 @@ from drivers.files.vocabulary import (
 NAME_ROWS = 6
 """Rows above the numbers among which names and units are looked for."""
 _COMMENT = re.compile(r'^[\s"]*(?:#|%|//|!|\*|;|--)+\s*')
+_BRACKETED = re.compile(r"[(\[]([^()\[\]]*)[)\]]")
 _NAME_AND_UNIT = re.compile(r"[^\s()\[\]{}][^()\[\]{}]*[(\[{][^()\[\]{}]*[)\]}]")
 
 
@@ -115,9 +115,9 @@ def read_header(block: Block, layout: Layout) -> Header:
 
 
 def _uncommented(row: list[str]) -> list[str]:
-    first = _COMMENT.sub("", row[0]) if row else ""
-    rest = row[1:]
-    return [first.strip().strip('"'), *rest] if first or not row or not row[0] else rest or [""]
+    """Take the mark of a comment off a row; a mark by itself names a column (`#` counts rows)."""
+    first = _COMMENT.sub("", row[0]).strip().strip('"')
+    return [first, *row[1:]] if first or len(row) == 1 else row
 
 
 def _column(place: int, name: str, unit_text: str, written: Unit | None) -> Column:
@@ -136,16 +136,35 @@ def _name_rows(rows: list[list[str]], layout: Layout) -> tuple[dict[int, str], d
     """Find the names row and the units row: the last rows that have words over the columns."""
     above = [cells for row in rows[-NAME_ROWS:] if (cells := _aligned(row, layout))]
     if not above:
+        _refuse_lost_units(rows)
         return {}, {}
     last = above[-1]
-    if _is_units(last, all) or (len(above) > 1 and _is_units(last, any)):
+    if _is_units(last) or (len(above) > 1 and _has_units(last)):
         same_kind = len(above) > 1 and len(above[-2]) == len(last)
         return (above[-2] if same_kind else last), last
     return last, {}
 
 
-def _is_units(cells: dict[int, str], how_many: Callable[[Iterable[bool]], bool]) -> bool:
-    return how_many(parse_unit(cell) is not None for cell in cells.values())
+def _refuse_lost_units(rows: list[list[str]]) -> None:
+    """Refuse to take volts and seconds for granted where a line names units, but of what?"""
+    line = " ".join(rows[-1]) if rows else ""
+    is_fact = bool(rows) and any(concept_of(cell)[0] for cell in rows[-1])
+    if not is_fact and any(parse_unit(content) for content in _BRACKETED.findall(line)):
+        raise UnusableCapture(
+            f"the line above the numbers, {clean(line, 60)!r}, has another count of names than "
+            "there are columns",
+            "Save with tabs, semicolons or commas between the columns.",
+        )
+
+
+def _is_units(cells: dict[int, str]) -> bool:
+    return all(parse_unit(cell) is not None for cell in cells.values())
+
+
+def _has_units(cells: dict[int, str]) -> bool:
+    """Say whether some cells are units and none is a name: `Time,Volts` are names."""
+    words = {squeeze(cell) for cell in cells.values()}
+    return any(map(parse_unit, cells.values())) and not words & (TIME_NAMES | INDEX_NAMES)
 
 
 def _aligned(row: list[str], layout: Layout) -> dict[int, str]:
@@ -154,6 +173,8 @@ def _aligned(row: list[str], layout: Layout) -> dict[int, str]:
         row = _respaced(row, len(layout.columns))
     cells = {column: row[column] for column in layout.columns if column < len(row) and row[column]}
     if not cells or len(cells) < min(2, len(layout.columns)):
+        return {}
+    if any(is_date(cell) for cell in cells.values()):
         return {}
     numbers = [cell for cell in cells.values() if parse_cell(cell, layout.convention)]
     # Channels are called 1 and 2; a row of words and other numbers is a row of facts.
@@ -167,8 +188,12 @@ def _aligned(row: list[str], layout: Layout) -> dict[int, str]:
 
 def _respaced(row: list[str], wanted: int) -> list[str]:
     """Blanks part the names too: join them again by their units in brackets."""
+    is_marked = not _COMMENT.sub("", row[0])
+    if len(row) == wanted and (not is_marked or any(map(parse_unit, row[1:]))):
+        return row
+    row = row[1:] if is_marked else row
     if len(row) == wanted:
         return row
     line = " ".join(row)
     joined = _NAME_AND_UNIT.findall(line)
-    return joined if len(joined) == wanted else row
+    return joined if len(joined) == wanted else [""]

@@ -8,19 +8,21 @@ dropping one of them silently would give a record that nobody took.
 from __future__ import annotations
 
 import csv
+import re
 from collections import Counter
 from dataclasses import dataclass, field
-from itertools import pairwise
+from itertools import pairwise, zip_longest
 
 from drivers.contract import UnusableCapture
 from drivers.files.cells import (
     Convention,
-    find_convention,
+    is_date,
     is_overrange,
     looks_numeric,
     parse_cell,
     parse_clock,
 )
+from drivers.files.conventions import find_convention
 from drivers.files.text import Text
 
 DELIMITERS: tuple[str | None, ...] = ("\t", ";", ",", "|", None)
@@ -30,6 +32,7 @@ SAMPLE_ROWS = 120
 FRONT = 8192
 """Characters of a line looked at to find the layout."""
 NO_ROWS = "Save the capture as rows of numbers, one row for each instant."
+_FRACTION = re.compile(r"^(\d+)([eE][+-]?\d+)?$")
 AMBIGUOUS = "Save with a point as decimal mark, or with semicolons or tabs between the columns."
 
 
@@ -66,7 +69,15 @@ class _Tally:
 
     @property
     def score(self) -> float:
-        return self.shapes[self.shape] / len(self.rows) if self.shape else 0.0
+        """Part of the rows that have the usual shape, times the part of their cells that it explains.
+
+        A wrong delimiter often leaves a number at either end of a row, and nonsense between.
+        """
+        if not self.shape:
+            return 0.0
+        usual = [row for row in self.rows if _shape(row, self.convention) == self.shape]
+        filled = sum(1 for row in usual for cell in row if cell and not is_date(cell))
+        return len(usual) / len(self.rows) * len(usual) * len(self.shape) / max(filled, 1)
 
 
 def split(line: str, delimiter: str | None) -> list[str]:
@@ -105,7 +116,7 @@ def find_layout(text: Text) -> Layout:
     best = max(tallies, key=lambda tally: (round(tally.score, 2), len(tally.shape)), default=None)
     if best is None or best.score == 0.0:
         raise UnusableCapture("no rows of numbers were found in the file", NO_ROWS)
-    return _joined_commas(best) or _layout(best)
+    return _layout(_without_joined_commas(best, tallies, text.lines[:100]))
 
 
 def _sample(lines: list[str]) -> list[str]:
@@ -120,7 +131,7 @@ def _sample(lines: list[str]) -> list[str]:
 def _tally(sample: list[str], delimiter: str | None) -> _Tally | None:
     rows = [_front(line, delimiter) for line in sample]
     plain = [row for row in rows if any(row) and all(map(looks_numeric, row))]
-    convention = find_convention(cell for row in plain or rows for cell in row)
+    convention = find_convention(zip_longest(*(plain or rows), fillvalue=""))
     if convention is None:
         return None
     tally = _Tally(delimiter, convention, rows)
@@ -152,9 +163,11 @@ def _layout(tally: _Tally) -> Layout:
 
 def _columns(tally: _Tally) -> tuple[int, ...]:
     """Columns with numbers in most rows: a few cells of overrange do not unmake a column."""
-    counts = Counter(column for shape in tally.shapes.elements() for column in shape)
-    total = sum(tally.shapes.values())
-    return tuple(sorted(column for column, count in counts.items() if 2 * count > total))
+    best = tally.shape
+    alike = [shape for shape in tally.shapes.elements() if 2 * len(shape) >= len(best)]
+    counts = Counter(column for shape in alike for column in shape)
+    total = len(alike)
+    return tuple(sorted(column for column, count in counts.items() if 2 * count > total)) or best
 
 
 def _holds(row: list[str], columns: tuple[int, ...], convention: Convention) -> bool:
@@ -168,31 +181,57 @@ def _is_clock(rows: list[list[str]], column: int, convention: Convention) -> boo
     )
 
 
-def _joined_commas(tally: _Tally) -> Layout | None:
-    """Look whether commas that seem to part columns are decimal marks.
+def _without_joined_commas(best: _Tally, tallies: list[_Tally], head: list[str]) -> _Tally:
+    """Look whether commas that seem to part columns are decimal marks, and take the other reading.
 
-    Whole numbers are not printed as `05` or `-0`; digits behind a comma are.
+    Whole numbers are not printed as `05`, `-0` or `5e-3`; digits behind a comma are. Where that
+    does not tell, the count of names above the columns does.
     """
-    if tally.delimiter != ",":
-        return None
-    rows = [row for row in tally.rows if _shape(row, tally.convention)]
-    pairs = [pair for row in rows for pair in pairwise(row)]
-    if not any(_decimal_pair(*pair) for pair in pairs):
-        return None
-    if all(len(row) <= 2 and all(_whole(cell) for cell in row) for row in rows):
-        decimal = Convention(",")
-        return Layout("\t", decimal, (0,), frozenset(), 1, ("commas taken as decimal marks",))
+    if best.delimiter != ",":
+        return best
+    rows = [row for row in best.rows if _shape(row, best.convention) == best.shape]
+    doubtful = any(_decimal_pair(*pair) for row in rows for pair in pairwise(row))
+    if not doubtful and not _could_be_pairs(rows):
+        return best
+    names = _count_names(head)
+    if not doubtful and (names == len(best.shape) or (names == 0 and len(best.shape) > 2)):
+        return best
+    others = [tally for tally in tallies if tally.convention.decimal == ","]
+    other = max(others, key=lambda tally: tally.score, default=None)
+    if other is not None and other.score >= 0.98 * best.score and (doubtful or names == 1):
+        return other
     raise UnusableCapture(
-        "commas seem to part the columns and to mark decimals at the same time", AMBIGUOUS
+        "commas may part the columns or mark decimals, and the file does not tell which", AMBIGUOUS
     )
 
 
+def _could_be_pairs(rows: list[list[str]]) -> bool:
+    """Say whether rows of whole numbers could be half as many numbers with decimal commas."""
+    for row in rows:
+        if len(row) % 2 or not all(map(_whole, row)) or not all(map(str.isdigit, row[1::2])):
+            return False
+    counts = all(int(below[0]) == int(row[0]) + 1 for row, below in pairwise(rows))
+    return not counts
+
+
+def _count_names(head: list[str]) -> int:
+    """Count the names above the numbers: the cells of the last line that has only words."""
+    count = 0
+    for line in head:
+        cells = [cell for cell in split(line, ",") if cell]
+        if cells and not any(looks_numeric(cell) for cell in cells):
+            count = len(cells)
+    return count
+
+
 def _decimal_pair(whole: str, fraction: str) -> bool:
-    """`0` and `05`, or `-0` and `3`: two cells that are one number with a decimal comma."""
+    """`0` and `05`, `-0` and `3`, `1` and `5e-3`: two cells that are one number with a comma."""
     digits = whole.lstrip("+-")
-    if not (digits.isdigit() and fraction.isdigit()) or (digits[0] == "0" and len(digits) > 1):
+    found = _FRACTION.match(fraction)
+    if not digits.isdigit() or found is None or (digits[0] == "0" and len(digits) > 1):
         return False
-    return (fraction[0] == "0" and len(fraction) > 1) or whole in ("-0", "+0")
+    zeros = found[1][0] == "0" and len(found[1]) > 1
+    return zeros or found[2] is not None or whole in ("-0", "+0")
 
 
 def _whole(cell: str) -> bool:

@@ -59,7 +59,9 @@ def read_rows(lines: list[str], layout: Layout) -> Rows:
         good = np.array([row is not None for row in read], bool)
         kinds[places] = np.where(good, DATA, OTHER)
         rows = [row for row in read if row is not None]
-        parts.append(np.array([values for values, _ in rows], np.float64).reshape(len(rows), -1))
+        parts.append(
+            np.array([values for values, _ in rows], np.float64).reshape(-1, len(suffixes))
+        )
         for _, units in rows:
             for column, unit in enumerate(units or ()):
                 if unit is not None:

@@ -45,11 +45,11 @@ def decode(raw: bytes) -> Text:
         The bytes are no text.
     """
     text, notes = _characters(raw)
+    text = text.rstrip("\x1a \t")
     head = text[:65536]
     odd = sum(1 for mark in head if mark < " " and mark not in "\t\r\n\f\v")
     if odd > len(head) // 100:
         raise UnusableCapture("the file holds binary data, not text", NO_TEXT)
-    text = text.rstrip("\x1a \t")
     lines = text.replace("\r\n", "\n").replace("\r", "\n").split("\n")
     ended = lines[-1] == ""
     while lines and not lines[-1].strip():

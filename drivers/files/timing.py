@@ -112,12 +112,11 @@ def _time_unit(table: Table) -> Unit | None:
     """Find the time column's unit: its own, else the header's; None for none stated."""
     time = table.roles.time
     assert time is not None
-    if time.unit is not None:
+    if time.unit is not None and time.unit.base == "s":
         return time.unit
-    if time.unit_text:
-        raise UnusableCapture(
-            f"time is in {clean(time.unit_text, 24)!r}, which is no unit known here", ASK
-        )
+    if time.unit is not None or time.unit_text:
+        word = clean(time.unit_text or (time.unit.base if time.unit else ""), 24)
+        raise UnusableCapture(f"time is in {word!r}, which is no unit of time known here", ASK)
     fact = table.header.first("x_unit")
     unit = parse_unit(fact.text) if fact else None
     if unit is not None and unit.base == "s":
