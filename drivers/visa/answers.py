@@ -8,7 +8,7 @@ import re
 Field = float | str
 """One value of a preamble: a number, or a word."""
 
-_NUMBER = re.compile(r"[-+]?(?:\d+\.?\d*|\.\d+)(?:[eE][-+]?\d+)?")
+_NUMBER = re.compile(r"[-+]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][-+]?[0-9]+)?")
 _PREFIXES = {
     "f": 1e-15,
     "p": 1e-12,
@@ -49,6 +49,12 @@ def number(text: str) -> float:
         raise AnswerError(f"the unit of {stripped[:40]!r} is not understood")
     # A division by a whole power is exact where a product with its inverse is not.
     return value * scale if scale >= 1.0 else value / round(1.0 / scale)
+
+
+def register(text: str | None) -> int | None:
+    """Read a status register: a whole number, None where it is none."""
+    stripped = (text or "").strip().lstrip("+")
+    return int(stripped) if stripped.isascii() and stripped.isdigit() else None
 
 
 def field(text: str) -> Field:

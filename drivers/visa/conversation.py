@@ -7,13 +7,13 @@ import time
 from collections.abc import Mapping
 
 from drivers.contract import SourceError, SourceRefused, SourceTimeout, clean
-from drivers.visa.answers import without_header
+from drivers.visa.answers import register, without_header
 from drivers.visa.blocks import Block, BlockError
 from drivers.visa.dialect import Errors
 from drivers.visa.link import Link
 
 _MOST_FAULTS = 32
-_FAULT = re.compile(r"\s*([-+]?\d+)\s*(?:,\s*(.*))?$", re.DOTALL)
+_FAULT = re.compile(r"\s*([-+]?[0-9]{1,9})\s*(?:,\s*(.*))?$", re.DOTALL)
 _EVENT_FAULTS = 0b0011_1100
 """Bits of the standard event register that mean an error: query, device, execution, command."""
 
@@ -134,14 +134,14 @@ class Conversation:
         return found
 
     def _events(self, query: str, deadline: float) -> list[str]:
-        register = self.quietly("*ESR?", 1.0, deadline)
-        if register is None or not register.lstrip("+").isdigit():
+        events = register(self.quietly("*ESR?", 1.0, deadline))
+        if events is None:
             self.asks_errors = False
             return []
-        if not int(register) & _EVENT_FAULTS:
+        if not events & _EVENT_FAULTS:
             return []
         told = self.quietly(query, 1.0, deadline)
-        return [clean(told, 120) if told else f"event register {register}"]
+        return [clean(told, 120) if told else f"event register {events}"]
 
     def why_silent(self, deadline: float) -> str | None:
         """After a query without an answer: was it unknown, or asked in the wrong state?
@@ -153,12 +153,9 @@ class Conversation:
             is told.
         """
         try:
-            register = self.quietly("*ESR?", 0.7, deadline)
+            events = register(self.quietly("*ESR?", 0.7, deadline)) or 0
         except SourceError:
             return None
-        if register is None or not register.lstrip("+").isdigit():
-            return None
-        bits = int(register)
-        if bits & 0b0001_0000:
+        if events & 0b0001_0000:
             return WRONG_STATE
-        return UNKNOWN if bits & 0b0010_0000 else None
+        return UNKNOWN if events & 0b0010_0000 else None

@@ -156,8 +156,8 @@ def _integers(
     inside = codes if low is None or high is None else codes[(codes > low) & (codes < high)]
     step = code_step(inside)
     bits = _bits(dialect, fields, codes, step)
-    volts = np.asarray(dialect.scale.volts({**fields, "code": codes.astype(np.float64)}))
-    if volts.shape != codes.shape or not np.isfinite(volts).all():
+    volts = volts_of(dialect, fields, codes)
+    if not np.isfinite(volts).all():
         raise SourceRefused("the preamble gives no finite volts")
     one = abs(_volts(dialect, fields, step or 1) - _volts(dialect, fields, 0))
     if low is None or high is None:
@@ -196,7 +196,9 @@ def _floats(
             "every sample is out of range", "Choose a larger range, then measure again."
         )
     volts[over], volts[under] = volts[good].max(), volts[good].min()
-    volts = np.asarray(dialect.scale.volts({**fields, "code": volts}), dtype=np.float64)
+    volts = volts_of(dialect, fields, volts)
+    if not np.isfinite(volts).all():
+        raise SourceRefused("the preamble gives no finite volts")
     code = _known(dialect.scale.code, fields)
     bits = _bits(dialect, fields, None, 0)
     clipped = int(np.count_nonzero(over) + np.count_nonzero(under))
@@ -237,6 +239,13 @@ def _bits(dialect: Dialect, fields: Fields, codes: NDArray[Any] | None, step: in
     width = 8 * codes.dtype.itemsize
     seen = width - int(math.log2(step)) if step else width
     return seen if told is None else min(told, seen)
+
+
+def volts_of(dialect: Dialect, fields: Fields, codes: NDArray[Any]) -> NDArray[np.float64]:
+    """Work out the volts of codes, shape (N,); not finite where the scales are absurd."""
+    with np.errstate(over="ignore", invalid="ignore"):
+        volts = dialect.scale.volts({**fields, "code": codes.astype(np.float64)})
+    return np.broadcast_to(np.asarray(volts, dtype=np.float64), codes.shape)
 
 
 def _volts(dialect: Dialect, fields: Fields, code: float) -> float:

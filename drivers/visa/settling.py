@@ -16,7 +16,7 @@ from numpy.typing import NDArray
 from drivers.contract import SourceError
 from drivers.visa.dialect import Dialect
 from drivers.visa.formula import FormulaError
-from drivers.visa.frame import Fields, Reading, convert, values_of
+from drivers.visa.frame import Fields, Reading, convert, values_of, volts_of
 
 _SPAN_SHARE = 0.02
 _DIGITS_SHARE = 1e-3
@@ -94,8 +94,8 @@ def _readings(
     ways = [Reading(signed, big) for signed in (None, False, True) for big in (None, False, True)]
     for way in ways:
         try:
-            codes = values_of(rival.codes, fields, payload, way).astype(np.float64)
-            volts = np.asarray(rival.scale.volts({**fields, "code": codes}), dtype=np.float64)
+            volts = volts_of(rival, fields, values_of(rival.codes, fields, payload, way))
         except (SourceError, FormulaError):
             continue
-        yield way, volts
+        if np.isfinite(volts).all():
+            yield way, volts
