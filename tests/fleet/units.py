@@ -10,7 +10,6 @@ from numpy.random import Generator
 from numpy.typing import NDArray
 from scipy.optimize import least_squares
 
-from tests.circuits.maps import Map
 from tests.fleet.circuits import Circuit, Diodes, Ladders, Pair, SquareLaw, parts
 from tests.fleet.waves import Vector
 
@@ -196,12 +195,13 @@ KINDS: dict[str, Callable[[Generator], Circuit]] = {
 }
 
 
-def pot(rng: Generator) -> Pot:
-    """Draw a trim: either sense, track uneven by some per cent, one to three degrees of play."""
+def pot(rng: Generator, sense: int | None = None) -> Pot:
+    """Draw a trim: a sense unless given, track uneven by some per cent, up to three degrees of play."""
     heights = np.abs(rng.normal(0.0, [0.06, 0.04, 0.03]))
     phases = rng.uniform(0.0, 2.0 * np.pi, 3)
+    drawn = int(rng.choice([-1, 1]))
     return Pot(
-        sense=int(rng.choice([-1, 1])),
+        sense=drawn if sense is None else sense,
         waves=np.column_stack((heights, phases)),
         backlash=float(rng.uniform(0.3, 3.0)) / 270.0,
     )
@@ -212,27 +212,10 @@ def draw(kind: str, rng: Generator, senses: tuple[int, int] | None = None) -> Un
     circuit = KINDS[kind](rng)
     loading = float(_near(rng, LOADING[kind], 0.1))
     lag = abs(0.0004 * float(rng.standard_normal()))
-    pots = [pot(rng), pot(rng)]
-    if senses is not None:
-        pots = [replace(p, sense=s) for p, s in zip(pots, senses, strict=True)]
     return Unit(
         kind=kind,
         respond=lambda u, l: parts(  # noqa: E741
             circuit, loaded(u, loading), loaded(l, loading), lag
         ),
-        pots=(pots[0], pots[1]),
-    )
-
-
-def from_simulator(unit: Map, rng: Generator, senses: tuple[int, int] | None = None) -> Unit:
-    """Put trims of our drawing on a unit whose harmonics a circuit simulator computed."""
-    pots = [pot(rng), pot(rng)]
-    if senses is not None:
-        pots = [replace(p, sense=s) for p, s in zip(pots, senses, strict=True)]
-    best = unit.best()
-    return Unit(
-        kind=unit.circuit,
-        respond=unit.parts,
-        pots=(pots[0], pots[1]),
-        known_best=((best.u, best.l), best.thd),
+        pots=(pot(rng, senses and senses[0]), pot(rng, senses and senses[1])),
     )
