@@ -50,7 +50,10 @@ def read_dialect(text: str, name: str) -> Dialect:
         dialect = Dialect.model_validate(raw)
     except ValidationError as error:
         faults = [
-            (tuple(part for part in fault["loc"] if part not in _SHAPES), _said(fault["msg"]))
+            (
+                tuple(part for part in fault["loc"] if part not in _SHAPES),
+                _SAID.get(fault["type"], fault["msg"].removeprefix("Value error, ")),
+            )
             for fault in error.errors(include_url=False, include_input=False)
         ]
         raise _fault(text, name, faults) from error
@@ -113,11 +116,20 @@ def _text_of(path: Path) -> str:
 
 
 _SHAPES = ("numbers", "keywords", "asked", "prefix", "descriptor", "[key]")
+_SAID = {
+    "extra_forbidden": "there is no such key here",
+    "missing": "is missing",
+    "string_type": "text in quotes is needed",
+    "int_type": "a whole number is needed",
+    "bool_type": "true or false is needed",
+    "list_type": "a list in [ ] is needed",
+    "dict_type": "a table is needed",
+    "model_type": "a table is needed",
+    "too_short": "must not be empty",
+}
+"""The checker's kinds of fault in the words of someone who writes a file."""
+
 _Location = tuple[str | int, ...]
-
-
-def _said(message: str) -> str:
-    return message.removeprefix("Value error, ")
 
 
 def _location(place: str) -> _Location:

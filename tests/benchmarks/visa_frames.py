@@ -43,7 +43,8 @@ class Ready(TenField):
         """Made beforehand."""
 
     def data(self) -> bytes:
-        """Hand out the next."""
+        """Hand out the next, and keep no record of what was said."""
+        self.log.clear()
         return self.replies[self.armed % 2]
 
 
