@@ -148,11 +148,9 @@ def test_on_a_real_unit_the_cautions_come_first(pane: Pane) -> None:
     pane.await_text("left with 130")
 
 
-def test_the_first_paint_is_soon(
+def test_the_first_paint_is_recorded(
     pane: Pane, record_property: Callable[[str, object], None]
 ) -> None:
-    """Soon is under a second on an idle machine; here it is recorded, and only hopeless is failed."""
-    while not pane.text().strip():
-        time.sleep(0.01)
+    """How soon is recorded: under a second on an idle machine."""
+    pane.await_text("waits for", patience_s=30.0)
     record_property("first_paint_s", round(time.monotonic() - pane.begun, 3))
-    assert time.monotonic() - pane.begun < 10.0
