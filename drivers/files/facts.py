@@ -9,6 +9,9 @@ from drivers.files.cells import Convention, parse_cell
 from drivers.files.units import Unit, parse_unit
 from drivers.files.vocabulary import concept_of
 
+_LABELLED = re.compile(r"^[A-Za-z][\w ]{0,15}:\s*(\S.*)$")
+"""`CH1:0.5`: a value that says whose it is."""
+
 
 @dataclass(frozen=True, slots=True)
 class Fact:
@@ -59,6 +62,8 @@ def _facts(values: list[str], unit: Unit | None, convention: Convention) -> list
     """Read the values behind a key; a unit may follow in a cell of its own."""
     found: list[Fact] = []
     for value in values:
+        if (labelled := _LABELLED.match(value)) is not None:
+            value = labelled[1]
         number = _number(value, convention)
         if number is None and found and (own := parse_unit(value)) and found[-1].unit is unit:
             last = found.pop()

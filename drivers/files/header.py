@@ -25,6 +25,7 @@ NAME_ROWS = 6
 """Rows above the numbers among which names and units are looked for."""
 _COMMENT = re.compile(r'^[\s"]*(?:#|%|//|!|\*|;|--)+\s*')
 _BRACKETED = re.compile(r"[(\[]([^()\[\]]*)[)\]]")
+_LOST_PREFIX = re.compile(r"^\S{1,3}[Vs]$")
 _NAME_AND_UNIT = re.compile(r"[^\s()\[\]{}][^()\[\]{}]*[(\[{][^()\[\]{}]*[)\]}]")
 
 
@@ -89,12 +90,17 @@ class Header:
         """Give the first value stated for a concept."""
         return next(iter(self.facts.get(concept, ())), None)
 
-    def number(self, concept: str, channel: int = 1) -> float | None:
+    def fact(self, concept: str, channel: int = 1) -> Fact | None:
         """Give the number stated for a concept: the channel's own where there are several."""
         facts = [fact for fact in self.facts.get(concept, ()) if fact.number is not None]
         if not facts:
             return None
-        return facts[channel - 1 if len(facts) >= channel else 0].number
+        return facts[channel - 1 if len(facts) >= channel else 0]
+
+    def number(self, concept: str, channel: int = 1) -> float | None:
+        """Give the same as a bare number."""
+        fact = self.fact(concept, channel)
+        return fact.number if fact else None
 
 
 def read_header(block: Block, layout: Layout) -> Header:
@@ -129,7 +135,16 @@ def _column(place: int, name: str, unit_text: str, written: Unit | None) -> Colu
             f"column {clean(name, 40)!r} states a scaled unit and its numbers carry prefixes too",
             "Save with plain numbers.",
         )
-    return Column(place, name, unit, "" if unit else unit_text)
+    return Column(place, name, unit, "" if unit else unit_text or _unknown_unit(name))
+
+
+def _unknown_unit(name: str) -> str:
+    """Find a bracket that must be a unit though it is none known: `Time (?s)`, its micro lost."""
+    is_time = squeeze(name) in TIME_NAMES
+    for content in _BRACKETED.findall(name):
+        if is_time or _LOST_PREFIX.match(content):
+            return str(content)
+    return ""
 
 
 def _name_rows(rows: list[list[str]], layout: Layout) -> tuple[dict[int, str], dict[int, str]]:

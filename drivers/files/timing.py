@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -122,8 +123,8 @@ def _time_unit(table: Table) -> Unit | None:
     if unit is not None and unit.base == "s":
         return unit
     times = table.block.numbers[:, time.place]
-    if table.roles.bare and np.all(times == np.round(times)):
-        raise UnusableCapture("the first column rises evenly but does not say in what unit", ASK)
+    if np.all(times == np.round(times)):
+        raise UnusableCapture("time comes in whole numbers, and the file does not say of what", ASK)
     return None
 
 
@@ -159,27 +160,32 @@ def _refuse_pairs(times: NDArray[np.float64], values: NDArray[np.float64]) -> No
 
 def _stated(table: Table) -> float | None:
     """Find the interval that the header states, by itself or as a rate; both must agree."""
-    header, place = table.header, table.roles.place
-    interval = _in_seconds(table, header.number("interval", place))
-    rate = header.number("rate", place)
-    by_rate = 1.0 / rate if rate and rate > 0.0 else None
-    interval = interval if interval and interval > 0.0 else None
-    if interval is None or by_rate is None:
-        return interval or by_rate
-    if abs(interval - by_rate) > AGREE * interval and table.roles.time is None:
+    found = [
+        interval_s
+        for concept in ("interval", "rate", "clock")
+        if (interval_s := _interval(table, concept)) is not None
+    ]
+    if table.roles.time is None and any(abs(one - found[0]) > AGREE * found[0] for one in found):
         raise UnusableCapture(
-            f"the header states an interval of {interval:.6g} s and a rate of {rate:.6g} a second, "
-            "which contradict each other",
+            "the header states intervals that contradict each other: "
+            + ", ".join(f"{interval_s:.6g} s" for interval_s in found),
             ASK,
         )
-    return interval
+    return found[0] if found else None
 
 
-def _in_seconds(table: Table, interval: float | None) -> float | None:
-    """Apply the header's unit of the horizontal axis to an interval without one of its own."""
-    fact = table.header.first("interval")
-    if interval is None or fact is None or fact.unit is not None:
-        return interval
+def _interval(table: Table, concept: str) -> float | None:
+    """Read one statement as seconds between samples, by its unit where it has one."""
+    fact = table.header.fact(concept, table.roles.place)
+    if fact is None or fact.number is None or not 0.0 < fact.number < math.inf:
+        return None
+    base = fact.unit.base if fact.unit else ""
+    if base == "Hz" or (not base and concept == "rate"):
+        return 1.0 / fact.number
+    if base == "s":
+        return fact.number
+    if base or concept != "interval":
+        return None
     x_unit = table.header.first("x_unit")
     unit = parse_unit(x_unit.text) if x_unit else None
-    return interval * unit.factor if unit is not None and unit.base == "s" else interval
+    return fact.number * (unit.factor if unit is not None and unit.base == "s" else 1.0)

@@ -13,6 +13,7 @@ _CONCEPTS = {
     "xdelta hresolution tinc tincr",
     "rate": "samplerate samplingrate fs samplingfrequency samplefrequency rate acquisitionrate "
     "samplespersecond srate samplingfreq samplerateinhz scanrate",
+    "clock": "clock sampleclock clocktime samplingclock",
     "length": "recordlength memorylength points numberofpoints samples numberofsamples nrpt nopoints "
     "noofpoints datapoints pointcount samplecount segmentsize waveformpoints memorysize nosamples",
     "y_unit": "verticalunits verticalunit yunit yunits unit units vunit vunits",

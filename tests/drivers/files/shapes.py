@@ -385,3 +385,67 @@ def whole_nanoseconds() -> Shape:
 def more_header_than_data() -> Shape:
     remarks = "".join(f"Remark {number},nothing\n" for number in range(3000))
     return of(remarks + "Time (s),CH1 (V)\n" + rows(TIMES, VOLTS))
+
+
+@shape
+def values_that_say_whose_they_are() -> Shape:
+    head = (
+        "Record Length,Analog:1500\nSample Interval,Analog:2.0e-06\nVertical Units,CH1:mV\n"
+        "Vertical Scale,CH1:500\nHorizontal Units,s\n\nValue\n"
+    )
+    return of(head + "".join(f"{cell}\n" for cell in cells(V * 1e3, ".1f")))
+
+
+@shape
+def start_and_increment_in_the_names_row() -> Shape:
+    return of("CH1V,t0 = -1e-03,tInc = 2e-06,\n" + "".join(f"{cell},\n" for cell in VOLTS))
+
+
+@shape
+def remarks_with_equal_signs() -> Shape:
+    head = "#CHANNEL:CH1\n#CLOCK=2.000uS\n#SIZE=1500\n#UNITS:V\n"
+    return of(head + "".join(f"{cell}\n" for cell in VOLTS))
+
+
+@shape
+def a_meter_s_log_with_time_last() -> Shape:
+    head = "Reading,Unit,Range,Relative Time (s)\n"
+    return of(head + rows(cells(V, ".6E"), ["VDC"] * N, ["10"] * N, cells(T - T[0], ".6f")))
+
+
+@shape
+def a_nameless_counter_before_named_columns() -> Shape:
+    return of(",time,ch1\n" + rows(map(str, range(N)), TIMES, VOLTS))
+
+
+@shape
+def date_time_and_value_with_decimal_commas() -> Shape:
+    clock = [f"12:00:{cell}" for cell in comma(cells(T - T[0] + 10, ".6f"))]
+    text = rows(["01.05.2024"] * N, clock, comma(VOLTS), by=";")
+    return of("Datum;Zeit;U [V]\n" + text)
+
+
+@shape
+def a_column_of_words_after_the_values() -> Shape:
+    return of("t [s];U [V];state\n" + rows(TIMES, VOLTS, ["OK"] * N, by=";"))
+
+
+@shape
+def names_in_a_comment_between_blanks() -> Shape:
+    return of("# time voltage\n" + rows(cells(T, ".18e"), cells(V, ".18e"), by=" "))
+
+
+@shape
+def an_interval_given_as_a_rate() -> Shape:
+    return of("Sample Interval,500 kHz\n" + "".join(f"{cell}\n" for cell in VOLTS))
+
+
+@shape
+def empty_columns_between() -> Shape:
+    return of("Time (s)\t\tCH1 (V)\n" + rows(TIMES, [""] * N, VOLTS, by="\t"))
+
+
+@shape
+def two_columns_of_whole_codes() -> Shape:
+    text = "dt,2us\nA,B\n" + rows(map(str, CODES + 128), map(str, CODES + 100))
+    return of(text, values=(CODES - 28) / 128, has_volts=False, channel=2)

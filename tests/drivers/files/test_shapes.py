@@ -71,7 +71,7 @@ REFUSALS = {
         "without names",
     ),
     "time_of_unknown_unit": ("Time,CH1\n(div),(V)\n" + BODY, "no unit of time"),
-    "rising_whole_numbers": (rows(cells(T * 1e9, ".0f"), VOLTS), "in what unit"),
+    "rising_whole_numbers": (rows(cells(T * 1e9, ".0f"), VOLTS), "whole numbers"),
     "time_that_stands_still": (HEAD + rows(["0.00"] * N, VOLTS), "stands still"),
     "a_missing_time": (
         HEAD + BODY.replace("\n" + TIMES[700], "\n", 1),
@@ -85,6 +85,20 @@ REFUSALS = {
     "a_counter_in_steps_of_ten": (
         "Sample Interval,2e-7\nIndex,CH1 (V)\n" + rows(map(str, range(0, 10 * N, 10)), VOLTS),
         "does not step by one",
+    ),
+    "a_lost_micro": ("Time (?s),CH1 (V)\n" + BODY, "no unit of time"),
+    "whole_numbers_as_time": ("Time,CH1\n" + rows(map(str, range(N)), VOLTS), "whole numbers"),
+    "another_axis": (
+        "Phase (deg),U (V)\n" + rows(cells(np.arange(N) * 0.3, ".1f"), VOLTS),
+        "is no time",
+    ),
+    "names_that_do_not_fit": (
+        "Time (us) CH1 (V) CH2 (V)\n" + rows(TIMES, VOLTS, by=" "),
+        "another count of names",
+    ),
+    "one_name_over_two_halves": (
+        "dt,1e-6\nA,B\n" + rows(*[map(str, abs(CODES))] * 4),
+        "may part the columns or mark decimals",
     ),
     "mixed_units": (
         HEAD + rows(TIMES, [f"{c} {'V' if n % 2 else 'A'}" for n, c in enumerate(VOLTS)]),
