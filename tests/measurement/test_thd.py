@@ -96,3 +96,27 @@ def test_no_disturbance_at_all_gives_a_point():
 def test_students_half_width_is_scipys(freedom):
     assert student_95(freedom) == pytest.approx(stats.t.ppf(0.975, freedom), rel=2e-3)
     assert student_95(math.inf) == pytest.approx(stats.norm.ppf(0.975))
+
+
+def test_what_noise_adds_is_taken_off_the_square():
+    parts = np.zeros(28)
+    parts[0] = 5e-4
+    noise_power = 9e-8
+    thd = thd_of(parts, noise_power / 28 * np.eye(28), Disturbance(noise_power))
+    assert thd.value == pytest.approx(4e-4)  # 5e-4 squared less 3e-4 squared
+    quiet = thd_of(0.5 * parts, noise_power / 28 * np.eye(28), Disturbance(noise_power))
+    assert (quiet.value, quiet.low) == (0.0, 0.0)
+    assert quiet.high > 1e-4
+
+
+def test_squares_of_thd_are_right_on_average():
+    rng = np.random.default_rng(6)
+    truth = np.zeros(28)
+    truth[:2] = 4e-4, 3e-4
+    each = 1e-4
+    squares = []
+    for _ in range(4000):
+        found = truth + each * rng.standard_normal(28)
+        thd = thd_of(found, each**2 * np.eye(28), Disturbance(28 * each**2))
+        squares.append(thd.value**2 if thd.value else found @ found - 28 * each**2)
+    assert np.mean(squares) == pytest.approx(25e-8, rel=0.03)
