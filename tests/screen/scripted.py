@@ -279,7 +279,10 @@ class Turned:
 
     turns: list[tuple[Trim, float]] = field(default_factory=list)
     """Turns in order."""
+    made_at: list[float] = field(default_factory=list)
+    """When each was made, monotonic seconds."""
 
     def turn(self, trim: Trim, turns: float) -> None:
         """Note a turn."""
+        self.made_at.append(time.monotonic())
         self.turns.append((trim, turns))
