@@ -8,6 +8,7 @@ slow book from a busy machine. Two thousand units, twenty kinds, ten years.
 
 from __future__ import annotations
 
+import os
 import random
 import statistics
 import sys
@@ -133,7 +134,7 @@ def _measure(path: Path) -> int:
             f"{name:46} {max(walls):7.3f} s, median {statistics.median(walls):.3f} s, "
             f"of the processor {max(works):.3f} s"
         )
-    print(f"most of the processor {most:.3f} s")
+    print(f"most of the processor {most:.3f} s; load of the machine {os.getloadavg()[0]:.1f}")
     print(f"slowest {worst:.3f} s: {'passed' if worst < BAR_S else 'FAILED'}")
     everything, _ = _time(path, lambda book: book.sheets())
     print(f"(every one of the sheets in one list: {everything:.2f} s)")
