@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 import time
+from collections.abc import Callable
 from dataclasses import dataclass, replace
 from datetime import datetime
 from hashlib import blake2b
 from pathlib import Path
-from typing import Self
+from typing import Self, TypeVar
 
 from drivers.contract import (
     CaptureRequest,
@@ -20,13 +21,17 @@ from drivers.contract import (
     Waveform,
     clean,
 )
+from drivers.files.aside import Aside, NoAnswer
 from drivers.files.capture import interpret, load
 from drivers.files.csvfile import FileCapture, Wanted
 from drivers.files.single import ASKED, checked
 from drivers.files.watch import HOLDING_S, Seen, Watch
 
+T = TypeVar("T")
 LEAST_PAUSE_S = 0.05
 MOST_PAUSE_S = 1.0
+GRACE_S = 0.5
+"""Beyond the time asked for, a slow share is given so long to answer."""
 LOOK_SHARE = 0.05
 """Part of the time that may go into looking: slow folders are looked at less often."""
 SAVE = "Save a capture from the instrument into the folder."
@@ -65,6 +70,8 @@ class FolderSource:
             clean(str(path)), f"folder {clean(path.name or str(path))}", paced_by_person=True
         )
         self._watch = Watch(path)
+        self._aside = Aside()
+        self._deadline = time.monotonic() + CaptureRequest().timeout_s
         self._contents: dict[str, _Taken] = {}
         self._unripe: dict[str, Seen] = {}
         self._pause_s = LEAST_PAUSE_S
@@ -87,14 +94,14 @@ class FolderSource:
         SourceLost
             The folder cannot be read any more.
         """
-        deadline = time.monotonic() + request.timeout_s
+        self._deadline = time.monotonic() + request.timeout_s
         while True:
             if self._closed:
                 raise SourceLost("the folder source is closed", "Open it again.")
             files = self._look()
             if (waveform := self._next(files)) is not None:
                 return waveform
-            left = deadline - time.monotonic()
+            left = self._deadline - time.monotonic()
             if left <= 0.0:
                 raise SourceTimeout(self._nothing(files, request.timeout_s), SAVE)
             time.sleep(min(self._pause_s, left))
@@ -119,7 +126,7 @@ class FolderSource:
     def _look(self) -> list[Seen]:
         began = time.monotonic()
         try:
-            files = self._watch.look(began)
+            files = self._ask("look", lambda: self._watch.look(time.monotonic()))
         except OSError as error:
             raise SourceLost(
                 f"the folder {clean(str(self._path))} cannot be read: "
@@ -129,6 +136,17 @@ class FolderSource:
         took_s = time.monotonic() - began
         self._pause_s = min(MOST_PAUSE_S, max(LEAST_PAUSE_S, took_s / LOOK_SHARE))
         return files
+
+    def _ask(self, what: object, call: Callable[[], T]) -> T:
+        """Ask the file system, and wait no longer than the capture may."""
+        wait_s = max(0.0, self._deadline - time.monotonic()) + GRACE_S
+        try:
+            return self._aside.ask(what, call, wait_s)
+        except NoAnswer as error:
+            raise SourceTimeout(
+                f"the folder {clean(str(self._path))} does not answer",
+                "Check the connection to the share that it lies on.",
+            ) from error
 
     def _next(self, files: list[Seen]) -> Waveform | None:
         """Take the first file in order; a growing one holds up the others, though not for ever."""
@@ -153,12 +171,14 @@ class FolderSource:
             return None
         self._unripe.pop(seen.name, None)
         try:
-            raw, taken_at = load(self._path / seen.name)
+            raw, taken_at = self._ask(seen, lambda: load(self._path / seen.name))
             if len(raw) != seen.mark.size:
                 return None  # written to while it was read: the next look sees the change
             if self._grew(seen, raw):
                 return None
             read = interpret(raw, self._path / seen.name, self._wanted, taken_at)
+        except SourceTimeout:
+            raise
         except SourceLost:
             return None  # gone again: renamed or removed
         except SourceError:
@@ -229,5 +249,5 @@ def open_folder(
         )
     try:
         return FolderSource(path, wanted)
-    except SourceLost as error:
+    except (SourceLost, SourceTimeout) as error:
         raise SourceRefused(str(error), "Check the permissions of the folder.") from error

@@ -11,9 +11,11 @@ from drivers.contract import (
     SourceLost,
     SourceNotFound,
     SourceRefused,
+    SourceTimeout,
     Waveform,
     clean,
 )
+from drivers.files.aside import Aside, NoAnswer
 from drivers.files.capture import interpret, load
 from drivers.files.csvfile import Wanted
 
@@ -31,6 +33,7 @@ class FileSource:
     def __init__(self, path: Path, wanted: Wanted) -> None:
         self._path = path
         self._wanted = wanted
+        self._aside = Aside()
         self._closed = False
         self._info = SourceInfo(clean(str(path)), clean(path.name), finite=True)
 
@@ -47,10 +50,15 @@ class FileSource:
         SourceError
             The file is gone or cannot be read as one plain waveform.
         """
-        del request  # there is nothing to ask of a file
         if self._closed:
             raise SourceLost("the file source is closed", "Open it again.")
-        raw, taken_at = load(self._path)
+        try:
+            raw, taken_at = self._aside.ask("load", lambda: load(self._path), request.timeout_s)
+        except NoAnswer as error:
+            raise SourceTimeout(
+                f"{clean(self._path.name)} was not read within {request.timeout_s:.3g} s",
+                "Check the connection to the share that it lies on.",
+            ) from error
         return interpret(raw, self._path, self._wanted, taken_at).waveform
 
     def close(self) -> None:

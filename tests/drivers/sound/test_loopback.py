@@ -57,8 +57,8 @@ def test_captures_do_not_overlap_and_come_at_the_pace_of_sound(loop: Loop):
         began = time.monotonic()
         waves = [source.capture(CaptureRequest(samples=4800)) for _ in range(10)]
         took_s = time.monotonic() - began
-    assert took_s == pytest.approx(1.0, abs=0.25)
-    assert all(wave.age_s < 0.2 for wave in waves)
+    assert took_s == pytest.approx(1.0, abs=0.6)
+    assert all(wave.age_s < 0.5 for wave in waves)
     turn = 2 * np.pi * TONE_HZ / 48000
     starts = [np.angle(np.sum(w.samples * np.exp(-1j * turn * np.arange(4800)))) for w in waves]
     steps = np.diff(np.unwrap(starts))
@@ -72,7 +72,7 @@ def test_nothing_sampled_before_the_turn_is_given_after_it(loop: Loop):
             turned = loop.say(f"second {ratio}")
             wave, reading = read(source, fresh_after=turned + 0.05)
             assert reading.thd.value == pytest.approx(ratio, abs=1e-5)
-            assert wave.age_s < 0.2
+            assert wave.age_s < 0.5
 
 
 def test_a_backlog_handed_over_late_is_not_taken_for_new_sound(loop: Loop):
