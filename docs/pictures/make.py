@@ -18,8 +18,8 @@ from textual.app import App
 from trimmer.book import open_book
 from trimmer.cli import build_parser
 from trimmer.commands.hands import HandsOn
+from trimmer.commands.holding import session_of
 from trimmer.commands.opening import opened
-from trimmer.commands.tune import session_of
 from trimmer.reports import Advised, Conversation, Finished, Followed, Report, Word
 from trimmer.screen.app import TuneApp
 from trimmer.screen.options import Options

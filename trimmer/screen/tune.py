@@ -139,7 +139,8 @@ class TuneScreen(Screen[None]):
             self._beside_until = monotonic() + BESIDE_S
         self.display_view()
         self.set_interval(1.0, self.display_view)
-        self.follow()
+        # After the first paint: what the session loads and asks would hold it up.
+        self.call_after_refresh(self.follow)
 
     @work(thread=True, exclusive=True, exit_on_error=False, group="readings")
     def follow(self) -> None:
