@@ -22,7 +22,9 @@ def main() -> int:
     status = 0
     for tool, *words in CHECKS:
         print(f"+ {tool} {' '.join(words)}", flush=True)
-        status = subprocess.run([str(TOOLS / tool), *words], cwd=ROOT, check=False).returncode or status
+        status = (
+            subprocess.run([str(TOOLS / tool), *words], cwd=ROOT, check=False).returncode or status
+        )
     words = sys.argv[1:] or ["-n", "2"]
     print(f"+ pytest {' '.join(words)}", flush=True)
     command = [sys.executable, "-m", "pytest", "-q", *words]

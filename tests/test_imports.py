@@ -7,7 +7,15 @@ import sys
 
 import pytest
 
-HEAVY = ("textual", "pyvisa", "sounddevice", "matplotlib", "sqlalchemy", "pydantic", "drivers.bench")
+HEAVY = (
+    "textual",
+    "pyvisa",
+    "sounddevice",
+    "matplotlib",
+    "sqlalchemy",
+    "pydantic",
+    "drivers.bench",
+)
 
 
 def loaded_after(statement: str) -> set[str]:
