@@ -201,4 +201,7 @@ def test_both_crests_flat_and_a_lower_amplitude_mean_the_supply():
 
 
 def test_flat_crests_within_what_a_trim_does_are_left_to_the_trims():
-    assert not {"clipping-in-unit", "supply"} & set(told(seen(crest={3: 0.03, 2: 0.01})))
+    for crest in ({3: 0.03, 2: 0.01}, {3: -0.04}, {2: -0.03, 3: -0.02, 4: 0.01}):
+        reading = seen(crest=crest)
+        assert not {"clipping-in-unit", "supply"} & set(told(reading))
+    assert max(reading.extra["flat_upper"], reading.extra["flat_lower"]) > 1.05

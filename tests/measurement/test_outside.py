@@ -28,7 +28,7 @@ def test_nist_enso_certified_amplitudes_with_its_certified_periods():
     lines = Lines(1, 2 * math.pi / np.array([b4, b7]))
     w = 2 * math.pi / 12
     record = Record(y, float(y.min()), float(y.max()), mean=0.0, scale=1.0)
-    solved = solve(project(record, lines, w), w, None)
+    solved = solve(project(record, lines, w), w, lines)
     # amplitudes about the middle of the record, turned to the file's x = 0
     phasors = (solved.amplitudes[0] - 1j * solved.amplitudes[1]) * np.exp(
         -1j * lines.frequencies(w) * 84.5

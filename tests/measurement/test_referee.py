@@ -103,16 +103,14 @@ def test_normal_equations_are_those_of_the_full_matrix(fixed):
     normal = normal_equations(count, lines, w)
     sines = sine.T @ sine
     sines[0, 0] = 1.0
-    tc, ts = t[:, None] * cosine, t[:, None] * sine
-    for ours, theirs, size in (
-        (normal.gram[0], cosine.T @ cosine, count),
-        (normal.gram[1], sines, count),
-        (normal.even_slope, cosine.T @ ts, count**2),
-        (normal.odd_slope, sine.T @ tc, count**2),
-        (normal.sine_curve, ts.T @ ts, count**3),
-        (normal.cosine_curve, tc.T @ tc, count**3),
-    ):
-        assert np.abs(ours - theirs).max() < 1e-11 * size
+    for ours, theirs in ((normal.gram[0], cosine.T @ cosine), (normal.gram[1], sines)):
+        assert np.abs(ours - theirs).max() < 1e-11 * count
+    k_cos, k_sin = np.random.default_rng(1).standard_normal((2, lines.count))
+    derivative = t * (cosine @ k_sin - sine @ k_cos)
+    products, itself = normal.with_derivative(k_cos, k_sin)
+    assert np.abs(products[0] - cosine.T @ derivative).max() < 1e-11 * count**2
+    assert np.abs(products[1] - sine.T @ derivative).max() < 1e-11 * count**2
+    assert itself == pytest.approx(float(derivative @ derivative), rel=1e-10)
     cross = cross_products(count, np.array([0.5, 0.01]), w_i)
     assert np.allclose(cross[0], np.cos(np.outer([0.5, 0.01], t)) @ cosine, atol=1e-8)
     assert np.allclose(cross[1], np.sin(np.outer([0.5, 0.01], t)) @ sine, atol=1e-8)
@@ -133,7 +131,7 @@ def test_block_sums_add_up_to_sums_over_the_record_also_a_little_beside(count):
         first, second = found.totals(near)
         assert np.abs(first - samples @ waves).max() < 1e-9 * math.sqrt(count)
         assert np.abs(second - (t * samples) @ waves).max() < 1e-5 * count**1.5
-    some, _ = found.totals(w, orders=2)
+    some, _ = found.totals(w, Lines(2, lines.fixed))
     every, _ = found.totals(w)
     assert np.allclose(some, every[[0, 1, 2, 6]], rtol=1e-12)
 

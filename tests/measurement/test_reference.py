@@ -133,3 +133,22 @@ def test_a_document_of_a_later_or_an_older_version_is_read_as_far_as_it_is_known
     for broken in ({}, {**plain, "covariance": [0.0, 1.0]}, {**plain, "thd": 3}):
         with pytest.raises(ValueError, match="not a reading"):
             from_document(broken)
+
+
+def test_the_skew_of_a_reference_is_doubted_as_its_frequency_is_off():
+    near, off = reference(f=9.37), reference(f=14.1)
+    at_hand, apart = (measure(through_chain(UNIT, seed=3), 1.0, reference=r) for r in (near, off))
+    assert not apart.flags
+    leaning = Reference(
+        near.fundamental_hz * 1.5, near.amplitude, near.offset, near.parts + 1e-3, near.covariance
+    )
+    level = Reference(
+        near.fundamental_hz, near.amplitude, near.offset, near.parts + 1e-3, near.covariance
+    )
+    doubtful, sure = (
+        measure(through_chain(UNIT, seed=3), 1.0, reference=r) for r in (leaning, level)
+    )
+    ratio = np.sqrt(np.diag(doubtful.covariance) / np.diag(sure.covariance))
+    assert ratio[1] > 3.0  # skew: the logarithm of 1.5 times 1e-3
+    assert ratio[0] == pytest.approx(1.0, abs=0.05)
+    assert at_hand.thd.sigma <= apart.thd.sigma * 1.05

@@ -196,3 +196,21 @@ def test_whatever_comes_in_a_reading_or_a_typed_refusal_comes_out():
     assert outcomes.count("reading") > 30
     assert "refused without a word" not in outcomes
     assert len(set(outcomes)) >= 7
+
+
+def test_a_mains_line_too_near_an_order_is_left_to_the_order():
+    interval = 1e-5
+    wave = Wave(parts_of(k2=0.01, k3=0.02j), 2 * math.pi * 100.4 * interval)
+    reading = measure(noisy(1e-3, wave), interval, mains_hz=50.0)
+    assert abs(reading.thd.value - wave.thd) < 3 * reading.thd.sigma + 1e-5
+    assert "hum_ratio" not in reading.extra
+    plain = measure(noisy(1e-3, wave), interval, mains_hz=1e6)
+    assert np.allclose(np.diag(reading.covariance), np.diag(plain.covariance), rtol=1e-3)
+
+
+def test_a_wave_buried_in_noise_is_refused():
+    wave = PLAIN.samples(COUNT)
+    noise = np.random.default_rng(3).standard_normal(COUNT)
+    assert measure(wave + 0.3 * noise, MICRO).orders == 15
+    with pytest.raises(MeasurementError, match="does not repeat"):
+        measure(wave + 0.9 * noise, MICRO)

@@ -162,10 +162,10 @@ def systematic_variances(
     if peak is None:
         known = digitiser.bits is not None and digitiser.bits > 0
         peak = default_nonlinearity(digitiser.bits or 0, digitiser.averaged) if known else 0.0
-    peak = peak if math.isfinite(peak) else 0.0
+    peak = min(abs(peak), 2.0**24) if math.isfinite(peak) else 0.0
     bend = (0.5 * peak * code / amplitude / k) ** 2
-    dither = max(noise**2 - code**2 / 12.0, 0.0) / code**2
-    rounding = code**3 / (math.pi**4 * amplitude**3) * math.exp(-4.0 * math.pi**2 * dither)
+    dither = max((noise / code) ** 2 - 1.0 / 12.0, 0.0)
+    rounding = (code / amplitude) ** 3 / math.pi**4 * math.exp(-4.0 * math.pi**2 * dither)
     variances[0::2] = bend + rounding
     return variances
 

@@ -140,13 +140,14 @@ def thd_plus_noise_of(fit: Fit) -> float:
     block, single = even_gram[:2, :2], float(odd_gram[1, 1])
     left -= float(even @ np.linalg.solve(block, even)) + odd * odd / single
     # derivative of the tone with its frequency: -a_1 t sin + b_1 t cos
-    normal = fit.normal
-    even_g, odd_g = -a_1 * normal.even_slope[:2, 1], b_1 * float(normal.odd_slope[1, 1])
-    itself = float(normal.sine_curve[1, 1]) * a_1**2 + float(normal.cosine_curve[1, 1]) * b_1**2
+    only = np.zeros((2, a.size))
+    only[0, 1], only[1, 1] = a_1, b_1
+    with_basis, itself = fit.normal.with_derivative(only[0], only[1])
+    even_g, odd_g = with_basis[0, :2], float(with_basis[1, 1])
     lean = np.linalg.solve(block, even_g)
     stiffness = itself - float(even_g @ lean) - odd_g * odd_g / single
-    score = -a_1 * float(normal.even_slope[:, 1] @ a) + b_1 * float(normal.odd_slope[:, 1] @ b)
-    score -= float(even @ lean) + odd * odd_g / single
+    score = float(with_basis[0] @ a + with_basis[1] @ b) - float(even @ lean)
+    score -= odd * odd_g / single
     if stiffness > 0.0:
         left -= score * score / stiffness
     residual = fit.residual_power + max(left, 0.0)

@@ -71,9 +71,8 @@ def _fit_from(record: Record, w: float, orders: int, unsure: float = 0.0) -> Fit
         return None
     wanted = min(most, max(kept_orders(max(MOST_ORDERS, orders), near.w), FEWEST_ORDERS))
     slow = [slow_line(record.count)] if near.wander > _WANDERS else []
-    lines = Lines(wanted, np.array(slow))
-    start = near.projections if slow else near.projections.on_orders()
-    found = fit(record, lines, near.w, start if start.lines.orders == wanted else None)
+    start = near.projections if near.projections.lines.orders == wanted else None
+    found = fit(record, Lines(wanted, np.array(slow)), near.w, start)
     usable = 0.0 < found.w * wanted < math.pi and bool(np.isfinite(found.phasors).all())
     firm = 1e-6 * abs(complex(found.phasors[1])) ** 2 * record.count**3 / 24.0
     return found if usable and found.stiffness > firm else None

@@ -27,6 +27,8 @@ _ROUNDS = 8
 _GRAIN = 1e-14
 _STAGES = (2, 8)
 """Orders fitted on the way: the more orders, the narrower the way to the minimum."""
+_SURE_CYCLES = 8.0
+"""From so many periods on the spectrum knows the frequency well enough for the second stage."""
 _ROUGH, _NEAR, _FINE = 1e-2, 0.1, 1e-6
 """A frequency counts as settled when the next step turns the highest order by less than this (rad)
 over half the record. The step is still taken, and what it leaves is its square."""
@@ -60,7 +62,7 @@ class Fit:
     converged: bool
     """Whether the last step was below the arithmetic's grain."""
     projections: Projections
-    """What the fit was made from."""
+    """What the fit was made from; it may hold more lines than were fitted."""
     normal: Normal
     """Normal equations at `w`."""
 
@@ -112,27 +114,26 @@ class Solution:
     step: float
 
 
-def solve(
-    projections: Projections, w: float, orders: int | None, near: Array | None = None
-) -> Solution:
-    """Solve for all amplitudes at the fundamental `w`, and for the next step of `w`.
+def solve(projections: Projections, w: float, lines: Lines, near: Array | None = None) -> Solution:
+    """Solve for the amplitudes of `lines` at the fundamental `w`, and for the next step of `w`.
 
-    `orders` fits only the offset, that many orders and the nuisance lines; None takes all. `near` is
-    the inverse Gram matrix at a frequency nearby, where there is one.
+    The projections may hold more lines. `near` is the inverse Gram matrix at a frequency nearby,
+    where there is one.
     """
-    lines = projections.lines if orders is None else Lines(orders, projections.lines.fixed)
     normal = normal_equations(projections.samples, lines, w)
-    first, second = projections.totals(w, orders)
-    data = np.stack((first.real, -first.imag))
+    first, second = projections.totals(w, lines)
+    data = np.empty((2, lines.count))
+    data[0] = first.real
+    np.negative(first.imag, out=data[1])
     data[1, 0] = 0.0
     inverse = _inverse(normal.gram) if near is None else near
-    amplitudes = _solution(normal.gram, inverse, data)
+    rounds = 1 if near is None else _ROUNDS
+    amplitudes = _solution(normal.gram, inverse, data, rounds)
     k_cos, k_sin = lines.multiples() * amplitudes
     # derivative of the model: t (-k a sin + k b cos); its products with basis, itself and data
-    with_basis = np.stack((-(normal.even_slope @ k_cos), normal.odd_slope @ k_sin))
-    itself = k_cos @ normal.sine_curve @ k_cos + k_sin @ normal.cosine_curve @ k_sin
+    with_basis, itself = normal.with_derivative(k_cos, k_sin)
     with_data = k_cos @ second.imag + k_sin @ second.real
-    tilt = -_solution(normal.gram, inverse, with_basis)
+    tilt = -_solution(normal.gram, inverse, with_basis, rounds)
     stiffness = float(itself + np.vdot(with_basis, tilt))
     score = float(with_data - np.vdot(amplitudes, with_basis))
     step = score / stiffness if stiffness > 0.0 else 0.0
@@ -147,7 +148,7 @@ def solve(
     )
 
 
-def _solution(gram: Array, inverse: Array, right: Array) -> Array:
+def _solution(gram: Array, inverse: Array, right: Array, rounds: int) -> Array:
     """Solve both Gram systems by an inverse that is nearly right, then by what it left.
 
     Each round takes the error down by as much as the inverse is good: a change of frequency within
@@ -155,11 +156,10 @@ def _solution(gram: Array, inverse: Array, right: Array) -> Array:
     """
     right = right[:, :, None]
     solution = inverse @ right
-    size = float(np.abs(solution).max())
-    for _ in range(_ROUNDS):
+    for _ in range(rounds):
         change = inverse @ (right - gram @ solution)
         solution += change
-        if float(np.abs(change).max()) <= _GRAIN * size:
+        if rounds > 1 and float(np.abs(change).max()) <= _GRAIN * float(np.abs(solution).max()):
             break
     return solution[:, :, 0]
 
@@ -175,7 +175,7 @@ def _inverse(gram: Array) -> Array:
 def _refine(
     projections: Projections,
     w: float,
-    orders: int | None,
+    lines: Lines,
     tolerance: float,
     near: Array | None = None,
 ) -> tuple[float, bool, Solution]:
@@ -189,20 +189,20 @@ def _refine(
         The frequency, whether it settled, and the solution that the last step started from.
     """
     cell = math.pi / projections.samples
-    small = tolerance * 2.0 / (projections.samples * (orders or projections.lines.orders))
-    solved = solve(projections, w, orders, near)
-    close = 0.02 * cell / (orders or projections.lines.orders)
+    small = tolerance * 2.0 / (projections.samples * lines.orders)
+    solved = solve(projections, w, lines, near)
+    close = 0.02 * cell / lines.orders
     for _ in range(_STEPS):
         step = max(-cell, min(cell, solved.step))
         if abs(step) <= small:
             return w + step, True, solved
         near = solved.inverse if abs(step) < close else None
-        tried = solve(projections, w + step, orders, near)
+        tried = solve(projections, w + step, lines, near)
         for _ in range(6):
             if tried.explained >= solved.explained * (1.0 - 1e-13):
                 break
             step *= 0.5
-            tried = solve(projections, w + step, orders)
+            tried = solve(projections, w + step, lines)
         w, solved = w + step, tried
         if not 0.0 < w < math.pi:
             break
@@ -244,13 +244,15 @@ def approach(record: Record, orders: int, w: float, unsure: float = 0.0) -> Appr
         Where it got to.
     """
     stages = [stage for stage in _STAGES if stage < orders] or [orders]
+    if w * record.count > 2.0 * math.pi * _SURE_CYCLES:
+        stages = stages[-1:]
     most = orders if record.count <= SHORT else stages[-1]
     slow = np.array([slow_line(record.count)])
     projections = project(record, Lines(most, slow), w)
     if unsure > 0.0:
         w = beat(projections, 1, w, unsure)
     for stage in stages:
-        w, _, solved = _refine(projections, w, stage, _ROUGH)
+        w, _, solved = _refine(projections, w, Lines(stage, slow), _ROUGH)
         if not 0.0 < w < math.pi / most:
             return Approach(0.0, 0.0, projections)
     sizes = np.hypot(*solved.amplitudes)
@@ -277,17 +279,17 @@ def fit(record: Record, lines: Lines, w: float, start: Projections | None = None
     w
         Start, as `approach` gives it.
     start
-        Projections on the very `lines` near `w`, where they are at hand.
+        Projections near `w` on `lines` or more, where they are at hand.
     """
     projections = project(record, lines, w) if start is None else start
-    w, _, solved = _refine(projections, w, None, _NEAR)
+    w, _, solved = _refine(projections, w, lines, _NEAR)
     for _ in range(4):
         if _is_blurred(projections, w):
-            projections = project(record, lines, w)
-        w, converged, solved = _refine(projections, w, None, _FINE, solved.inverse)
+            projections = project(record, projections.lines, w)
+        w, converged, solved = _refine(projections, w, lines, _FINE, solved.inverse)
         if not _is_blurred(projections, w) or not 0.0 < w < math.pi:
             break
-    return _finished(projections, solved, w, converged)
+    return _finished(projections, lines, solved, w, converged)
 
 
 def _is_blurred(projections: Projections, w: float) -> bool:
@@ -300,7 +302,9 @@ def _is_blurred(projections: Projections, w: float) -> bool:
     return blur > _BLUR or blur * projections.length > _BLUR_OF_MOMENTS * projections.samples
 
 
-def _finished(projections: Projections, solved: Solution, w: float, converged: bool) -> Fit:
+def _finished(
+    projections: Projections, lines: Lines, solved: Solution, w: float, converged: bool
+) -> Fit:
     """Take stock of a fit; the amplitudes follow the last, tiny step of the frequency."""
     step = solved.step if converged else 0.0
     grain = np.finfo(np.float64).eps * projections.power
@@ -308,7 +312,7 @@ def _finished(projections: Projections, solved: Solution, w: float, converged: b
     amplitudes = solved.amplitudes + step * solved.tilt
     return Fit(
         samples=projections.samples,
-        lines=projections.lines,
+        lines=lines,
         w=w,
         cosines=amplitudes[0],
         sines=amplitudes[1],

@@ -14,7 +14,7 @@ import numpy as np
 
 from trimmer.measurement.fit import Fit, slow_line
 from trimmer.measurement.kernels import Array
-from trimmer.measurement.model import Lines, cross_products
+from trimmer.measurement.model import Complex, Lines, cross_products
 from trimmer.measurement.projection import Record, project
 from trimmer.measurement.reading import Flag
 from trimmer.measurement.search import nearest_lines
@@ -106,17 +106,27 @@ def certain_lines(record: Record, fit: Fit, lines: Sequence[Foreign]) -> list[Fo
 
 def _scores(record: Record, fit: Fit, w: Array) -> Array:
     """Chi-square of each line in the residual, shape of `w`."""
-    data, _ = project(record, Lines(1, w), fit.w).totals(fit.w)
+    data = _sums(record, fit, w)
     cross = cross_products(fit.samples, w, fit.lines.frequencies(fit.w))
     cross[1, :, 0] = 0.0
     itself = cross_products(fit.samples, w, w[:, None])[:, :, 0]
-    left = np.stack((data.real[2:], -data.imag[2:]))
+    left = np.stack((data.real, -data.imag))
     left -= (cross @ np.stack((fit.cosines, fit.sines))[:, :, None])[:, :, 0]
     room = fit.room(cross, itself)
     usable = room > 1e-7 * fit.samples
     scores = np.where(usable, left**2 / np.where(usable, room, 1.0), 0.0).sum(axis=0)
     scaled: Array = scores / fit.variance
     return scaled
+
+
+def _sums(record: Record, fit: Fit, w: Array) -> Complex:
+    """Give ``sum x exp(-j w t)``, shape of `w`, from the fit's own projections where they hold it."""
+    held = fit.projections
+    if np.array_equal(held.lines.fixed[fit.lines.fixed.size :], w):
+        turns = np.exp(np.multiply.outer(-1j * w, held.centres))
+        sums: Complex = (turns * held.sums[-w.size :]).sum(axis=1)
+        return sums
+    return project(record, Lines(1, w), fit.w).totals(fit.w)[0][2:]
 
 
 def hum_report(fit: Fit, lines: Sequence[Foreign]) -> tuple[dict[str, float], list[Flag]]:

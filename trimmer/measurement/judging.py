@@ -37,11 +37,12 @@ def fit_flags(
     """Flags of the fit itself."""
     flags = []
     hz = found.w / (2.0 * math.pi * interval_s)
-    if kept_orders(orders, found.w) < orders:
+    kept = min(kept_orders(orders, found.w), found.lines.orders)
+    if kept < orders:
         flags.append(
             Flag(
                 "orders-cut",
-                f"Only {kept_orders(orders, found.w)} of {orders} orders lie below 0.45 of the sample rate.",
+                f"Only {kept} of {orders} orders lie below 0.45 of the sample rate.",
                 "Make the time base faster to see more orders.",
             )
         )

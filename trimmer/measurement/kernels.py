@@ -50,6 +50,17 @@ def dirichlet(samples: int, w: Array) -> tuple[Array, Array, Array]:
     )
 
 
+def dirichlet_kernel(samples: int, w: Array) -> Array:
+    """Give the Dirichlet kernel alone, any shape of `w`."""
+    half = 0.5 * w
+    near = np.abs(w) * samples < _TAYLOR_BELOW
+    if not near.any():
+        kernel: Array = np.sin(samples * half) / np.sin(half)
+        return kernel
+    kernel = np.sin(samples * half) / np.sin(np.where(near, 1.0, half))
+    return np.where(near, samples - 0.5 * _second(float(samples)) * w * w, kernel)
+
+
 def multiples(samples: int, w: float, most: int) -> tuple[Array, Array, Array]:
     """Give the kernels at ``0, w, 2 w, .., most w``, each of shape (most + 1,); ``w`` not near 0."""
     kernel, slope, curve = (np.empty(most + 1) for _ in range(3))

@@ -12,8 +12,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from trimmer.measurement.fit import Fit
-from trimmer.measurement.kernels import Array, dirichlet
-from trimmer.measurement.model import Complex
+from trimmer.measurement.kernels import Array
+from trimmer.measurement.model import Complex, block_kernels
 from trimmer.measurement.projection import twists
 
 _GROUPS = 16
@@ -32,25 +32,22 @@ def block_residuals(fit: Fit, orders: int) -> Complex:
     Returns
     -------
     Complex
-        Shape (M, orders), ``sum (x - model) exp(-j w_i t)`` over each whole block, t from the
+        Shape (orders, M), ``sum (x - model) exp(-j w_i t)`` over each whole block, t from the
         middle of the record.
     """
-    data = fit.projections
-    columns = slice(1, orders + 1)
-    w_i = data.lines.frequencies(fit.w)
-    turn = twists(data.centres, data.lines, fit.w)
+    data, lines = fit.projections, fit.lines
+    rows = slice(1, orders + 1)
+    turn = twists(data.centres, lines, fit.w)
     shift = fit.w - data.w
-    sums = data.sums[:, columns]
+    sums = data.sums[rows]
     if shift:
-        sums = sums - 1j * shift * data.lines.multiples()[columns] * data.moments[:, columns]
-    near, _, _ = dirichlet(data.length, w_i[:, None] - w_i[None, columns])
-    far, _, _ = dirichlet(data.length, w_i[:, None] + w_i[None, columns])
+        sums = sums - ((1j * shift) * np.arange(1.0, orders + 1.0))[:, None] * data.moments[rows]
+    near, far = block_kernels(data.length, lines, fit.w, orders)
     half = 0.5 * fit.phasors
-    half[0] = fit.cosines[0] * 0.5
-    waves = np.conj(turn) * half  # X_l exp(j w_l t_m) / 2
-    model = waves @ near + np.conj(waves) @ far
-    residual: Complex = (sums - model) * turn[:, columns]
-    return residual[:-1] if data.samples % data.length else residual
+    waves = np.conj(turn) * half[:, None]  # X_l exp(j w_l t_m) / 2
+    model = near @ waves + far @ np.conj(waves)
+    residual: Complex = (sums - model) * turn[rows]
+    return residual[:, :-1] if data.samples % data.length else residual
 
 
 def noise_colour(fit: Fit, residual: Complex) -> Array:
@@ -61,21 +58,21 @@ def noise_colour(fit: Fit, residual: Complex) -> Array:
     fit
         The fit.
     residual
-        Shape (M, K), from `block_residuals` for orders 1..K.
+        Shape (K, M), from `block_residuals` for orders 1..K.
 
     Returns
     -------
     Array
         Shape (K,), at least 1; 1 wherever the excess could be chance.
     """
-    orders = residual.shape[1]
-    groups = min(_GROUPS, residual.shape[0] // 2)
+    orders, blocks = residual.shape
+    groups = min(_GROUPS, blocks // 2)
     if groups < 6:
         return np.ones(orders)
-    rows = residual.shape[0] // groups
-    sums = residual[: groups * rows].reshape(groups, rows, orders).sum(axis=1)
+    rows = blocks // groups
+    sums = residual[:, : groups * rows].reshape(orders, groups, rows).sum(axis=2)
     freedom = 2.0 * groups - 3.0  # amplitude and phase are fitted, and one share of the frequency
-    power = (sums.real**2 + sums.imag**2).sum(axis=0)
+    power = (sums.real**2 + sums.imag**2).sum(axis=1)
     # over one group, cosine and sine hold half the samples' variance each
     ratio = power / (freedom * 0.5 * rows * fit.projections.length * fit.variance)
     spread = 2.0 / (9.0 * freedom)
@@ -99,13 +96,13 @@ class Drift:
 def frequency_drift(fit: Fit, residual: Complex) -> Drift:
     """Look for a frequency that moves inside the frame: a bent phase of the fundamental.
 
-    `residual`, shape (M, K), is from `block_residuals` for orders 1..K.
+    `residual`, shape (K, M), is from `block_residuals` for orders 1..K.
     """
-    t = fit.projections.centres[: residual.shape[0]] * (2.0 / fit.samples)
+    t = fit.projections.centres[: residual.shape[1]] * (2.0 / fit.samples)
     if t.size < 6:
         return Drift(0.0, 0.0, False)
     one = complex(fit.phasors[1])
-    phase = (residual[:, 0] / (0.5 * fit.projections.length * one)).imag
+    phase = (residual[0] / (0.5 * fit.projections.length * one)).imag
     bend = t * t - float((t * t).mean())
     power = float(bend @ bend)
     curve = float(bend @ phase) / power

@@ -105,8 +105,8 @@ def measure(
         found = fit(record, Lines(found.lines.orders, fixed), found.w)
         check_reach(record, found.w, slack=1e-3)
     check_signal(found)
-    left = block_residuals(found, kept_orders(orders, found.w))
-    frame = crest_frame(found, left.shape[1], noise_colour(found, left))
+    left = block_residuals(found, min(kept_orders(orders, found.w), found.lines.orders))
+    frame = crest_frame(found, left.shape[0], noise_colour(found, left))
     extra, flags = hum_report(found, foreign)
     stale = stale_flag(values, previous_samples)
     flags = [

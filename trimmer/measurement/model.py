@@ -15,9 +15,10 @@ from functools import lru_cache
 import numpy as np
 from numpy.typing import NDArray
 
-from trimmer.measurement.kernels import Array, dirichlet, multiples
+from trimmer.measurement.kernels import Array, dirichlet, dirichlet_kernel, multiples
 
 Complex = NDArray[np.complex128]
+Index = NDArray[np.intp]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -34,9 +35,12 @@ class Lines:
         """Number of lines, the offset included."""
         return self.orders + 1 + self.fixed.size
 
-    def kept(self, orders: int) -> NDArray[np.intp]:
-        """Indices of the offset, the first `orders` orders, and the nuisance lines."""
-        return np.concatenate((np.arange(orders + 1), np.arange(self.orders + 1, self.count)))
+    def kept(self, lines: Lines) -> slice | Index:
+        """Places of `lines` among these: fewer orders, or only the first of the nuisance lines."""
+        if lines.orders == self.orders:
+            return slice(0, lines.count)
+        nuisance = np.arange(self.orders + 1, self.orders + 1 + lines.fixed.size)
+        return np.concatenate((np.arange(lines.orders + 1), nuisance))
 
     def multiples(self) -> Array:
         """Shape (count,), derivative of each line's frequency with respect to the fundamental's."""
@@ -48,11 +52,11 @@ class Lines:
 
 
 @lru_cache(maxsize=32)
-def _indices(orders: int) -> tuple[NDArray[np.intp], NDArray[np.intp], Array]:
-    """Give ``|l - i|``, ``l + i`` (the Toeplitz and the Hankel index) and the sign of ``l - i``."""
+def _indices(orders: int) -> tuple[Index, Index, Index]:
+    """Places, for orders 0..K, of ``|l - i|`` and ``l + i``, and of ``l - i`` counted from ``-K``."""
     k = np.arange(orders + 1)
     apart = k[:, None] - k[None, :]
-    return np.abs(apart), k[:, None] + k[None, :], np.sign(apart).astype(np.float64)
+    return np.abs(apart), k[:, None] + k[None, :], apart + orders
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -62,62 +66,96 @@ class Normal:
     gram: Array
     """Shape (2, L, L), sums of products of cosines, and of sines. The offset has no sine: its place
     holds a 1 on the diagonal, so that its amplitude comes out as 0."""
-    even_slope: Array
-    """Shape (L, L), sums of ``cos_l * t sin_i``."""
-    odd_slope: Array
-    """Shape (L, L), sums of ``sin_l * t cos_i``."""
-    sine_curve: Array
-    """Shape (L, L), sums of ``t sin_i * t sin_j``."""
-    cosine_curve: Array
-    """Shape (L, L), sums of ``t cos_i * t cos_j``."""
+    slopes: tuple[Array, Array]
+    """Shape (L, L) each, half of ``D'`` at ``w_l - w_i`` and at ``w_l + w_i``."""
+    curves: tuple[Array, Array]
+    """Shape (L, L) each, half of ``D''`` at ``w_l - w_i`` and at ``w_l + w_i``."""
+
+    def with_derivative(self, k_cos: Array, k_sin: Array) -> tuple[Array, float]:
+        """Give the products of ``d = sum t (-k_cos_i sin_i + k_sin_i cos_i)``, a model's derivative.
+
+        From ``cos_l t sin_i = t [sin(w_i + w_l) + sin(w_i - w_l)] / 2`` and its like.
+
+        Returns
+        -------
+        tuple
+            With the cosines and the sines, shape (2, L); with itself.
+        """
+        both = np.array((k_cos, k_sin)).T
+        near, far = (part @ both for part in self.slopes)
+        products = np.empty((2, k_cos.size))
+        np.subtract(far[:, 0], near[:, 0], out=products[0])
+        np.add(far[:, 1], near[:, 1], out=products[1])
+        np.negative(products[1], out=products[1])
+        near, far = (part @ both for part in self.curves)
+        itself = k_cos @ (far[:, 0] - near[:, 0]) - k_sin @ (far[:, 1] + near[:, 1])
+        return products, float(itself)
 
 
 def normal_equations(samples: int, lines: Lines, w: float) -> Normal:
-    """Build the Gram matrices of `lines` at fundamental `w` (radians per sample) in closed form."""
-    minus, plus = _kernels(samples, lines, w)
-    (d_minus, s_minus, c_minus), (d_plus, s_plus, c_plus) = minus, plus
-    gram = np.empty((2, *d_minus.shape))
-    np.add(d_minus, d_plus, out=gram[0])
-    np.subtract(d_minus, d_plus, out=gram[1])
-    gram *= 0.5
-    gram[1, 0, 0] = 1.0
-    return Normal(
-        gram=gram,
-        # cos_l t sin_i = t [sin(w_i + w_l) + sin(w_i - w_l)] / 2; `s_minus` is taken at w_l - w_i
-        even_slope=-0.5 * (s_plus - s_minus),
-        odd_slope=-0.5 * (s_plus + s_minus),
-        sine_curve=0.5 * (c_plus - c_minus),
-        cosine_curve=-0.5 * (c_plus + c_minus),
-    )
-
-
-Kernels = tuple[Array, Array, Array]
-
-
-def _kernels(samples: int, lines: Lines, w: float) -> tuple[Kernels, Kernels]:
-    """Give the kernels at all ``w_l - w_i`` and ``w_l + w_i`` (row l, column i)."""
+    """Build the normal equations of `lines` at fundamental `w` (radians per sample) in closed form."""
     k = lines.orders
-    table = multiples(samples, w, 2 * k)
-    near, far, sign = _indices(k)
-    minus = (table[0][near], sign * table[1][near], table[2][near])
-    plus = (table[0][far], table[1][far], table[2][far])
-    if not lines.fixed.size:
-        return minus, plus
-    w_i = lines.frequencies(w)
-    size = w_i.size
+    kernel, slope, curve = multiples(samples, w, 2 * k)
+    near, far, apart = _indices(k)
+    half = 0.5 * kernel
+    signed = np.empty(2 * k + 1)
+    np.multiply(slope[: k + 1], 0.5, out=signed[k:])
+    np.negative(signed[k + 1 :][::-1], out=signed[:k])
+    curve = 0.5 * curve
+    minus = (half.take(near), signed.take(apart), curve.take(near))
+    plus = (half.take(far), (0.5 * slope).take(far), curve.take(far))
+    if lines.fixed.size:
+        minus, plus = _bordered(samples, lines, w, minus, plus)
+    gram = np.empty((2, *minus[0].shape))
+    np.add(minus[0], plus[0], out=gram[0])
+    np.subtract(minus[0], plus[0], out=gram[1])
+    gram[1, 0, 0] = 1.0
+    return Normal(gram=gram, slopes=(minus[1], plus[1]), curves=(minus[2], plus[2]))
+
+
+Halves = tuple[Array, Array, Array]
+
+
+def _bordered(
+    samples: int, lines: Lines, w: float, minus: Halves, plus: Halves
+) -> tuple[Halves, Halves]:
+    """Add the rows and columns of the nuisance lines to the halves of the kernels."""
+    inner, w_i = lines.orders + 1, lines.frequencies(w)
+    edges = np.stack((w_i[inner:, None] - w_i[None, :], w_i[inner:, None] + w_i[None, :]))
+    rows = dirichlet(samples, edges)
     whole = []
-    for part, shift in ((minus, -1.0), (plus, 1.0)):
-        edge = dirichlet(samples, w_i[k + 1 :, None] + shift * w_i[None, :])
+    for part, shift in ((0, -1.0), (1, 1.0)):
         built = []
         # kernel and curvature are even in w, the slope is odd: that decides the mirrored edge
-        for inner, rows, mirror in zip(part, edge, (1.0, shift, 1.0), strict=True):
-            full = np.empty((size, size))
-            full[: k + 1, : k + 1] = inner
-            full[k + 1 :, :] = rows
-            full[: k + 1, k + 1 :] = mirror * rows[:, : k + 1].T
+        for values, edge, mirror in zip((minus, plus)[part], rows, (1.0, shift, 1.0), strict=True):
+            full = np.empty((w_i.size, w_i.size))
+            full[:inner, :inner] = values
+            np.multiply(edge[part], 0.5, out=full[inner:, :])
+            np.multiply(full[inner:, :inner].T, mirror, out=full[:inner, inner:])
             built.append(full)
         whole.append((built[0], built[1], built[2]))
     return whole[0], whole[1]
+
+
+def block_kernels(length: int, lines: Lines, w: float, orders: int) -> tuple[Array, Array]:
+    """Give the Dirichlet kernel of one block at ``w_i - w_l`` and at ``w_i + w_l``.
+
+    Returns
+    -------
+    tuple
+        Two arrays of shape (orders, L): orders 1..`orders` against all `lines`.
+    """
+    rows = slice(1, orders + 1)
+    near, far, _ = _indices(lines.orders)
+    table, _, _ = multiples(length, w, 2 * lines.orders)
+    minus, plus = table[near[rows]], table[far[rows]]
+    if not lines.fixed.size:
+        return minus, plus
+    own = w * np.arange(1.0, orders + 1.0)[:, None]
+    return (
+        np.concatenate((minus, dirichlet_kernel(length, own - lines.fixed)), axis=1),
+        np.concatenate((plus, dirichlet_kernel(length, own + lines.fixed)), axis=1),
+    )
 
 
 def cross_products(samples: int, w: Array, w_i: Array) -> Array:
@@ -135,9 +173,11 @@ def cross_products(samples: int, w: Array, w_i: Array) -> Array:
     Array
         Shape (2, A, B).
     """
-    minus, _, _ = dirichlet(samples, w[:, None] - w_i)
-    plus, _, _ = dirichlet(samples, w[:, None] + w_i)
-    products = np.empty((2, *minus.shape))
+    apart = np.empty((2, w.size, w_i.shape[-1]))
+    np.subtract(w[:, None], w_i, out=apart[0])
+    np.add(w[:, None], w_i, out=apart[1])
+    minus, plus = dirichlet_kernel(samples, apart)
+    products = np.empty_like(apart)
     np.add(minus, plus, out=products[0])
     np.subtract(minus, plus, out=products[1])
     products *= 0.5

@@ -142,7 +142,7 @@ def beat(projections: Projections, line: int, w: float, reach: float) -> float:
     float
         Radians per sample; `w` itself where nothing stands out.
     """
-    turning = projections.sums[:, line] * np.exp(-1j * w * projections.centres)
+    turning = projections.sums[line] * np.exp(-1j * w * projections.centres)
     padded = _padded(turning.size, 4.0)
     spectrum = np.fft.fft(turning * _hann(turning.size), padded)
     power = np.roll(spectrum.real**2 + spectrum.imag**2, padded // 2)
