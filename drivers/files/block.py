@@ -79,7 +79,8 @@ def _longest_run(rows: Rows, lines: list[str]) -> NDArray[np.intp]:
     if starts.size == 0:
         raise UnusableCapture("no rows of numbers were found in the file", NO_ROWS)
     order = np.argsort(starts - ends, kind="stable")
-    if order.size > 1 and (ends - starts)[order[1]] >= RUN_ROWS:
+    lengths = ends - starts
+    if order.size > 1 and lengths.sum() - lengths.max() >= RUN_ROWS:
         between = int(filled[ends[min(order[0], order[1])]])
         raise UnusableCapture(
             f"the numbers break off at line {between + 1}, which holds "

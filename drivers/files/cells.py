@@ -135,8 +135,8 @@ def last_place(cell: str, convention: Convention) -> tuple[int, int] | None:
     Returns
     -------
     tuple of int or None
-        Decimal exponent of the last digit printed (-6 for ``0.000001``), and the count of
-        significant digits. None for text.
+        Decimal exponent of the last digit printed (-6 for ``0.000001`` and for ``1 us``), and the
+        count of significant digits. None for text.
     """
     if clock := _CLOCK.match(cell.strip()):
         return -len(clock[4] or ""), 5 + len(clock[4] or "")
@@ -145,7 +145,11 @@ def last_place(cell: str, convention: Convention) -> tuple[int, int] | None:
         return None
     fraction = digits.partition(".")[2]
     significant = len(digits.replace(".", "").lstrip("0")) or 1
-    return _exponent(found["exponent"]) - len(fraction), significant
+    place = _exponent(found["exponent"]) - len(fraction)
+    scaled = _with_suffix(1.0, found["suffix"])
+    if scaled is not None and scaled.value > 0.0:
+        place += round(math.log10(scaled.value))
+    return place, significant
 
 
 def _exponent(text: str | None) -> int:

@@ -32,7 +32,7 @@ SAMPLE_ROWS = 120
 FRONT = 8192
 """Characters of a line looked at to find the layout."""
 NO_ROWS = "Save the capture as rows of numbers, one row for each instant."
-_FRACTION = re.compile(r"^(\d+)([eE][+-]?\d+)?$")
+_FRACTION = re.compile(r"^(\d+)([eE][+-]?\d+)?(?:\s*[^\d\s.,+-][^\d.,]*)?$")
 AMBIGUOUS = "Save with a point as decimal mark, or with semicolons or tabs between the columns."
 
 
@@ -208,7 +208,11 @@ def _without_joined_commas(best: _Tally, tallies: list[_Tally], head: list[str])
 def _could_be_pairs(rows: list[list[str]]) -> bool:
     """Say whether rows of whole numbers could be half as many numbers with decimal commas."""
     for row in rows:
-        if len(row) % 2 or not all(map(_whole, row)) or not all(map(str.isdigit, row[1::2])):
+        if (
+            len(row) % 2
+            or not all(map(_whole, row[0::2]))
+            or not all(map(_FRACTION.match, row[1::2]))
+        ):
             return False
     counts = all(int(below[0]) == int(row[0]) + 1 for row, below in pairwise(rows))
     return not counts
