@@ -58,7 +58,7 @@ class Errors:
 
     def made(self, share: float, travel_turns: float, rng: Generator) -> float:
         """Give the share of the travel that is really turned when `share` was asked for."""
-        finer = 3.5 if travel_turns > 2.0 else 1.0
+        finer = max(1.0, travel_turns / SINGLE_TURN) ** 0.357
         jitter = self.degrees / 360.0 / SINGLE_TURN / finer
         made = share * (1.0 + self.scatter * rng.standard_normal()) + jitter * rng.standard_normal()
         return float(np.sign(share) * max(0.0, made * np.sign(share)))

@@ -60,7 +60,7 @@ def choose(
     thd = outlook.thd_after(trim, way)
     rises = thd > 1.02 * record.here.thd
     reason = words.RISES if rises else words.NEARER
-    if thd < LAST_BIT * est.floor_thd:
+    if thd < LAST_BIT * est.floor_thd and abs(way) < SHORTEST_PROBE:
         reason = words.LAST_BIT
     return Choice(trim, est.habit.to_ask(record.moves, trim, way), way, thd, rises, reason)
 
@@ -108,12 +108,21 @@ def probe(know: Knowledge, unknown: list[int], skipped: int | None) -> Choice:
     if dead[trim]:
         way = -know.dead_senses(trim)[-1] * abs(way)
         reason = words.OTHER_SENSE
-    elif dead[1 - trim]:
+    elif dead[1 - trim] and not know.record.moves[-1].told:
         reason = words.OTHER_TRIM
     else:
         reason = words.FIRST if trim == worse and not other_known else words.FIRST_OTHER
     share = est.habit.to_ask(know.record.moves, trim, way)
     return Choice(trim, share, way, None, False, reason.format(trim=words.TRIMS[trim]))
+
+
+def other_sense(know: Knowledge, trim: int) -> Choice:
+    """Choose the turn that tells an end stop from an open wiper: the other sense."""
+    est = know.estimate
+    assert est is not None
+    way = -know.dead_senses(trim)[-1] * SHORTEST_PROBE
+    share = est.habit.to_ask(know.record.moves, trim, way)
+    return Choice(trim, share, way, None, False, words.OTHER_SENSE)
 
 
 def first_size(parts: Array) -> float:

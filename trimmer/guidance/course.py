@@ -10,7 +10,7 @@ import numpy as np
 from trimmer.guidance import words
 from trimmer.guidance.advice import Advice, Confirm, Done, Verdict
 from trimmer.guidance.aim import Aim, Box
-from trimmer.guidance.choice import Choice, choose, go_back, probe
+from trimmer.guidance.choice import Choice, choose, go_back, other_sense, probe
 from trimmer.guidance.crests import are_swapped
 from trimmer.guidance.estimate import Estimate
 from trimmer.guidance.following import Outcome
@@ -90,8 +90,11 @@ class Course:
         alive = [t for t in (0, 1) if not know.given_up(t)]
         if not alive:
             return self._finish("no-response", words.NO_RESPONSE)
-        if know.drifts:
+        if know.drifts or know.suspicion is not None:
             return self._confirm()
+        in_doubt = know.in_doubt()
+        if in_doubt is not None:
+            return self._ask(other_sense(know, in_doubt), est)
         unknown = [t for t in alive if not est.known[t]]
         if unknown:
             return self._ask(probe(know, unknown, self.skipped), est)
@@ -108,8 +111,12 @@ class Course:
     def _confirm(self) -> Confirm:
         self.pending = None
         sigma = max(CONFIRM_SHARE * self.knowledge.record.here.thd, CONFIRM_THD)
-        drifting = self.knowledge.drifts > 0
-        return Confirm(self.turns, sigma, words.DRIFTING if drifting else words.CONFIRM)
+        reason = words.CONFIRM
+        if self.knowledge.drifts:
+            reason = words.DRIFTING
+        elif self.knowledge.suspicion is not None:
+            reason = words.SURPRISING
+        return Confirm(self.turns, sigma, reason)
 
     def _ask(self, choice: Choice, est: Estimate) -> Advice:
         self.pending = choice
@@ -139,7 +146,8 @@ class Course:
         last = know.record.moves[-1]
         trim = words.TRIMS[last.trim]
         if last.dead and know.estimate is not None and know.estimate.known[last.trim]:
-            return words.END_OF_TRAVEL.format(trim=trim)
+            silent = know.given_up(last.trim)
+            return (words.SILENT if silent else words.END_OF_TRAVEL).format(trim=trim)
         if last.stopped:
             return words.STOP_MET.format(trim=trim)
         return words.SWAPPED if swapped else ""
@@ -167,14 +175,14 @@ class Course:
     # ---- the end -----------------------------------------------------------------------------
 
     def _end(self, est: Estimate) -> Done:
+        if not all(est.known) or any(self.knowledge.given_up(t) for t in (0, 1)):
+            return self._finish("no-response", words.ONE_SILENT)
         beyond = Aim(est.aimed).joint(est.best, Box(est.here - 1.0, est.here + 1.0))
         outside = np.abs(est.box.clip(beyond) - beyond)
         stopped = any(m.stopped for m in self.knowledge.record.moves)
         if stopped and float(np.max(outside)) > 0.01:
             trim = words.TRIMS[int(np.argmax(outside))]
             return self._finish("end-stop", words.AT_STOP.format(trim=trim))
-        if not all(est.known) or any(self.knowledge.given_up(t) for t in (0, 1)):
-            return self._finish("no-response", words.ONE_SILENT)
         return self._finish("at-floor", words.AT_FLOOR)
 
     def _finish(self, verdict: Verdict, reason: str) -> Done:

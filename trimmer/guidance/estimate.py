@@ -14,6 +14,7 @@ from trimmer.guidance.general import general_belief
 from trimmer.guidance.habit import Habit, habit
 from trimmer.guidance.hand import Hand
 from trimmer.guidance.memory import KindPrior
+from trimmer.guidance.moves import Move
 from trimmer.guidance.path import Found, Walk, find_walk
 from trimmer.guidance.record import Record
 from trimmer.guidance.warming import WarmDrift
@@ -219,7 +220,7 @@ def _box(record: Record, places: Array) -> Box:
     low = places.max(axis=0) - 1.0
     high = places.min(axis=0) + 1.0
     for i, move in enumerate(record.moves):
-        if not move.stopped:
+        if not move.stopped or not (move.told or _borne_out(record.moves, i)):
             continue
         at = places[i + 1, move.trim]
         if move.sense > 0:
@@ -229,6 +230,21 @@ def _box(record: Record, places: Array) -> Box:
             low[move.trim] = max(low[move.trim], at)
             high[move.trim] = min(high[move.trim], at + 1.0)
     return Box(np.minimum(low, places[-1]), np.maximum(high, places[-1]))
+
+
+def _borne_out(moves: list[Move], index: int) -> bool:
+    """Tell whether an end stop that nobody felt is to be believed.
+
+    It is until the trim has answered the other way; then a second turn without effect must bear it out,
+    since the first may have been a slip of the hand.
+    """
+    move = moves[index]
+    same = [m for m in moves[index + 1 :] if m.trim == move.trim]
+    if all(m.dead for m in same):
+        return True
+    return any(
+        m.dead and m.sense == move.sense for m in [*same, *moves[:index]] if m.trim == move.trim
+    )
 
 
 def _best(belief: FieldBelief, here: Array, box: Box) -> Array:

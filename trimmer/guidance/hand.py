@@ -7,8 +7,9 @@ from typing import Final
 
 ONE_TURN: Final = 0.75
 """Mechanical travel of a single-turn trim, turns of the screw (common practice, no source)."""
-FINER: Final = 3.5
-"""How much finer a multi-turn trim can be set than a single-turn one (common practice, no source)."""
+FINER: Final = 0.357
+"""Power of the travel by which a multi-turn trim can be set finer than a single-turn one: 3.5 times
+at 25 turns, not 33 (common practice, no source)."""
 UNEVEN: Final = 0.05
 """Relative scatter of the wiper's path over a turn, for the unevenness of the track."""
 
@@ -37,7 +38,7 @@ def hand_for(travel_turns: float, followed: bool) -> Hand:
     Turning by what was said has some 15 % of scatter and 1.5 degrees besides, turning until told to
     stop some 3 % and 0.7 degrees, on a single-turn trim.
     """
-    finer = FINER if travel_turns > 2.0 * ONE_TURN else 1.0
+    finer = max(1.0, travel_turns / ONE_TURN) ** FINER
     degree = 1.0 / (360.0 * ONE_TURN) / finer
     scatter, jitter = (0.03, 0.7) if followed else (0.15, 1.5)
     return Hand(scatter, jitter * degree, 1.5 * degree, 1.0 * degree)

@@ -10,7 +10,7 @@ from trimmer.guidance.following import Outcome
 from trimmer.guidance.hand import Hand
 from trimmer.guidance.memory import KindPrior
 from trimmer.guidance.moves import Move
-from trimmer.guidance.rails import Verdict, drifted, is_dead, look_into
+from trimmer.guidance.rails import Finding, Verdict, drifted, is_dead, look_into
 from trimmer.guidance.record import Record
 from trimmer.guidance.seen import Seen
 
@@ -29,6 +29,10 @@ class Knowledge:
     """A guard rail's word on the last reading."""
     drifts: int = 0
     """How often in a row the reading moved while nobody turned."""
+    suspicion: Finding | None = None
+    """What the last reading looks like, until another one at the same setting bears it out."""
+    before: Estimate | None = None
+    """The estimate before the last turn."""
 
     def begin(self, one: Seen) -> None:
         """Take the first reading."""
@@ -38,14 +42,16 @@ class Knowledge:
     def again(self, one: Seen) -> None:
         """Take a further reading of the present setting."""
         self.notice = ""
+        suspicion, self.suspicion = self.suspicion, None
         if drifted(self.record.here, one):
             self.drifts += 1
             self.notice = words.DRIFTING
             self.record.replace_last(one)
-        else:
-            self.drifts = 0
-            self.record.again(one)
-        self._think(self.estimate)
+            self._think(self.estimate)
+            return
+        self.drifts = 0
+        self.record.again(one)
+        self._think(self.estimate if suspicion is None else self._act_on(suspicion))
 
     def turned(self, trim: int, asked: float, one: Seen, stopped: bool, seen: Outcome) -> None:
         """Take a reading after a turn.
@@ -63,9 +69,9 @@ class Knowledge:
         """
         assert self.estimate is not None
         self.notice = ""
-        self.drifts = 0
+        self.drifts, self.suspicion = 0, None
         before = self.record.here
-        move = Move(trim, asked, stopped=stopped, followed=seen.way)
+        move = Move(trim, asked, stopped=stopped, told=stopped, followed=seen.way)
         if seen.other != 0.0:
             move = self._astray(move, seen)
         self.record.add(move, one)
@@ -74,9 +80,9 @@ class Knowledge:
             self.record.change_last(
                 replace(move, dead=True, stopped=stopped or known, followed=None)
             )
-            self._think(self.estimate)
-            return
-        self._think(self._explained() if seen.other == 0.0 else self.estimate)
+        elif seen.other == 0.0:
+            self._look_into()
+        self._think(self.estimate)
 
     def _astray(self, move: Move, seen: Outcome) -> Move:
         """Take in that the other trim was turned, instead of or besides the one asked for."""
@@ -87,21 +93,25 @@ class Knowledge:
         self.record.add_unread(replace(other, extra=True))
         return move
 
-    def _explained(self) -> Estimate | None:
-        """See whether a mistake, or another kind of unit, explains the last reading.
+    def _look_into(self) -> None:
+        """See whether a mistake, or another kind of unit, explains the last reading better.
 
-        Returns the estimate to search on from, None where it has to begin afresh.
+        It is not acted upon before a second reading has shown that the unit does not just drift.
         """
-        before = self.estimate
-        assert before is not None
+        assert self.estimate is not None
+        self.before = self.estimate
+        found = look_into(self.estimate, self.record.moves, self.hand, self.record.here)
+        strange = found.verdict is Verdict.STRANGE and self.kind is None
+        self.suspicion = None if found.verdict is Verdict.AS_ASKED or strange else found
+
+    def _act_on(self, found: Finding) -> Estimate | None:
+        """Take a mistake for one. Gives the estimate to search on from, None to begin afresh."""
         moves = self.record.moves
-        last = moves[-1]
-        found = look_into(before, moves, self.hand, self.record.here)
         trim = words.TRIMS[found.move.trim]
-        first = all(m.trim != last.trim or m.dead for m in moves[:-1])
+        first = all(m.trim != found.move.trim or m.dead for m in moves[:-1])
         match found.verdict:
             case Verdict.WRONG_WAY if self.kind is not None and first:
-                self.kind = self.kind.turned(last.trim == 0, last.trim == 1)
+                self.kind = self.kind.turned(found.move.trim == 0, found.move.trim == 1)
                 self.notice = words.KIND_TURNED.format(trim=trim)
                 return None
             case Verdict.WRONG_WAY:
@@ -110,13 +120,11 @@ class Knowledge:
             case Verdict.WRONG_TRIM:
                 self.notice = words.WRONG_TRIM.format(trim=trim)
                 self.record.change_last(found.move)
-            case Verdict.STRANGE if self.kind is not None:
+            case _:
                 self.kind = None
                 self.notice = words.KIND_DIFFERS
                 return None
-            case _:
-                pass
-        return before
+        return self.before
 
     def _think(self, before: Estimate | None) -> None:
         self.estimate = estimate(self.record, self.hand, self.kind, before, self.offsets)
@@ -131,6 +139,16 @@ class Knowledge:
                 break
             senses.add(move.sense)
         return len(senses) == 2
+
+    def in_doubt(self) -> int | None:
+        """Give a known trim that has just not answered, its other sense not tried since."""
+        assert self.estimate is not None
+        if not self.record.moves or not self.record.moves[-1].dead:
+            return None
+        last = self.record.moves[-1]
+        told = last.stopped and last.told
+        doubtful = self.estimate.known[last.trim] and not told and not self.given_up(last.trim)
+        return last.trim if doubtful else None
 
     def dead_senses(self, trim: int) -> list[int]:
         """Give the senses in which a trim did not answer, in order."""

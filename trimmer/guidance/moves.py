@@ -16,6 +16,8 @@ class Move:
     """Signed share of the travel, plus is clockwise."""
     stopped: bool = False
     """Whether the trim would not go further."""
+    told: bool = False
+    """Whether the person said so."""
     followed: float | None = None
     """Signed share of the travel really made, as seen while it was followed."""
     extra: bool = False

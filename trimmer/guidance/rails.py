@@ -22,7 +22,9 @@ CHANCE: Final = 3.0
 """A change within so many standard deviations of none is none."""
 DUE: Final = 8.0
 """A turn must be due to change the reading by so many times that, for no change to mean anything."""
-DRIFT: Final = 6.0
+LEAST_MADE: Final = 0.05
+"""Of a turn that reached the wiper at least this share is made."""
+DRIFT: Final = 4.0
 """Standard deviations of change of a reading that nobody turned .."""
 DRIFT_SHARE: Final = 0.05
 """.. and its size over THD .."""
@@ -49,17 +51,26 @@ def _variance(before: Seen, after: Seen) -> Array:
 
 
 def is_dead(before: Seen, after: Seen, move: Move, est: Estimate) -> bool:
-    """Tell whether a turn that was due to change the reading changed nothing."""
+    """Tell whether a turn that was due to change the reading changed nothing.
+
+    Where the trim's column is known the change is looked for along it, where a short turn shows that
+    is lost in the noise of all parts together.
+    """
     if excess(before, after) >= CHANCE:
         return False
     variance = _variance(before, after)
     size = variance.size
+    known = est.known[move.trim]
     column = column_scale(size // 2 + 1)
-    if est.known[move.trim]:
+    if known:
         column = est.belief.columns(est.here)[move.trim, :size]
+    weighted = column / variance
+    strength = float(weighted @ column)
     way = max(0.0, abs(move.asked) - est.habit.play[move.trim])
-    due = float(np.sum((column * way) ** 2 / variance)) / float(np.sqrt(2.0 * size))
-    return due > DUE * CHANCE
+    if way**2 * strength < DUE * CHANCE * float(np.sqrt(2.0 * size)):
+        return False
+    made = float(weighted @ (after.parts[:size] - before.parts[:size])) / strength
+    return not known or abs(made) < max(CHANCE / float(np.sqrt(strength)), LEAST_MADE * way)
 
 
 def drifted(before: Seen, after: Seen) -> bool:
