@@ -123,6 +123,11 @@ def _tuning(parser: argparse.ArgumentParser) -> None:
         default=0.75,
         help="the trims' whole travel (0.75)",
     )
+    parser.add_argument(
+        "--resume",
+        metavar="SHEET",
+        help="go on with a sheet that broke off (its id, or part of it)",
+    )
     parser.add_argument("--follow", action="store_true", help="watch the hand, without being told")
 
 

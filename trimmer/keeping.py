@@ -10,12 +10,12 @@ from datetime import UTC, datetime
 from drivers import SourceInfo
 from trimmer import __version__
 from trimmer.book import Book
-from trimmer.book.entries import SheetEnd, SheetStart, TurnEntry
+from trimmer.book.entries import Resumed, SheetEnd, SheetStart, TurnEntry
 from trimmer.errors import BookError
 from trimmer.guidance import Guide, KindPrior, Learned
 from trimmer.guidance.advice import Advice, Done
 from trimmer.intake import Taken
-from trimmer.reports import Opened, SheetNotes
+from trimmer.reports import Opened, SheetNotes, Told
 
 
 def versions() -> dict[str, str]:
@@ -59,8 +59,21 @@ class Keeper:
         self._ended = False
 
     def open(self, info: SourceInfo) -> Opened:
-        """Begin the sheet."""
-        self.sheet = self.book.begin_sheet(
+        """Begin the sheet, or go on with the one that was taken up."""
+        if not self.sheet:
+            self.sheet = self._begun(info)
+        return Opened(
+            source=info.name,
+            identity=info.identity,
+            dialect=info.dialect,
+            unit=self.unit,
+            kind=self.kind,
+            sheet=self.sheet,
+            book=self.book.location,
+        )
+
+    def _begun(self, info: SourceInfo) -> str:
+        return self.book.begin_sheet(
             SheetStart(
                 taken_at=datetime.now(UTC),
                 unit=self.unit,
@@ -75,15 +88,15 @@ class Keeper:
                 versions=versions(),
             )
         )
-        return Opened(
-            source=info.name,
-            identity=info.identity,
-            dialect=info.dialect,
-            unit=self.unit,
-            kind=self.kind,
-            sheet=self.sheet,
-            book=self.book.location,
-        )
+
+    def take_up(self, resumed: Resumed) -> None:
+        """Go on with a sheet that broke off, under its own unit and kind."""
+        self.sheet = resumed.sheet.row.id
+        self.unit, self.kind = resumed.sheet.row.unit, resumed.sheet.row.kind
+
+    def notices(self) -> list[Told]:
+        """Give what the book wants said since it was last asked."""
+        return [Told(notice.message, notice.remedy) for notice in self.book.notices()]
 
     def advised(self, advice: Advice, guide: Guide) -> None:
         """Keep what the guide knows, so that a session that breaks off can be taken up again."""

@@ -101,6 +101,16 @@ class Awaiting:
 
 
 @dataclass(frozen=True, slots=True)
+class Told:
+    """Something worth knowing that changes nothing of what to do: the book has something to say."""
+
+    message: str
+    """What is the matter."""
+    remedy: str
+    """What to do, or that nothing needs to be done."""
+
+
+@dataclass(frozen=True, slots=True)
 class Finished:
     """The session's end; the sheet is in the book."""
 
@@ -126,7 +136,7 @@ class Failed:
     """What to do."""
 
 
-Report = Opened | Measured | Advised | Followed | Awaiting | Finished | Failed
+Report = Opened | Measured | Advised | Followed | Awaiting | Told | Finished | Failed
 
 
 @dataclass(frozen=True, slots=True)

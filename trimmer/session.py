@@ -6,6 +6,7 @@ no screen. Words from the person come through a thread-safe inbox.
 
 from __future__ import annotations
 
+import math
 import queue
 import time
 from collections import deque
@@ -58,6 +59,15 @@ class Manner:
     """How long a lost source or signal is waited for."""
 
 
+def same_setting(before: Reading, now: Reading) -> bool:
+    """Say whether two readings may be of one setting: chi-square of their difference, 4 sigma wide."""
+    size = min(before.parts.size, now.parts.size)
+    variances = (reading.random_covariance.diagonal()[:size] for reading in (before, now))
+    variance = np.sum(np.array(list(variances)), axis=0)
+    chance = float(np.sum((now.parts[:size] - before.parts[:size]) ** 2 / variance))
+    return chance < size + 4.0 * math.sqrt(2.0 * size)
+
+
 class _GiveUp(Exception):
     """The session cannot go on."""
 
@@ -83,10 +93,17 @@ class Session:
         The sheet in the bench book.
     manner
         How the session is held.
+    before
+        The last reading of a session that is taken up; None for a new one.
     """
 
     def __init__(
-        self, source: WaveformSource, guide: Guide, keeper: Keeper, manner: Manner | None = None
+        self,
+        source: WaveformSource,
+        guide: Guide,
+        keeper: Keeper,
+        manner: Manner | None = None,
+        before: Reading | None = None,
     ) -> None:
         self.manner = manner or Manner()
         self.guide = guide
@@ -97,6 +114,7 @@ class Session:
         self._kept: deque[Word] = deque()
         self._stop: Callable[[], bool] = lambda: False
         self._last: Taken | None = None
+        self._before = before
 
     def say(self, word: Word) -> None:
         """Take a word from the person. Safe from any thread."""
@@ -112,8 +130,10 @@ class Session:
         try:
             yield self.keeper.open(self.source.info)
             done = yield from self._guided()
-            yield self._finish(done)
+            finished = self._finish(done)
             ended = True
+            yield from self.keeper.notices()
+            yield finished
         except _Left:
             yield self._finish(self._quit())
             ended = True
@@ -129,7 +149,7 @@ class Session:
 
     def _guided(self) -> Reports[Done]:
         taken = yield from self._measured(self._first())
-        step: Step = self.guide.observe(taken.reading)
+        step = self._first_step(taken.reading)
         while True:
             settled = yield from self._confirmed(step)
             if isinstance(settled, Done):
@@ -137,6 +157,13 @@ class Session:
             self.keeper.advised(settled, self.guide)
             yield Advised(settled, follows=self._follows, reach=self._reach())
             step = yield from self._answered()
+
+    def _first_step(self, reading: Reading) -> Step:
+        """Begin; or go on with a session taken up: with the same advice where nothing was turned."""
+        before, answer = self._before, self.guide.answer
+        if before is not None and answer is not None and same_setting(before, reading):
+            return answer
+        return self.guide.observe(reading)
 
     @property
     def _follows(self) -> bool:
@@ -231,6 +258,7 @@ class Session:
         self._last = taken
         turn = self.guide.turns_made + (1 if moved else 0)
         self.keeper.measured(turn, taken)
+        yield from self.keeper.notices()
         yield Measured(
             turn=turn,
             taken_at=taken.waveform.taken_at,

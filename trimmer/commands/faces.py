@@ -17,6 +17,7 @@ from trimmer.reports import (
     Measured,
     Opened,
     Report,
+    Told,
 )
 
 CAUTIONS = (
@@ -67,7 +68,7 @@ class JsonFace:
                 _message(
                     self._messages, f"{report.identity}: sheet {report.sheet} in {report.book}"
                 )
-            case Awaiting() | Failed():
+            case Awaiting() | Told() | Failed():
                 _trouble(self._messages, report)
             case _:
                 assert_never(report)
@@ -106,7 +107,7 @@ class PlainFace:
                 self._followed(report)
             case Finished():
                 self._print(*done_lines(report.done, report.thd, report.thd_sigma, report.sheet))
-            case Awaiting() | Failed():
+            case Awaiting() | Told() | Failed():
                 _trouble(self._messages, report)
             case _:
                 assert_never(report)
@@ -129,7 +130,7 @@ def _message(out: TextIO, text: str) -> None:
     print(f"trimmer: {text}", file=out, flush=True)
 
 
-def _trouble(out: TextIO, report: Awaiting | Failed) -> None:
+def _trouble(out: TextIO, report: Awaiting | Told | Failed) -> None:
     _message(out, report.message)
     left = ""
     if isinstance(report, Awaiting) and report.seconds_left is not None:

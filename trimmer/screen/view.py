@@ -19,6 +19,7 @@ from trimmer.reports import (
     Measured,
     Opened,
     Report,
+    Told,
 )
 from trimmer.screen.pictures.course import Floor, Step
 from trimmer.screen.pictures.parts import Split, split
@@ -99,6 +100,8 @@ def take(view: View, report: Report, now: float) -> View:
             )
         case Awaiting():
             return replace(view, awaiting=report)
+        case Told():
+            return replace(view, notes=(*view.notes, f"{report.message} {report.remedy}"))
         case Finished():
             return _finished(view, report)
         case Failed():
