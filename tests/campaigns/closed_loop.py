@@ -53,6 +53,7 @@ def trial(circuit: str, seed: int, options: argparse.Namespace, room: Path) -> T
     bench = bench_of(
         circuit,
         seed,
+        bits=options.bits,
         clean=options.clean or seed % 10 == 9,
         past_the_stop=options.past_the_stop,
     )
@@ -68,6 +69,7 @@ def main() -> int:
     parser.add_argument("seeds", type=int, nargs="?", default=10, help="units of each circuit")
     parser.add_argument("--kind", action="store_true", help="units of a circuit share a memory")
     parser.add_argument("--past-the-stop", action="store_true", help="units that end at a stop")
+    parser.add_argument("--bits", type=int, default=8, help="of the captures (8)")
     parser.add_argument("--clean", action="store_true", help="captures without noise")
     parser.add_argument("--circuit", choices=CIRCUITS, action="append", help="only this one")
     options = parser.parse_args()

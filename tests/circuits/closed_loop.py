@@ -19,7 +19,9 @@ PAST_THE_STOP = {
 """A part so far off that the best setting lies past an end stop: its name, times its value."""
 
 
-def bench_of(circuit: str, seed: int, *, clean: bool = False, past_the_stop: bool = False) -> Bench:
+def bench_of(
+    circuit: str, seed: int, *, bits: int = 8, clean: bool = False, past_the_stop: bool = False
+) -> Bench:
     """Find a unit as it comes: trims anywhere in the middle 60 %, senses and labels as they are.
 
     Parameters
@@ -28,6 +30,8 @@ def bench_of(circuit: str, seed: int, *, clean: bool = False, past_the_stop: boo
         Name of the netlist.
     seed
         Of unit, hand, noise and what the person calls upper.
+    bits
+        Of the captures.
     clean
         True for captures without noise and quantisation.
     past_the_stop
@@ -46,6 +50,7 @@ def bench_of(circuit: str, seed: int, *, clean: bool = False, past_the_stop: boo
         senses=(int(senses[0]), int(senses[1])),
         swapped=bool(rng.integers(2)),
         seed=seed,
+        bits=bits,
         clean=clean,
     )
 

@@ -1,4 +1,4 @@
-"""Saves a circuit's output as a plain oscilloscope would: 8 bits, some noise, any phase and length."""
+"""Saves a circuit's output as a plain oscilloscope would: few bits, some noise, any phase and length."""
 
 # ruff: noqa: E741 - the wipers of the two trims are u and l throughout
 
@@ -14,9 +14,6 @@ from numpy.typing import NDArray
 from tests.circuits.netlist import Unit
 from tests.circuits.runner import simulate
 
-CODES = 256
-"""Codes of 8 bits."""
-
 
 @dataclass(frozen=True, slots=True)
 class Oscilloscope:
@@ -24,6 +21,8 @@ class Oscilloscope:
 
     rng: np.random.Generator
     """Noise, and where in the period the capture begins."""
+    bits: int = 8
+    """Bits of a code."""
     clean: bool = False
     """True for values as the simulator gave them."""
     samples: int = 10_000
@@ -43,15 +42,16 @@ class Oscilloscope:
         volts = trace.volts if self.clean else self._digitised(trace.volts)
         written = path.with_suffix(".part")
         header = "time,volts" if self.clean else "Time (s),CH1 (V)"
-        shape = "%.10e,%.10e" if self.clean else "%.9e,%.6e"
+        shape = "%.10e,%.10e" if self.clean else "%.9e,%.8e"
         table = np.column_stack([trace.times_s, volts])
         np.savetxt(written, table, fmt=shape, header=header, comments="")
         os.replace(written, path)
 
     def _digitised(self, volts: NDArray[np.float64]) -> NDArray[np.float64]:
         """Round to codes of a range in steps of 1 % of a volt, with the trace set to its middle."""
-        code = np.ceil(100.0 * np.ptp(volts) / self.filled) / 100.0 / CODES
+        codes_in_all = 2**self.bits
+        code = np.ceil(100.0 * np.ptp(volts) / self.filled) / 100.0 / codes_in_all
         middle = np.round((np.max(volts) + np.min(volts)) / 2.0, 2)
         noisy = (volts - middle) / code + self.noise_codes * self.rng.standard_normal(volts.size)
-        codes = np.clip(np.round(noisy), -CODES // 2, CODES // 2 - 1)
+        codes = np.clip(np.round(noisy), -codes_in_all // 2, codes_in_all // 2 - 1)
         return np.asarray(middle + code * codes, dtype=np.float64)

@@ -53,6 +53,8 @@ class Bench:
     """True where the person calls the second trim *upper*."""
     seed: int = 0
     """Seed of the hand and of the noise."""
+    bits: int = 8
+    """Bits of the captures; their noise is 0.6 of a code."""
     clean: bool = False
     """True for captures without noise and quantisation."""
 
@@ -120,7 +122,7 @@ def trim_by_the_command(bench: Bench, room: Path, *more: str) -> Outcome:
     captures = room / "captures"
     captures.mkdir()
     rng = np.random.default_rng([81, bench.seed])
-    scope, hand = Oscilloscope(rng, clean=bench.clean), Hand(bench, rng)
+    scope, hand = Oscilloscope(rng, bits=bench.bits, clean=bench.clean), Hand(bench, rng)
     outcome = Outcome(wipers=bench.start)
 
     def save() -> None:
