@@ -173,7 +173,16 @@ def _start(record: Record, walk: Walk, before: Estimate) -> Array:
 def _general(walk: Walk, start: Array | None) -> Found:
     """Search with nothing known of the kind."""
     prior = general_belief(walk.parts.shape[1] // 2 + 1)
-    return find_walk(walk, prior, start, marginal=True, freedom=GENERAL_FREEDOM)
+    found = find_walk(walk, prior, start, marginal=True, freedom=GENERAL_FREEDOM)
+    if start is None or found.strain < _usual_strain(walk.expected.size):
+        return found
+    afresh = find_walk(walk, prior, None, marginal=True, freedom=GENERAL_FREEDOM)
+    return min(found, afresh, key=lambda each: each.cost)
+
+
+def _usual_strain(steps: int) -> float:
+    """Strain of so many steps above which the search may have run into a side valley."""
+    return steps + 2.0 * float(np.sqrt(2.0 * steps))
 
 
 def _with_kind(walk: Walk, kind: KindPrior, start: Array | None) -> Found:
@@ -192,10 +201,17 @@ def _with_kind(walk: Walk, kind: KindPrior, start: Array | None) -> Found:
         expected=np.concatenate((np.zeros(2), walk.expected)),
         spread=spread,
     )
+    first = start is None
     if start is None:
         start = wide.expected.copy()
         start[:2] = _likely_start(walk.parts[0], walk.variance[0], prior)
-    return find_walk(wide, prior, start, rounds=20, marginal=True)
+    found = find_walk(wide, prior, start, rounds=20, marginal=True)
+    if first or found.strain < _usual_strain(n + 2):
+        return found
+    afresh = wide.expected.copy()
+    afresh[:2] = _likely_start(walk.parts[0], walk.variance[0], prior)
+    other = find_walk(wide, prior, afresh, rounds=20, marginal=True)
+    return min(found, other, key=lambda each: each.cost)
 
 
 def _likely_start(parts: Array, variance: Array, prior: FieldBelief) -> Array:

@@ -59,10 +59,32 @@ def general_belief(orders: int, gain: float = 1.0) -> FieldBelief:
 def general_sigma(orders: int, gain: float = 1.0) -> Array:
     """Give the size of each weight of a unit of which nothing is known; shape (2(orders-1), 10)."""
     scale = column_scale(orders)
-    bend = BEND * gain * (np.repeat(np.arange(2, orders + 1), 2) / 3.0) ** BEND_GROWS
+    bend = gain * _bend(orders)
     sigma = np.empty((scale.size, FEATURES))
     sigma[:, 0] = VALUE
     sigma[:, 1:3] = (1.5 * gain * scale)[:, None]
     sigma[:, 3:6] = np.outer(gain * scale * bend, (1.0, CROSS, 1.0))
     sigma[:, 6:] = np.outer(1.5 * gain * scale * bend**2, (1.0, CROSS, CROSS, 1.0))
     return sigma
+
+
+def beyond_third(orders: int, distance: Array) -> Array:
+    """Give the size of what a field of third degree leaves out at distances from its anchor.
+
+    Parameters
+    ----------
+    orders
+        Highest order K.
+    distance
+        Shape (n,), shares of the travel.
+
+    Returns
+    -------
+    Array
+        Shape (n, 2(orders-1)): the fourth-degree term, the column bending on as it began.
+    """
+    return np.outer(distance**4 / 24.0, 1.5 * column_scale(orders) * _bend(orders) ** 3)
+
+
+def _bend(orders: int) -> Array:
+    return np.asarray(BEND * (np.repeat(np.arange(2, orders + 1), 2) / 3.0) ** BEND_GROWS)

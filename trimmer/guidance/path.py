@@ -81,6 +81,11 @@ class Found:
     """Shape (2,), the last place in the coordinates of the prior."""
     misfit: float
     """Sum of squares over variances of all that was read, believed and asked."""
+    cost: float
+    """Minus twice the logarithm of the probability of it all, up to a constant; comparable between
+    searches with the same prior and readings."""
+    strain: float
+    """Sum of squares over variances of the steps against what was expected of them."""
     converged: bool
     """Whether the search came to rest."""
 
@@ -161,6 +166,7 @@ class _Problem:
         self.weighted_parts = self.weight * walk.parts
         self.given = np.asarray(np.linalg.inv(prior.covariance), dtype=np.float64)
         self.precision = self.given
+        self.sizes = 0.0
         self.pull = np.einsum("kfg,kg->kf", self.given, prior.mean)
 
     def at(self, steps: Array) -> _Trial:
@@ -173,16 +179,18 @@ class _Problem:
         weights = (inverse @ right[..., None])[..., 0]
         miss = self.walk.parts - phi @ weights.T
         off = weights - self.prior.mean
-        slip = steps - self.walk.expected
         misfit = float(
             np.sum(self.weight * miss * miss)
             + np.sum(off * (self.precision @ off[..., None])[..., 0])
-            + slip @ self.held @ slip
-        )
+        ) + self._strain(steps)
         cost = misfit
         if self.marginal:
-            cost += float(np.sum(np.linalg.slogdet(normal)[1]))
+            cost += float(np.sum(np.linalg.slogdet(normal)[1])) + self.sizes
         return _Trial(steps, phi, inverse, weights, miss, misfit, cost)
+
+    def _strain(self, steps: Array) -> float:
+        slip = steps - self.walk.expected
+        return float(slip @ self.held @ slip)
 
     def learn_sizes(self, now: _Trial, freedom: float) -> None:
         """Learn the sizes of columns and of curvature (one round of expectation and maximisation).
@@ -200,6 +208,9 @@ class _Problem:
         by = np.ones_like(seen)
         by[:, 1:3] = 1.0 / np.sqrt(columns)
         by[:, 3:] = 1.0 / np.sqrt(grown * bends[:, None])
+        # What the prior's own normalisation and the prior on the sizes add to the cost.
+        self.sizes = -2.0 * float(np.sum(np.log(by)))
+        self.sizes += freedom * float(np.sum(1.0 / bends + np.log(bends)))
         self.precision = self.given * by[:, :, None] * by[:, None, :]
         self.pull = np.einsum("kfg,kg->kf", self.precision, self.prior.mean)
 
@@ -259,5 +270,7 @@ class _Problem:
             places=places - places[-1],
             last=places[-1],
             misfit=now.misfit,
+            cost=now.cost,
+            strain=self._strain(now.steps),
             converged=converged,
         )

@@ -6,6 +6,7 @@ from dataclasses import dataclass, field
 
 import numpy as np
 
+from trimmer.guidance.general import beyond_third
 from trimmer.guidance.habit import expected_moves
 from trimmer.guidance.hand import Hand
 from trimmer.guidance.moves import Move
@@ -80,9 +81,11 @@ class Record:
         for i, move in enumerate(self.moves):
             steps[: i + 1, move.trim, i] = -1.0
         expected = expected_moves(self.moves, hand, scale_sigma)
+        away = np.linalg.norm(steps @ expected.steps, axis=1)
+        left_out = beyond_third(self.orders, away)
         return Walk(
             parts=np.array([r.parts[:size] for r in together]),
-            variance=np.array([r.variance[:size] for r in together]),
+            variance=np.array([r.variance[:size] for r in together]) + left_out**2,
             steps=steps,
             expected=expected.steps,
             spread=expected.covariance,
