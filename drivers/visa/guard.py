@@ -105,7 +105,7 @@ class Guard:
             if self._due is not None and time.monotonic() > moment:
                 self._cut()
                 return
-            self._done.wait(0.02)
+            self._done.wait(0.02 if self._due is not None else _LOOK_S)
 
     def _cut(self) -> None:
         for watched in self._sockets:

@@ -11,9 +11,10 @@ from typing import Any
 from drivers.visa import answers, ways
 from drivers.visa.conversation import UNKNOWN, Conversation
 from drivers.visa.dialect import Dialect
+from drivers.visa.soundness import formulas
 
 _AGE_S = 1.0
-"""Seconds for which they are taken as still true: a coupling switch is not turned in between."""
+"""Seconds for which a field that no formula uses (coupling) is taken as still true."""
 
 _MOST_SILENCES = 2
 """Silences after which a field counts as not known, where the instrument does not say why."""
@@ -38,6 +39,7 @@ class OptionalFields:
         self._silences: Counter[str] = Counter()
         self._fields: dict[str, Any] = {}
         self._at = -math.inf
+        self._used = frozenset().union(*(formula.names for _, formula in formulas(dialect)))
         self.unanswered = set(unanswered)
         """Names of fields the instrument does not know."""
 
@@ -46,19 +48,27 @@ class OptionalFields:
         self._at = -math.inf
 
     def ask(self, deadline: float) -> dict[str, Any]:
-        """Give the fields; None for those that are not answered."""
-        if time.monotonic() - self._at < _AGE_S:
-            return self._fields
+        """Give the fields; None for those that are not answered.
+
+        Those that a formula uses are asked with every frame: a frame in peak detect, or with
+        another record length, must not be read by what held for the one before.
+        """
+        old = time.monotonic() - self._at >= _AGE_S
         fields: dict[str, Any] = dict.fromkeys(self._dialect.also)
         for name, query in self._dialect.also.items():
             if name in self.unanswered:
+                continue
+            if not old and name not in self._used:
+                fields[name] = self._fields.get(name)
                 continue
             answer = self._talk.quietly(query, ways.PROBE_S, deadline)
             if answer is None:
                 self._silent(name, deadline)
             else:
                 fields[name] = answers.field(answer)
-        self._fields, self._at = fields, time.monotonic()
+        if old:
+            self._at = time.monotonic()
+        self._fields = fields
         return fields
 
     def _silent(self, name: str, deadline: float) -> None:

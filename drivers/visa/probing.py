@@ -28,7 +28,7 @@ from drivers.visa.ways import PROBE_S
 _LONGEST_S = 25.0
 """Seconds after which finding out is given up."""
 
-_SETTING_UP_S = 10.0
+_SETTING_UP_S = 15.0
 
 _MOST_BYTES = 1 << 24
 """Longest block read while finding out."""

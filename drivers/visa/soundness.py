@@ -30,7 +30,7 @@ def faults_between_parts(dialect: Dialect) -> list[Fault]:
     return list(dict.fromkeys(faults))
 
 
-def _formulas(dialect: Dialect) -> list[tuple[str, Formula]]:
+def formulas(dialect: Dialect) -> list[tuple[str, Formula]]:
     """List the formulas over the fields of a preamble, each with its place."""
     codes, scale = dialect.codes, dialect.scale
     listed: list[tuple[str, Formula | None]] = [
@@ -62,7 +62,7 @@ def _unknown_fields(dialect: Dialect) -> list[Fault]:
     for index, preamble in enumerate(dialect.preamble):
         given = _fields(preamble)
         known = BUILT_IN | given | set(dialect.also)
-        for place, formula in _formulas(dialect):
+        for place, formula in formulas(dialect):
             missing = formula.names - known - ({"code"} if place == "scale.volts" else set())
             faults += [(place, f"preamble[{index}] gives no field {m!r}") for m in sorted(missing)]
         if isinstance(preamble, DescriptorPreamble):

@@ -153,6 +153,9 @@ class InstrumentSource:
             return
         self._closed = True
         owned = self._turn.acquire(timeout=_LEAVING_S)
+        if not owned:  # a capture is under way in another thread: end it
+            self._link.close()
+            owned = self._turn.acquire(timeout=_LEAVING_S)
         try:
             if owned:
                 self._leave(time.monotonic() + _LEAVING_S)

@@ -114,6 +114,16 @@ class Speaker:
         if self._record.windows is None:
             self._record.find_windows(deadline)
         self._record.ask_points(None, self.kept, deadline)
+        if fresh:
+            self._find_out(deadline)
+
+    def _find_out(self, deadline: float) -> None:
+        """Sit out the silences now that a first capture would have to sit out otherwise."""
+        self._optional.ask(deadline)
+        if len(self.dialect.preamble) > 1:
+            # There may be nothing to describe before the first acquisition.
+            with contextlib.suppress(SourceRefused):
+                self.learn(preamble=ways.find_preamble(self.talk, self.dialect, deadline)[0])
 
     def ask_points(self, points: int | None, deadline: float) -> None:
         """Ask for so many samples, where the dialect can."""

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import gc
 import os
 import socket
@@ -184,6 +185,28 @@ def test_a_source_can_be_closed_from_another_thread_while_it_waits() -> None:
         thread.join()
         assert time.monotonic() - before < 4.0
         assert failed
+
+
+def test_settings_are_put_back_even_when_a_waiting_capture_is_ended() -> None:
+    brain = TenField()
+    with SocketServer(brain) as server:
+        source = open_instrument(server.resource, dialect="ten-field")
+        source.capture()
+        brain.settings[":ACQuire:COUNt"] = "7"
+        source.capture(CaptureRequest(average=16))
+        assert brain.settings[":ACQuire:COUNt"] == "16"
+        server.faults.put("silence")
+
+        def wait() -> None:
+            with contextlib.suppress(SourceError):
+                source.capture(CaptureRequest(timeout_s=8.0, average=16))
+
+        thread = threading.Thread(target=wait)
+        thread.start()
+        time.sleep(0.2)
+        source.close()
+        thread.join()
+        assert brain.settings[":ACQuire:COUNt"] == "7"
 
 
 @pytest.mark.parametrize("link", [SocketServer, HislipServer, Vxi11Server, SerialServer])

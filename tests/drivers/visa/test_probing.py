@@ -39,22 +39,16 @@ DISTURBING = ("*RST", ":RUN", "RUN", "STOP", "SING", "ARM", "TRMD", "DIG", "INIT
 
 
 @pytest.mark.parametrize("dialect", SPEAKERS)
-def test_each_dialect_is_found_by_asking(dialect) -> None:
+def test_each_dialect_is_found_by_harmless_queries_one_a_message(dialect) -> None:
     brain = SPEAKERS[dialect]()
     with SocketServer(brain) as server, open_instrument(server.resource) as source:
+        asked = brain.log[: brain.log.index("*CLS")]
+        assert brain.armed == 0
         taken = source.capture()
         meant = [float(volts) for volts in brain.meant]
         assert np.abs(taken.samples - np.array(meant)).max() < 1e-9
         assert source.info.dialect == dialect
         assert source.info.settings["dialect found"] == "asked"
-
-
-@pytest.mark.parametrize("dialect", SPEAKERS)
-def test_asking_sends_one_harmless_query_a_message(dialect) -> None:
-    brain = SPEAKERS[dialect]()
-    with SocketServer(brain) as server, open_instrument(server.resource):
-        asked = brain.log[: brain.log.index("*CLS")]
-        assert brain.armed == 0
     assert asked[0] == "*IDN?"
     for message in asked:
         assert message.split()[0].endswith("?")

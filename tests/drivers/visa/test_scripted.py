@@ -19,7 +19,7 @@ WELL: Line = ("*ESR?", "0")
 LEFT: Line = ("*IDN?", "EXAMPLE WORKS,SCOPE 10,SN0001,1.00")
 """Asked last, so that nothing is lost on its way when the link closes."""
 
-TEN_FIELD: list[Line] = [
+TEN_FIELD_OPENED: list[Line] = [
     IDENTITY,
     CLEAR,
     (":WAVeform:SOURce CHANnel1", None),
@@ -35,18 +35,24 @@ TEN_FIELD: list[Line] = [
     NO_ERROR,
     (":WAVeform:POINts 10000", None),
     NO_ERROR,
+    (":CHANnel1:COUPling?", "AC"),
+    (":ACQuire:TYPE?", "NORM"),
+    (":ACQuire:SRATe?", "+1.0E+06"),
+]
+TEN_FIELD_COUPLING = TEN_FIELD_OPENED[-3]
+TEN_FIELD_ARMED: list[Line] = [
     (":SINGle", None),
     (":OPERegister:CONDition?", "8"),
     (":OPERegister:CONDition?", "0"),
-    (":CHANnel1:COUPling?", "AC"),
+]
+TEN_FIELD_READ: list[Line] = [
     (":ACQuire:TYPE?", "NORM"),
     (":ACQuire:SRATe?", "+1.0E+06"),
     (":WAVeform:PREamble?", "1,0,3,1,1.0E-06,-2.0E-06,0,3.125E-05,+0.5E+00,32768"),
     (":WAVeform:DATA?", b"#9000000006" + struct.pack("<3H", 0x7F00, 0x8000, 0x8200)),
-    NO_ERROR,
-    (":RUN", None),
-    LEFT,
 ]
+TEN_FIELD_LEFT: list[Line] = [(":RUN", None), LEFT]
+TEN_FIELD = [*TEN_FIELD_OPENED, *TEN_FIELD_ARMED, *TEN_FIELD_READ, NO_ERROR, *TEN_FIELD_LEFT]
 
 TEN_FIELD_CODE: list[Line] = [
     IDENTITY,
@@ -69,10 +75,13 @@ TEN_FIELD_CODE: list[Line] = [
     (":WAVeform:STARt 1", None),
     (":WAVeform:STOP 1000", None),
     NO_ERROR,
+    (":CHANnel1:COUPling?", "DC"),
+    (":ACQuire:TYPE?", "NORM"),
+    (":ACQuire:SRATe?", "1.0E6"),
+    (":ACQuire:MDEPth?", "3"),
     (":SINGle", None),
     (":TRIGger:STATus?", "WAIT"),
     (":TRIGger:STATus?", "STOP"),
-    (":CHANnel1:COUPling?", "DC"),
     (":ACQuire:TYPE?", "NORM"),
     (":ACQuire:SRATe?", "1.0E6"),
     (":ACQuire:MDEPth?", "3"),
@@ -98,9 +107,11 @@ TEN_FIELD_SIGNED: list[Line] = [
     NO_ERROR,
     (":WAVeform:POINts 10000", None),
     NO_ERROR,
+    (":CHANnel1:COUPling?", "DC"),
+    (":ACQuire:TYPE?", "NORM"),
+    (":ACQuire:SRATe?", "1.0E6"),
     (":SINGle", None),
     (":OPERegister:CONDition?", "0"),
-    (":CHANnel1:COUPling?", "DC"),
     (":ACQuire:TYPE?", "NORM"),
     (":ACQuire:SRATe?", "1.0E6"),
     (":WAVeform:PREamble?", "1,0,3,1,1.0E-06,0,0,1.0E-04,0.25,0"),
@@ -131,10 +142,15 @@ KEYWORD_CURVE: list[Line] = [
     ("DATa:STOP 1000000", None),
     ("*ESR?", "16"),
     ("EVENT?", "222"),
+    ("CH1:COUPling?", "DC"),
+    ("ACQuire:MODe?", "SAMPLE"),
+    ("ACQuire:NUMAVg?", "16"),
+    ("HEADer ON", None),
+    ("WFMOutpre?", KEYWORDS),
+    ("HEADer OFF", None),
     ("ACQuire:STOPAfter SEQuence", None),
     ("ACQuire:STATE RUN", None),
     ("*OPC?", "1"),
-    ("CH1:COUPling?", "DC"),
     ("ACQuire:MODe?", "SAMPLE"),
     ("ACQuire:NUMAVg?", "16"),
     ("HEADer ON", None),
@@ -168,11 +184,11 @@ DESCRIPTOR: list[Line] = [
     ("CORD LO", None),
     ("CFMT DEF9,WORD,BIN", None),
     ("INR?", "0"),
+    ("C1:CPL?", "D1M"),
     ("INR?", "1"),
     ("TRMD SINGLE", None),
     ("INR?", "0"),
     ("INR?", "8193"),
-    ("C1:CPL?", "D1M"),
     ("C1:WF? ALL", b"#9%09d" % len(descriptor()) + descriptor()),
     ("TRMD AUTO", None),
     LEFT,
@@ -184,10 +200,11 @@ VDIV_TEXT: list[Line] = [
     ("CHDR OFF", None),
     ("WFSU SP,0,NP,0,FP,0", None),
     ("INR?", "0"),
+    ("C1:CPL?", "A1M"),
+    ("ACQW?", "SAMPLING"),
     ("INR?", "0"),
     ("TRMD SINGLE", None),
     ("INR?", "1"),
-    ("C1:CPL?", "A1M"),
     ("ACQW?", "SAMPLING"),
     ("C1:VDIV?", "5.00E-01"),
     ("C1:OFST?", "1.00E-01V"),
@@ -204,8 +221,14 @@ DATA_HEADER: list[Line] = [
     NO_ERROR,
     ("FORMat:BORDer LSBFirst", None),
     NO_ERROR,
-    ("SINGle;*OPC?", "1"),
     ("CHANnel1:COUPling?", "DCL"),
+    ("CHANnel1:DATA:YINCrement?", "0.25"),
+    ("CHANnel1:DATA:YRESolution?", "8"),
+    ("CHANnel1:RANGe?", "10"),
+    ("CHANnel1:OFFSet?", "0"),
+    ("CHANnel1:ARIThmetics?", "OFF"),
+    ("ACQuire:AVERage:COUNt?", "8"),
+    ("SINGle;*OPC?", "1"),
     ("CHANnel1:DATA:YINCrement?", "0.25"),
     ("CHANnel1:DATA:YRESolution?", "8"),
     ("CHANnel1:RANGe?", "10"),
@@ -226,10 +249,10 @@ MEMORY_HEADER: list[Line] = [
     (":SYSTem:ERRor?", '0,"No error"'),
     (":ACQuire1:STATe?", "0"),
     (":SYSTem:ERRor?", '0,"No error"'),
+    (":CHANnel1:COUPling?", "DC"),
     (":SINGle", None),
     (":ACQuire1:STATe?", "0"),
     (":ACQuire1:STATe?", "1"),
-    (":CHANnel1:COUPling?", "DC"),
     (
         ":ACQuire1:MEMory?",
         b"Format,2.0;Memory Length,3;Vertical Scale,+2.0E-01;Sampling Period,1.0E-06;"
@@ -248,9 +271,9 @@ FORMAT_TRACE: list[Line] = [
     ("FORMat:DATA REAL,64", None),
     NO_ERROR,
     ("FORMat:DATA?", "REAL,64"),
+    ("INPut:COUPling?", "DC"),
     ("INITiate", None),
     ("*OPC?", "1"),
-    ("INPut:COUPling?", "DC"),
     ("SENSe:SWEep:POINts?", "+3"),
     ("SENSe:SWEep:TINTerval?", "+1.0E-06"),
     ("FETCh?", b"#224" + struct.pack(">3d", 0.1, -0.2, 0.3)),
@@ -290,9 +313,9 @@ def test_a_frame_is_asked_for_and_read_as_the_script_says(monkeypatch, dialect) 
 
 
 def test_the_second_frame_costs_only_its_own_lines(monkeypatch) -> None:
-    again = [(":SINGle", None), (":OPERegister:CONDition?", "0"), *TEN_FIELD[21:24]]
-    again[3] = (":WAVeform:DATA?", b"#16" + struct.pack("<3H", 0x7000, 0x8000, 0x8200))
-    link = played(monkeypatch, [*TEN_FIELD[:-2], *again, *TEN_FIELD[-2:]])
+    other: Line = (":WAVeform:DATA?", b"#16" + struct.pack("<3H", 0x7000, 0x8000, 0x8200))
+    again = [*TEN_FIELD_ARMED, *TEN_FIELD_READ[:-1], other, NO_ERROR]
+    link = played(monkeypatch, [*TEN_FIELD[:-2], *again, *TEN_FIELD_LEFT])
     with open_instrument("SCRIPT", dialect="ten-field") as source:
         source.capture()
         source.capture()
@@ -310,9 +333,10 @@ def test_a_refused_command_is_told_with_its_words(monkeypatch) -> None:
 
 def test_an_error_beside_a_frame_makes_it_be_taken_again(monkeypatch) -> None:
     error: Line = ("SYSTem:ERRor?", '-222,"Data out of range"')
-    frame = [*TEN_FIELD[15:18], *TEN_FIELD[21:23]]
+    frame = [*TEN_FIELD_ARMED, *TEN_FIELD_READ]
     link = played(
-        monkeypatch, [*TEN_FIELD[:23], error, NO_ERROR, *frame, NO_ERROR, *TEN_FIELD[-2:]]
+        monkeypatch,
+        [*TEN_FIELD_OPENED, *frame, error, NO_ERROR, *frame, NO_ERROR, *TEN_FIELD_LEFT],
     )
     with open_instrument("SCRIPT", dialect="ten-field") as source:
         assert source.capture(CaptureRequest()).samples.size == 3
@@ -329,7 +353,8 @@ def test_averaging_is_asked_for_and_put_back(monkeypatch) -> None:
         NO_ERROR,
     ]
     back = [(":ACQuire:COUNt 8", None), (":ACQuire:TYPE NORM", None)]
-    link = played(monkeypatch, [*TEN_FIELD[:15], *ask, *TEN_FIELD[15:-2], *back, *TEN_FIELD[-2:]])
+    frame = [*TEN_FIELD_ARMED, TEN_FIELD_COUPLING, *TEN_FIELD_READ, NO_ERROR]
+    link = played(monkeypatch, [*TEN_FIELD_OPENED, *ask, *frame, *back, *TEN_FIELD_LEFT])
     with open_instrument("SCRIPT", dialect="ten-field") as source:
         source.capture(CaptureRequest(average=10))
     link.finished()
