@@ -21,7 +21,7 @@ FEW_CODES = 64
 """A wave that spans fewer codes is flagged."""
 CLIPPED_SHARE = 0.001
 """More samples than this share at a rail, and the record is refused."""
-_SAMPLE = 2048
+_SAMPLE = 1024
 """Samples looked at to find the step of the codes where it is not stated."""
 _PILED = 4.0
 """So many times more samples in the outermost code than in the next one are a flat top without

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from functools import lru_cache
 
 import numpy as np
 
@@ -15,20 +16,28 @@ _GRID = 512
 _FINE_GRID = 1024
 
 
+@lru_cache(maxsize=32)
+def _crest_rows(size: int) -> Array:
+    """Shape (3, size): upper and lower pointedness and their difference, as sums of parts."""
+    k = np.arange(2, size // 2 + 2)
+    weight = 1.0 - np.cos(k * math.pi / 4.0)
+    rows = np.zeros((3, size))
+    rows[0, 0::2] = weight
+    rows[1, 0::2] = np.where(k % 2 == 1, weight, -weight)
+    rows[2] = rows[0] - rows[1]
+    rows.flags.writeable = False
+    return rows
+
+
 def crests_of(parts: Array, covariance: Array) -> Crests:
     """Give the pointedness of both crests and their asymmetry, with uncertainties.
 
     ``q_U = r(0) - (r(45 deg) + r(-45 deg)) / 2 = sum c_k (1 - cos(k pi / 4))`` with
     ``r = shape - cos``; the lower crest is the same of the wave upside-down and half a period on.
     """
-    k = np.arange(2, parts.size // 2 + 2)
-    weight = 1.0 - np.cos(k * math.pi / 4.0)
-    rows = np.zeros((3, parts.size))
-    rows[0, 0::2] = weight
-    rows[1, 0::2] = np.where(k % 2 == 1, weight, -weight)
-    rows[2] = rows[0] - rows[1]
+    rows = _crest_rows(parts.size)
     upper, lower, asymmetry = (float(value) for value in rows @ parts)
-    sigma = np.sqrt(np.maximum(np.einsum("ij,jk,ik->i", rows, covariance, rows), 0.0))
+    sigma = np.sqrt(np.maximum(((rows @ covariance) * rows).sum(axis=1), 0.0))
     return Crests(
         upper=upper,
         lower=lower,
@@ -135,18 +144,20 @@ def thd_plus_noise_of(fit: Fit) -> float:
     a, b = fit.cosines.copy(), fit.sines.copy()
     a_1, b_1 = float(a[1]), float(b[1])
     a[:2], b[:2] = 0.0, 0.0
-    even, odd = (even_gram @ a)[:2], float(odd_gram[1] @ b)
-    left = float(a @ even_gram @ a + b @ odd_gram @ b)
-    block, single = even_gram[:2, :2], float(odd_gram[1, 1])
-    left -= float(even @ np.linalg.solve(block, even)) + odd * odd / single
+    with_even, with_odd = even_gram @ a, odd_gram @ b
     # derivative of the tone with its frequency: -a_1 t sin + b_1 t cos
     only = np.zeros((2, a.size))
     only[0, 1], only[1, 1] = a_1, b_1
-    with_basis, itself = fit.normal.with_derivative(only[0], only[1])
-    even_g, odd_g = with_basis[0, :2], float(with_basis[1, 1])
-    lean = np.linalg.solve(block, even_g)
-    stiffness = itself - float(even_g @ lean) - odd_g * odd_g / single
-    score = float(with_basis[0] @ a + with_basis[1] @ b) - float(even @ lean)
+    with_tone, itself = fit.normal.with_derivative(only[0], only[1])
+    # what offset and cosine, a block of two, and the sine take of the other lines and of the slope
+    (p, q), (_, r) = even_gram[:2, :2].tolist()
+    inverse = np.array([[r, -q], [-q, p]]) / (p * r - q * q)
+    single = float(odd_gram[1, 1])
+    even, odd = with_even[:2], float(with_odd[1])
+    even_g, odd_g = with_tone[0, :2], float(with_tone[1, 1])
+    left = float(a @ with_even + b @ with_odd - even @ inverse @ even) - odd * odd / single
+    stiffness = itself - float(even_g @ inverse @ even_g) - odd_g * odd_g / single
+    score = float(with_tone[0] @ a + with_tone[1] @ b - even @ inverse @ even_g)
     score -= odd * odd_g / single
     if stiffness > 0.0:
         left -= score * score / stiffness

@@ -61,7 +61,7 @@ def _largest_line(power: Array, cell: float, lowest: float) -> float:
     Returns
     -------
     float
-        Its position in bins, by a parabola through the logarithms; 0 where there is none.
+        Its position in bins; 0 where there is none.
     """
     start = max(1, math.ceil(lowest * cell))
     inner = power[start:-1]
@@ -73,7 +73,46 @@ def _largest_line(power: Array, cell: float, lowest: float) -> float:
     best = start + int(np.argmax(np.where(peaks, inner, -1.0)))
     below, at, above = (math.log(max(float(power[best + i]), 1e-300)) for i in (-1, 0, 1))
     bend = below - 2.0 * at + above
-    return best + (0.5 * (below - above) / bend if bend < 0.0 else 0.0)
+    if bend >= 0.0:
+        return float(best)
+    return best + cell * _beside(
+        0.5 * (above - below), 0.5 * (below - above) / bend / cell, 1.0 / cell
+    )
+
+
+def _beside(lead: float, start: float, spacing: float) -> float:
+    """Place a line between bins by the Hann window's own main lobe.
+
+    Parameters
+    ----------
+    lead
+        Logarithm of the bin above the peak over the bin below it.
+    start
+        Place by a parabola through the logarithms of three bins, cells of the record.
+    spacing
+        Distance of the bins, cells.
+
+    Returns
+    -------
+    float
+        Distance of the line from the peak's bin, cells.
+    """
+    off = max(-0.5 * spacing, min(0.5 * spacing, start))
+    for _ in range(
+        3
+    ):  # the lobe's logarithm bends by 2 - pi^2/3 at its top, and hardly more beside
+        short = lead - _lobe(off - spacing) + _lobe(off + spacing)
+        off += short / (2.0 * spacing * (math.pi**2 / 3.0 - 2.0))
+    return max(-spacing, min(spacing, off))
+
+
+def _lobe(x: float) -> float:
+    """Logarithm of the Hann window's transform ``sin(pi x) / (pi x (1 - x^2))``, ``|x| < 2``."""
+    if abs(x) < 1e-6:
+        return 0.0
+    if abs(abs(x) - 1.0) < 1e-6:
+        return -math.log(2.0)
+    return math.log(max(math.sin(math.pi * x) / (math.pi * x * (1.0 - x * x)), 1e-300))
 
 
 def coarse_fundamental(record: Record) -> tuple[float, float]:
@@ -95,7 +134,7 @@ def coarse_fundamental(record: Record) -> tuple[float, float]:
 
 
 def _whole(values: Array) -> float:
-    padded = _padded(values.size, 4.0 if values.size <= 4096 else 2.0)
+    padded = _padded(values.size, 2.0)
     cell = padded / values.size
     bin_ = _largest_line(_power_spectrum(values, padded), cell, 1.2)
     return 2.0 * math.pi * bin_ / padded
@@ -149,7 +188,8 @@ def beat(projections: Projections, line: int, w: float, reach: float) -> float:
     cell = 2.0 * math.pi / (padded * projections.length)
     bins = min(max(2, math.ceil(reach / cell)), padded // 2 - 1)
     start = padded // 2 - bins
-    bin_ = _largest_line(power[start : padded // 2 + bins + 1], 1.0, 1.0)
+    fine = padded / turning.size
+    bin_ = _largest_line(power[start : padded // 2 + bins + 1], fine, 1.0 / fine)
     return w + cell * (bin_ + start - padded // 2) if bin_ > 0.0 else w
 
 
