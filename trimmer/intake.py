@@ -5,14 +5,14 @@ from __future__ import annotations
 import math
 import time
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from drivers import CaptureRequest, UnusableCapture, Waveform, WaveformSource
-from trimmer.measurement import MeasurementError, Reading, combine, measure
-from trimmer.measurement.reading import Digitiser
+from trimmer.measurement import MeasurementError, Reading, combine, frames_needed, measure
+from trimmer.measurement.reading import Digitiser, Flag
 from trimmer.measurement.reference import Reference
 
 MOST_FRAMES = 400
@@ -136,12 +136,13 @@ class Intake:
         least = max(1, frames if frames is not None else self.wanted.frames)
         goal = sigma if sigma is not None else self.wanted.until_sigma
         if self.source.info.finite or self.source.info.paced_by_person:
-            return self.frame(fresh_after=fresh_after)
+            taken_once = self.frame(fresh_after=fresh_after)
+            return Taken(_owning_up(taken_once.reading, goal), taken_once.waveform)
         taken = [self.frame(fresh_after=fresh_after)]
         whole = taken[0].reading
         stale = 0
         while not stop():
-            enough = len(taken) >= least and (goal is None or whole.thd.sigma <= goal)
+            enough = len(taken) >= least and (goal is None or _averaged_down(whole, goal))
             if enough or len(taken) >= MOST_FRAMES:
                 break
             following = self.frame()
@@ -152,7 +153,32 @@ class Intake:
             taken.append(following)
             if len(taken) >= least and (len(taken) < 16 or len(taken) % 8 == 0):
                 whole = combine([item.reading for item in taken])
-        return Taken(whole if len(taken) > 1 else taken[0].reading, taken[-1].waveform)
+        if len(taken) > 1:
+            whole = combine([item.reading for item in taken])
+        return Taken(_owning_up(whole, goal), taken[-1].waveform)
+
+
+def _averaged_down(reading: Reading, goal: float) -> bool:
+    """Say whether more captures would not help towards a wanted uncertainty of THD.
+
+    What is the same in every capture (the digitiser's non-linearity) does not average out; where that
+    alone is more than what is wanted, the random part is still brought down to it.
+    """
+    return frames_needed(reading, goal) == 0 or reading.random_thd_sigma <= goal
+
+
+def _owning_up(reading: Reading, goal: float | None) -> Reading:
+    """Flag a wanted uncertainty that was not reached."""
+    if goal is None or reading.thd.sigma <= goal:
+        return reading
+    flag = Flag(
+        "short-of-sigma",
+        f"THD is known to {100 * reading.thd.sigma:.4f} points, not to the {100 * goal:.4f} wanted: "
+        f"{100 * reading.random_thd_sigma:.4f} points after {reading.frames} captures are noise, "
+        "the rest is the digitiser's own error.",
+        "Use more of its range or more bits, or store a reference of a clean source.",
+    )
+    return replace(reading, flags=(*reading.flags, flag))
 
 
 def picture(waveform: Waveform, reading: Reading, most: int = 4000) -> NDArray[np.float64]:
