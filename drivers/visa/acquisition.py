@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import time
 
-from drivers.contract import SourceTimeout, clean
+from drivers.contract import SourceRefused, SourceTimeout, clean
 from drivers.visa import answers
 from drivers.visa.conversation import Conversation
 from drivers.visa.dialect import Acquire
@@ -22,6 +22,8 @@ def acquire(talk: Conversation, how: Acquire, deadline: float) -> None:
     ------
     SourceTimeout
         It was not, by the deadline.
+    SourceRefused
+        The answer to `*OPC?` is not 1: the conversation is out of step.
     """
     for query in how.before:
         talk.ask(query, deadline)
@@ -30,7 +32,12 @@ def acquire(talk: Conversation, how: Acquire, deadline: float) -> None:
     if how.poll is not None:
         _poll(talk, how, deadline)
     if how.finish is not None:
-        talk.ask(how.finish, deadline)
+        answer = talk.ask(how.finish, deadline)
+        if how.finish.endswith("*OPC?") and answer.lstrip("+") != "1":
+            raise SourceRefused(
+                f"{clean(how.finish)} is answered with {clean(answer, 40)!r}, not 1",
+                "Take the capture again.",
+            )
 
 
 def answers_poll(talk: Conversation, how: Acquire, wait_s: float, deadline: float) -> bool:

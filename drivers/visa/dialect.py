@@ -116,6 +116,11 @@ class Errors(Part):
     event: Command | None = None
     """Asked after the standard event register says that something went wrong."""
 
+    @property
+    def asked(self) -> bool:
+        """True where the instrument keeps errors with words."""
+        return self.queue is not None or self.event is not None
+
 
 class Setup(Part):
     """What is sent once, when a session begins or an instrument comes back."""

@@ -19,10 +19,11 @@ from drivers.contract import (
     SourceLost,
     SourceRefused,
     SourceTimeout,
+    UnusableCapture,
     Waveform,
     clean,
 )
-from drivers.visa.conversation import Conversation
+from drivers.visa.conversation import UNKNOWN, WRONG_STATE, Conversation
 from drivers.visa.frame import Converted
 from drivers.visa.identity import identify, identify_serial, same_instrument
 from drivers.visa.kept import KeptSettings
@@ -144,6 +145,12 @@ class InstrumentSource:
             if self._closed:
                 raise SourceLost(f"{self._name} is closed")
             return self._capture(request, deadline)
+        except UnusableCapture:
+            raise  # what was said was understood
+        except SourceError:
+            # An answer too many or too few shifts all that follow: this link is not used again.
+            self._link.broken = True
+            raise
         finally:
             self._turn.release()
 
@@ -219,11 +226,10 @@ class InstrumentSource:
             grace = time.monotonic() + _GRACE_S
             speaker.talk.step_in(grace)
             faults = speaker.faults(grace)
+            if not speaker.dialect.errors.asked:
+                faults = _told(speaker.talk.why_silent(grace))
         except SourceError:
             return silence
-        finally:
-            # Half of a waveform may still be on its way: this link is not used again.
-            self._link.broken = True
         return _reported(faults) if faults else silence
 
     def _settle(self, frame: Frame, deadline: float) -> bool:
@@ -343,6 +349,13 @@ def _coupling(word: Any) -> Coupling:
     """Read a coupling: `AC`, `A1M`, `ACLIMIT` are AC; `DC`, `D50` and the like DC."""
     first = str(word or "").strip().upper()[:1]
     return "AC" if first == "A" else "DC" if first == "D" else "unknown"
+
+
+def _told(why: str | None) -> list[str]:
+    """Put the event register in words, for instruments without an error queue."""
+    if why == WRONG_STATE:
+        return ["that it cannot do this now (execution error)"]
+    return ["that it does not know the query (command error)"] if why == UNKNOWN else []
 
 
 def _reported(faults: list[str]) -> SourceRefused:

@@ -116,6 +116,8 @@ class Speaker:
         self._record.ask_points(None, self.kept, deadline)
         if fresh:
             self._find_out(deadline)
+        if not dialect.errors.asked:
+            talk.tell("*CLS", deadline)  # from now on the event register tells of captures
 
     def _find_out(self, deadline: float) -> None:
         """Sit out the silences now that a first capture would have to sit out otherwise."""

@@ -26,7 +26,7 @@ from tests.drivers.visa.servers.wire import Fault
 TIMEOUT_S = 0.6
 FAULTS: list[Fault] = [
     "silence", "short-block", "long-block", "wrong-digits", "indefinite", "huge", "drop",
-    "reset", "late",
+    "reset", "late", "garbage",
 ]  # fmt: skip
 
 

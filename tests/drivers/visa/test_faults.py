@@ -22,7 +22,7 @@ from tests.drivers.visa.servers.links import (
     SocketServer,
     Vxi11Server,
 )
-from tests.drivers.visa.servers.speakers import TenField
+from tests.drivers.visa.servers.speakers import Descriptor, TenField
 
 LINKS = {
     "socket": SocketServer,
@@ -93,6 +93,26 @@ def recovered(source):
             time.sleep(0.1)
 
 
+@pytest.mark.parametrize("link", ["socket", "serial"])
+@pytest.mark.parametrize("garbled", [1, 2, 3])
+def test_a_line_too_many_does_not_shift_the_answers_for_good(link, garbled) -> None:
+    brain = TenField(points=200)
+    with (
+        LINKS[link](brain) as server,
+        open_instrument(server.resource, dialect="ten-field") as source,
+    ):
+        source.capture()
+        server.faults.put("garbage", garbled)
+        for _ in range(3):
+            try:
+                source.capture(CaptureRequest(timeout_s=TIMEOUT_S))
+            except SourceError:
+                continue
+        assert server.faults.shown == garbled
+        taken = recovered(source)
+        assert np.allclose(taken.samples, [float(volts) for volts in brain.meant], atol=1e-9)
+
+
 @pytest.mark.parametrize("link", LINKS)
 def test_an_old_frame_never_passes_for_a_new_one(link) -> None:
     brain = TenField(points=200)
@@ -147,6 +167,28 @@ def test_an_error_in_the_queue_is_told_with_its_words(link) -> None:
         with pytest.raises(SourceRefused, match="-222"):
             source.capture(CaptureRequest(timeout_s=TIMEOUT_S))
         assert time.monotonic() - before < TIMEOUT_S + 1.0
+        brain.own = own  # type: ignore[method-assign]
+        assert recovered(source).samples.size == 200
+
+
+def test_without_a_queue_the_event_register_tells_why() -> None:
+    brain = Descriptor(points=200)
+    own = brain.own
+
+    def failing(head: str, argument: str) -> bytes | None:
+        if "WF?" in head.upper():
+            brain.fail(-221)
+            return None
+        return own(head, argument)
+
+    with (
+        SocketServer(brain) as server,
+        open_instrument(server.resource, dialect="descriptor") as source,
+    ):
+        source.capture()
+        brain.own = failing  # type: ignore[method-assign]
+        with pytest.raises(SourceRefused, match="cannot do this now"):
+            source.capture(CaptureRequest(timeout_s=TIMEOUT_S))
         brain.own = own  # type: ignore[method-assign]
         assert recovered(source).samples.size == 200
 

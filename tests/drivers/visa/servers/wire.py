@@ -21,6 +21,7 @@ Fault = Literal[
     "drop",
     "reset",
     "late",
+    "garbage",
 ]
 
 LATE_S = 0.7
@@ -47,7 +48,8 @@ class Faults:
     def take(self, reply: bytes) -> Fault:
         """Give the fault this reply suffers."""
         with self.lock:
-            if self.left <= 0 or not (b"#" in reply and len(reply) > 100):
+            of_a_block = b"#" in reply and len(reply) > 100
+            if self.left <= 0 or of_a_block is (self.kind == "garbage"):
                 return "none"
             self.left -= 1
             self.shown += 1
@@ -55,7 +57,9 @@ class Faults:
 
 
 def misshapen(fault: Fault, reply: bytes) -> bytes:
-    """Give the reply a malformed block, where that is the fault."""
+    """Give the reply a malformed block, or too many lines, where that is the fault."""
+    if fault == "garbage":
+        return b"\x9c\x00 7\n" + reply[::-1]
     if fault not in ("short-block", "long-block", "wrong-digits", "indefinite", "huge"):
         return reply
     at = reply.index(b"#")
