@@ -2,16 +2,17 @@
 
 For each circuit and seed: a unit as it comes is trimmed through the real command, on captures of
 the simulator. About four seconds a trial on one core. With ``--kind`` the units of a circuit are
-trimmed one after another as one kind, in one book, so that each learns from those before it. With
-``--past-the-stop`` a part of each unit is so far off that its best setting is at an end stop. With
-``--clean`` all captures are as the simulator gives them, else every tenth unit's.
+trimmed one after another as one kind, in one book, so that each learns from those before it; with
+``--turned-about`` too, both trims of the last one turn the other way. With ``--past-the-stop`` a
+part of each unit is so far off that its best setting is at an end stop. With ``--clean`` all
+captures are as the simulator gives them, else every tenth unit's.
 """
 
 from __future__ import annotations
 
 import argparse
 import tempfile
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 
 import numpy as np
@@ -20,7 +21,7 @@ from tests.circuits.closed_loop import PAST_THE_STOP, bench_of, reached
 from tests.circuits.maps import Best
 from tests.circuits.netlist import CIRCUITS
 from tests.circuits.optimum import optimum
-from tests.circuits.person import Outcome, trim_by_the_command
+from tests.circuits.person import Bench, Outcome, trim_by_the_command
 
 
 @dataclass(frozen=True, slots=True)
@@ -48,19 +49,30 @@ class Trial:
         return line if self.good else f"{line}  NOT REACHED\n{outcome.told()}"
 
 
-def trial(circuit: str, seed: int, options: argparse.Namespace, room: Path) -> Trial:
-    """Trim one unit in a folder of its own under `room`."""
-    bench = bench_of(
+def bench(circuit: str, seed: int, options: argparse.Namespace) -> Bench:
+    """Find a unit; those of one kind are wired alike, but for one that may be turned about."""
+    found = bench_of(
         circuit,
         seed,
         bits=options.bits,
         clean=options.clean or seed % 10 == 9,
         past_the_stop=options.past_the_stop,
     )
+    if not options.kind:
+        return found
+    first = bench_of(circuit, 0)
+    way = -1 if options.turned_about and seed == options.seeds - 1 else 1
+    senses = (way * first.senses[0], way * first.senses[1])
+    return replace(found, senses=senses, swapped=first.swapped)
+
+
+def trial(circuit: str, seed: int, options: argparse.Namespace, room: Path) -> Trial:
+    """Trim one unit in a folder of its own under `room`."""
+    found = bench(circuit, seed, options)
     more = ("--kind", circuit, "--book", str(room / f"{circuit}.db")) if options.kind else ()
     folder = room / f"{circuit}-{seed}"
     folder.mkdir()
-    return Trial(optimum(bench.unit), trim_by_the_command(bench, folder, *more))
+    return Trial(optimum(found.unit), trim_by_the_command(found, folder, *more))
 
 
 def main() -> int:
@@ -68,6 +80,7 @@ def main() -> int:
     parser = argparse.ArgumentParser(description=__doc__)
     parser.add_argument("seeds", type=int, nargs="?", default=10, help="units of each circuit")
     parser.add_argument("--kind", action="store_true", help="units of a circuit share a memory")
+    parser.add_argument("--turned-about", action="store_true", help="the last of a kind is")
     parser.add_argument("--past-the-stop", action="store_true", help="units that end at a stop")
     parser.add_argument("--bits", type=int, default=8, help="of the captures (8)")
     parser.add_argument("--clean", action="store_true", help="captures without noise")
