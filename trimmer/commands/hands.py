@@ -27,6 +27,7 @@ class HandsOn:
         self._bench = bench
         self._hand = Hand(bench, seed)
         self._turning = False
+        self._slowed = False
 
     def run(self, stop: Callable[[], bool] = lambda: False) -> Iterator[Report]:
         """Give the session's reports, turning the trims in between."""
@@ -43,12 +44,14 @@ class HandsOn:
                     self._hand.make(advice.trim, turns, seconds=BY_EYE_S)
                 case Advised(advice=advice, follows=True):
                     self._hand.start(advice.trim, SIGN[advice.sense], advice.turns)
-                    self._turning = True
+                    self._turning, self._slowed = True, False
                 case Followed(word=word) if self._turning and word.say in STOPS:
                     self._hand.stop()
                     self._turning = False
                 case Followed(word=word) if self._turning and word.say == "slow":
-                    self._hand.slow()
+                    if not self._slowed:
+                        self._hand.slow()
+                    self._slowed = True
 
     def say(self, word: Word) -> None:
         """Pass a word on to the session."""
