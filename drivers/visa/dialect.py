@@ -31,6 +31,10 @@ def _formula(written: Any) -> Formula:
     raise ValueError("a formula, as text or a finite number, is needed here")
 
 
+def _listed(written: Any) -> Any:
+    return [written] if isinstance(written, str) else written
+
+
 def _pattern(written: str) -> str:
     try:
         re.compile(written)
@@ -363,8 +367,8 @@ class Dialect(Part):
     """Fields asked for apart, where the instrument knows them."""
     refuse: list[Refuse] = []
     remark: list[Remark] = []
-    data: Command
-    """The query for the samples."""
+    data: Annotated[list[Command], BeforeValidator(_listed), Field(min_length=1)]
+    """The query for the samples; of several, the first that a block answers."""
     codes: Codes
     scale: Scale
     length: Length | None = None

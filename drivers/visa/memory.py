@@ -32,6 +32,8 @@ class Known:
     """Sign of the codes where it was settled against text."""
     big_endian: bool | None = None
     """Byte order where it was settled against text."""
+    data: int | None = None
+    """Index of the query for its samples."""
     windows: bool | None = None
     """False where it knows no windows on its record."""
     asks_errors: bool = True
@@ -110,7 +112,7 @@ def _sound(entry: dict[str, Any]) -> bool:
     unanswered = entry.get("unanswered", [])
     return (
         isinstance(entry.get("dialect"), str)
-        and all(whole(entry.get(name)) for name in ("encoding", "acquire", "preamble"))
+        and all(whole(entry.get(name)) for name in ("encoding", "acquire", "preamble", "data"))
         and all(truth(entry.get(name)) for name in ("signed", "big_endian", "windows"))
         and isinstance(entry.get("asks_errors", True), bool)
         and isinstance(entry.get("settled", ""), str)

@@ -3,17 +3,25 @@
 from __future__ import annotations
 
 import contextlib
+import time
 from typing import Any
 
-from drivers.contract import SourceRefused, UnusableCapture
+from drivers.contract import SourceRefused, SourceTimeout, UnusableCapture
 from drivers.visa.blocks import MOST_BYTES, Block
 from drivers.visa.conversation import Conversation
 from drivers.visa.dialect import Dialect
 from drivers.visa.formula import FormulaError
 from drivers.visa.kept import KeptSettings
+from drivers.visa.memory import Known
 
 _SPARE_BYTES = 4096
 """More than the samples that a reply may hold: headers, a descriptor."""
+
+_SHORTER = (250_000, 100_000, 25_000, 10_000, 2_500, 1_000)
+"""Samples asked for where the record is not known and more was refused."""
+
+_BRIEF_S = 1.5
+"""Seconds for the first byte and the last of a block whose query may not be known."""
 
 
 class Record:
@@ -25,15 +33,18 @@ class Record:
         The conversation.
     dialect
         The dialect.
-    windows
-        Whether the instrument knows windows on its record; None while that is not known.
+    known
+        What is known of this instrument.
     """
 
-    def __init__(self, talk: Conversation, dialect: Dialect, windows: bool | None) -> None:
+    def __init__(self, talk: Conversation, dialect: Dialect, known: Known) -> None:
         self._talk = talk
         self._dialect = dialect
         self._points: int | None = None
-        self.windows = windows
+        self._longest: int | None = None
+        self.data = known.data if len(dialect.data) > 1 else 0
+        """Place of the query for the samples; None while none was answered."""
+        self.windows = known.windows
         """Whether the instrument knows windows on its record."""
         self.expect = 1 << 16
         """Bytes the next reply will probably have."""
@@ -73,7 +84,15 @@ class Record:
             with contextlib.suppress(FormulaError):
                 record = int(length.record.number(fields))
         wanted = self._points or record or length.window_points
-        self._window(1, min(wanted, record or wanted), deadline)
+        if record is not None:
+            self._window(1, min(wanted, record), deadline)
+            return
+        wanted = min(wanted, self._longest or wanted)
+        for last in (wanted, *(shorter for shorter in _SHORTER if shorter < wanted)):
+            self._window(1, last, deadline)
+            if not self._talk.faults(self._dialect.errors, deadline):
+                self._longest = last
+                return
 
     def read(self, fields: dict[str, Any], deadline: float) -> Block:
         """Read the samples: one block, or windows one after the other.
@@ -90,9 +109,24 @@ class Record:
             total = int(points.number(fields))
             if total > length.window_points:
                 return self._in_windows(fields, total, length.window_points, deadline)
-        block = self._talk.ask_block(self._dialect.data, deadline, self.expect)
+        block = self._one_block(deadline)
         self.expect = len(block.payload) + _SPARE_BYTES
         return block
+
+    def _one_block(self, deadline: float) -> Block:
+        if self.data is not None:
+            return self._talk.ask_block(self._dialect.data[self.data], deadline, self.expect)
+        for place, query in enumerate(self._dialect.data):
+            brief = min(deadline, time.monotonic() + _BRIEF_S)
+            try:
+                block = self._talk.ask_block(query, brief, self.expect)
+            except SourceTimeout:
+                self._talk.step_in(deadline)
+                self._talk.faults(self._dialect.errors, deadline)
+                continue
+            self.data = place
+            return block
+        raise SourceTimeout("the instrument sends no samples in any way this dialect has")
 
     def _in_windows(self, fields: dict[str, Any], total: int, most: int, deadline: float) -> Block:
         width = int(self._dialect.codes.width.number(fields))
@@ -105,7 +139,8 @@ class Record:
             last = min(total, first + most - 1)
             self._window(first, last, deadline)
             expect = (last - first + 1) * width
-            block = self._talk.ask_block(self._dialect.data, deadline, expect + _SPARE_BYTES)
+            query = self._dialect.data[self.data or 0]
+            block = self._talk.ask_block(query, deadline, expect + _SPARE_BYTES)
             if len(block.payload) != expect:
                 raise SourceRefused(
                     f"samples {first} to {last} came as {len(block.payload)} bytes, not {expect}"

@@ -60,7 +60,7 @@ def settle(
     fields, payload
         A frame as codes.
     text
-        The same frame in volts.
+        The same frame in volts, or its last part where it was read in windows.
 
     Returns
     -------
@@ -78,10 +78,10 @@ def settle(
     least = np.inf
     for rival in rivals:
         for reading, read in _readings(rival, fields, payload):
-            if read.shape != volts.shape:
+            if read.size < volts.size:
                 continue
             # Nine tenths of the samples: marks for clipped samples are no volts.
-            misfit = float(np.quantile(np.abs(read - volts)[good], 0.9))
+            misfit = float(np.quantile(np.abs(read[-volts.size :] - volts)[good], 0.9))
             if misfit < (least if best is None else _CLEARLY * least):
                 best, least = Settled(rival, reading), misfit
     return best if least <= max(allowed, 1e-12) else None

@@ -66,7 +66,7 @@ class Speaker:
         self._known = known
         self._channel = channel
         self._optional = OptionalFields(talk, dialect, known.unanswered)
-        self._record = Record(talk, dialect, known.windows)
+        self._record = Record(talk, dialect, known)
         self._proven = known.preamble is not None
         self._averages = 1
         talk.asks_errors = known.asks_errors
@@ -76,6 +76,7 @@ class Speaker:
         """What is known of this instrument by now."""
         return self._known.changed(
             asks_errors=self.talk.asks_errors,
+            data=self._record.data,
             windows=self._record.windows,
             unanswered=tuple(sorted(self._optional.unanswered)),
         )
@@ -193,7 +194,7 @@ class Speaker:
         values = None
         if ways.accepts(self.talk, self.dialect, text, deadline):
             try:
-                self.talk.tell(self.dialect.data, deadline)
+                self.talk.tell(self.dialect.data[self._record.data or 0], deadline)
                 values = answers.numbers(self.talk.link.values(deadline, self._record.expect * 16))
             except answers.AnswerError:
                 values = None

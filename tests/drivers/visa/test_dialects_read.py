@@ -43,6 +43,7 @@ VARIETIES = {
     "descriptor, most first": ("descriptor", lambda: Descriptor(big=True)),
     "descriptor, bytes": ("descriptor", lambda: Descriptor(words=False)),
     "vdiv": ("vdiv-text", lambda: VdivText()),
+    "vdiv, asked for all": ("vdiv-text", lambda: VdivText(asked="ALL")),
     "vdiv, waits by word": ("vdiv-text", lambda: VdivText(poll="SAST?")),
     "data header": ("data-header", lambda: DataHeader()),
     "memory header": ("memory-header", lambda: MemoryHeader()),
@@ -66,6 +67,21 @@ def test_volts_and_seconds_are_those_the_instrument_meant(variety) -> None:
             assert np.abs(taken.samples - volts_of(brain)).max() <= NEAR
             assert taken.interval_s == pytest.approx(float(brain.interval), rel=NEAR)
     assert brain.armed >= 3
+
+
+@pytest.mark.parametrize("tells_depth", [True, False])
+def test_a_deep_record_is_read_through_its_window(tells_depth) -> None:
+    """Without a depth to ask for, the longest window that is not refused is read."""
+    brain = TenField("code", points=30_000, tells_depth=tells_depth)
+    with (
+        SocketServer(brain) as server,
+        open_instrument(server.resource, dialect="ten-field-code") as source,
+    ):
+        for _ in range(2):
+            taken = source.capture()
+            size = 30_000 if tells_depth else 25_000
+            assert taken.samples.size == size
+            assert np.abs(taken.samples - volts_of(brain)[:size]).max() <= NEAR
 
 
 @pytest.mark.parametrize(

@@ -35,13 +35,16 @@ class TenField(Brain):
         says_text: bool = True,
         poll: str = ":OPERegister:CONDition?",
         y_origin: str | None = None,
+        tells_depth: bool = True,
         kind: int = 0,
         seed: int = 1,
         points: int = 500,
     ) -> None:
         self.form, self.words, self.big, self.says_text = form, words, big, says_text
         self.poll = poll
+        self.tells_depth = tells_depth
         self.kind = kind
+        self.window = (1, 1200)
         self.count = 1
         self.format = 0
         self.y_increment = "0.0078125" if form == "volts" else "0.008"
@@ -83,8 +86,13 @@ class TenField(Brain):
             return b"DC"
         if forms(":ACQuire:SRATe?").fullmatch(head):
             return f"{float(1 / self.interval):.6E}".encode()
-        if forms(":ACQuire:MDEPth?").fullmatch(head) and self.form == "code":
-            return str(self.points).encode()
+        if self.form == "code":
+            depth = forms(":ACQuire:MDEPth?").fullmatch(head)
+            if depth and self.tells_depth:
+                return str(self.points).encode()
+            if forms(":WAVeform:STARt").fullmatch(head) or forms(":WAVeform:STOP").fullmatch(head):
+                self.place(head, int(argument))
+                return None
         kept = self.setting(
             head, argument, ":ACQuire:TYPE", ":ACQuire:COUNt", ":CHANnel1:SCALe", ":CHANnel1:OFFSet"
         )
@@ -94,6 +102,18 @@ class TenField(Brain):
             return None
         self.fail()
         return None
+
+    def place(self, head: str, sample: int) -> None:
+        """Set one end of the window; beyond the record is refused."""
+        first, last = self.window
+        if sample > self.points:
+            self.fail(-222)
+        else:
+            self.window = (sample, last) if "STAR" in head.upper() else (first, sample)
+
+    def seen(self) -> slice:
+        """What the window shows of the record."""
+        return slice(self.window[0] - 1, self.window[1]) if self.form == "code" else slice(None)
 
     def choose(self, word: str) -> None:
         if word == "BYTE":
@@ -110,16 +130,20 @@ class TenField(Brain):
         origin, reference = Fraction(self.y_origin), self.y_reference * self.shift
         if self.form == "code":
             origin *= self.shift
-        numbers = [self.format, self.kind, self.points, self.count, float(self.interval), -2.5e-4]
+        points = len(self.codes[self.seen()])
+        numbers = [self.format, self.kind, points, self.count, float(self.interval), -2.5e-4]
         numbers += [0, float(increment), float(origin), reference]
         return ",".join(f"{number:+.12E}" for number in map(float, numbers)) + ",0"
 
     def data(self) -> bytes:
         if self.format == 4:
-            return block(",".join(f"{float(volts):.5E}" for volts in self.meant).encode(), 8)
+            return block(
+                ",".join(f"{float(volts):.5E}" for volts in self.meant[self.seen()]).encode(), 8
+            )
         width = 2 if self.format == 1 else 1
         signed = self.form == "signed"
-        return block(packed(self.codes * self.shift, width, signed=signed, big=self.big), 9)
+        codes = self.codes[self.seen()] * self.shift
+        return block(packed(codes, width, signed=signed, big=self.big), 9)
 
 
 class KeywordCurve(Brain):
@@ -288,8 +312,8 @@ class VdivText(Brain):
 
     has_queue = False
 
-    def __init__(self, *, poll: str = "INR?", **rest: int) -> None:
-        self.poll = poll
+    def __init__(self, *, poll: str = "INR?", asked: str = "DAT2", **rest: int) -> None:
+        self.poll, self.asked = poll, asked
         self.header = True
         self.fresh = 1
         super().__init__(**rest)
@@ -322,7 +346,7 @@ class VdivText(Brain):
                 return f"{echo}1.25MSa/s".encode()
             case "C1:CPL?":
                 return f"{echo}A1M".encode()
-            case "C1:WF?":
+            case "C1:WF?" if argument.upper() == self.asked:
                 payload = packed(self.codes, 1, signed=True, big=True)
                 return f"{echo}DAT2,".encode() + block(payload, 9) + b"\n"
             case "WFSU":
