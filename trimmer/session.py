@@ -21,6 +21,7 @@ from drivers import SourceError, SourceTimeout, WaveformSource
 from trimmer.errors import BookError
 from trimmer.guidance import Guide
 from trimmer.guidance.advice import Advice, Confirm, Done
+from trimmer.guidance.latch import Latch
 from trimmer.intake import Intake, Taken, Wanted, picture, signal_at_fault
 from trimmer.keeping import Keeper
 from trimmer.measurement import MeasurementError, Reading
@@ -235,11 +236,12 @@ class Session:
 
     def _followed(self) -> Reports[Word]:
         """Read while the hand turns, until the turn counts as made or a word is said."""
+        latch = Latch()
         while True:
             if (word := self._heard(0.0)) is not None:
                 return word
             taken = yield from self._patiently(lambda: self._intake.frame())
-            word_now = self.guide.follow(taken.reading, time.monotonic())
+            word_now = latch.hold(self.guide.follow(taken.reading, time.monotonic()))
             yield Followed(
                 word_now,
                 taken.reading,
