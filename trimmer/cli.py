@@ -175,6 +175,14 @@ def build_parser() -> argparse.ArgumentParser:
         "--store", action="store_true", help="store the reading as the reference of that name"
     )
 
+    warmup = command("warmup", "watch a unit settle, and say when it is worth trimming")
+    warmup.add_argument("source", metavar="SOURCE", help=SOURCE_HELP)
+    warmup.add_argument(
+        "--cold", action="store_true", help="the simulated unit has just been switched on"
+    )
+    for add in (_output, _sheet, _reading, _bench):
+        add(warmup)
+
     sources = command("sources", "what can be read from this machine, and what each answers")
     _output(sources)
 

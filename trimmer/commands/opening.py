@@ -93,7 +93,7 @@ def opened(word: str, options: argparse.Namespace) -> Iterator[Opened]:
     word
         SOURCE.
     options
-        The command's: `channel`, `interval`, `dialect`, `set_range`, `seed`, `travel`.
+        The command's: `channel`, `interval`, `dialect`, `set_range`, `seed`, `travel`, `cold`.
     """
     with contextlib.ExitStack() as stack:
         yield _open(word, options, stack)
@@ -105,7 +105,11 @@ def _open(word: str, options: argparse.Namespace, stack: contextlib.ExitStack) -
         from drivers.bench import Bench
 
         bench = stack.enter_context(
-            Bench(options.seed, travel_turns=getattr(options, "travel", None) or 0.75)
+            Bench(
+                options.seed,
+                travel_turns=getattr(options, "travel", None) or 0.75,
+                cold=getattr(options, "cold", False),
+            )
         )
         return Opened(stack.enter_context(_instrument(bench.resource, word, options)), bench)
     if shape == "visa":
