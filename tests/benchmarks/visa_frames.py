@@ -34,6 +34,7 @@ class Ready(TenField):
     def __init__(self, points: int) -> None:
         super().__init__(points=16)
         self.points = points
+        self.codes = np.zeros(points, dtype=np.int64)  # only counted
         rng = np.random.default_rng(5)
         wave = 128 + 100 * np.sin(0.01 * np.arange(points))
         frames = [np.round(wave + rng.normal(0, 1, points)).astype("<u2") << 8 for _ in range(2)]
