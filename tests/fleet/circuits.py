@@ -22,7 +22,10 @@ NODES = 281
 class Circuit(Protocol):
     """A shaper with its component values drawn."""
 
-    rise_share: float
+    @property
+    def rise_share(self) -> float:
+        """Share of the period that the triangle spends rising."""
+        ...
 
     def curve(self, upper: float, lower: float) -> tuple[Vector, Vector, float]:
         """Give the triangle's values, the output at them, and the triangle's peak."""

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import time
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -86,6 +87,19 @@ class Play:
             self.guide.at_stop(reading) if met and tells_stop else self.guide.observe(reading)
         )
         return self.answer
+
+    def timed_step(self) -> float:
+        """Do what was asked; gives the seconds from the reading to its answer."""
+        longer = isinstance(self.answer, Confirm)
+        if not longer:
+            trim, share = self.asked()
+            self.turn(trim, share * (1.0 + self.scatter * self.rng.standard_normal()))
+        reading = self.reading(longer=longer)
+        began = time.perf_counter()
+        answer = self.guide.observe(reading, longer=longer)
+        took = time.perf_counter() - began
+        self.answers.append(answer)
+        return took
 
     def finish(self, most: int = 40) -> Done:
         """Go on to the end."""

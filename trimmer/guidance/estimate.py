@@ -15,7 +15,7 @@ from trimmer.guidance.habit import Habit, habit
 from trimmer.guidance.hand import Hand
 from trimmer.guidance.memory import KindPrior
 from trimmer.guidance.moves import Move
-from trimmer.guidance.path import Found, Walk, find_walk
+from trimmer.guidance.path import Found, Sizes, Walk, find_walk
 from trimmer.guidance.record import Record
 from trimmer.guidance.warming import WarmDrift
 
@@ -129,7 +129,8 @@ def estimate(
     scale_sigma = 0.0 if kind is None else KIND_SCALE
     walk = record.walk(hand, scale_sigma)
     start = None if before is None else _start(record, walk, before)
-    found = _general(walk, start) if kind is None else _with_kind(walk, kind, start)
+    sizes = None if before is None else before.found.sizes
+    found = _general(walk, start, sizes) if kind is None else _with_kind(walk, kind, start)
     here = np.zeros(2)
     box = _box(record, found.places)
     offsets = offsets or Offsets()
@@ -170,10 +171,10 @@ def _start(record: Record, walk: Walk, before: Estimate) -> Array:
     return np.append(steps, step)
 
 
-def _general(walk: Walk, start: Array | None) -> Found:
+def _general(walk: Walk, start: Array | None, sizes: Sizes | None) -> Found:
     """Search with nothing known of the kind."""
     prior = general_belief(walk.parts.shape[1] // 2 + 1)
-    found = find_walk(walk, prior, start, marginal=True, freedom=GENERAL_FREEDOM)
+    found = find_walk(walk, prior, start, marginal=True, freedom=GENERAL_FREEDOM, sizes=sizes)
     if start is None or found.strain < _usual_strain(walk.expected.size):
         return found
     afresh = find_walk(walk, prior, None, marginal=True, freedom=GENERAL_FREEDOM)

@@ -11,6 +11,9 @@ from trimmer.guidance.field import Array, FieldBelief, features, slopes
 
 _SHARES: Final = np.linspace(0.0, 1.0, 33)
 _ROUNDS: Final = 4
+FITS: Final = 6.0
+"""Standard deviations of misfit up to which a mistake can be called the explanation of a reading: where
+nothing fits, the field is not known well enough to accuse a hand."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -21,6 +24,8 @@ class Explained:
     """Signed movement, share of the travel."""
     sigma: float
     """Its standard deviation, were this the explanation."""
+    slip: float
+    """The movement less what was thought of it, in standard deviations."""
     misfit: float
     """Sum of squares over variances of what it leaves, the doubt of the field counted."""
     surprise: float
@@ -66,7 +71,9 @@ def explain(belief: FieldBelief, parts: Array, variance: Array, thought: Movemen
     fine, sigma = _refined(belief, parts, variance, thought, coarse)
     misfit, surprise = _surprise(belief, parts, variance, thought, np.array([coarse, fine]))
     best = int(np.argmin(surprise))
-    return Explained((coarse, fine)[best], sigma, float(misfit[best]), float(surprise[best]))
+    way = (coarse, fine)[best]
+    slip = (way - thought.expected) / thought.sigma
+    return Explained(way, sigma, slip, float(misfit[best]), float(surprise[best]))
 
 
 def _refined(
@@ -113,15 +120,21 @@ def _surprise(
     return misfit, surprise + 2.0 * np.log(thought.sigma)
 
 
+def fits(misfit: float, parts: int) -> bool:
+    """Tell whether an explanation leaves no more than chance might, roughly."""
+    return (misfit - parts) / float(np.sqrt(2.0 * parts)) < FITS
+
+
 def explain_both(
     belief: FieldBelief, parts: Array, variance: Array, start: Array
-) -> tuple[Array, Array]:
+) -> tuple[Array, Array, float]:
     """Find the movement of both trims together that best explains a reading, from a start.
 
     Returns
     -------
     tuple
-        Shape (2,), the movement; shape (2,), its standard deviations.
+        Shape (2,), the movement; shape (2,), its standard deviations; what it leaves, as a sum of
+        squares over variances.
     """
     best = start.copy()
     normal = np.eye(2)
@@ -132,4 +145,6 @@ def explain_both(
         pull = (columns * weight) @ (parts - belief.at(best))
         move = np.linalg.solve(normal, pull)
         best = best + np.clip(move, -0.1, 0.1)
-    return best, np.sqrt(np.diag(np.linalg.inv(normal)))
+    weight = 1.0 / (variance + belief.variance(best))
+    misfit = float(np.sum(weight * (parts - belief.at(best)) ** 2))
+    return best, np.sqrt(np.diag(np.linalg.inv(normal))), misfit

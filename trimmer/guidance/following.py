@@ -14,7 +14,7 @@ import numpy as np
 
 from trimmer.guidance.advice import Follow, Say
 from trimmer.guidance.aim import Aim, Box
-from trimmer.guidance.explain import Explained, Movement, explain, explain_both
+from trimmer.guidance.explain import Explained, Movement, explain, explain_both, fits
 from trimmer.guidance.field import Array, FieldBelief
 from trimmer.guidance.pace import Lag, Pace
 from trimmer.guidance.rails import excess
@@ -25,8 +25,10 @@ MOVED: Final = 5.0
 """Standard deviations by which a reading must differ from the last still one to count as moved."""
 MOVED_ALONG: Final = 4.0
 """Standard deviations along the asked trim's column, twice running, that count as moved too."""
-STILL: Final = 3.0
-"""Standard deviations within which readings are the same."""
+STILL: Final = 2.0
+"""Standard deviations within which the two halves of a pause are the same .."""
+STILL_SHARE: Final = 0.01
+""".. besides this share of the turn."""
 STILL_S: Final = 0.6
 """Readings unchanged for so long are still, seconds .."""
 PAUSE_S: Final = 1.6
@@ -123,6 +125,7 @@ class Following:
         self.place[self.trim] = asked.way
         self.odds = [*self.odds[1 - RUNNING :], asked.surprise - surprise]
         erring = self.odds[-1] > LIKELIER and sum(self.odds) > MISTAKE
+        erring = erring and fits(mistake.misfit, parts.size)
         if self.odds[-1] < 0.0:
             self.strayed = False  # the asked trim alone explains it: back again, or a false alarm
         if self.strayed and all(self.known):
@@ -154,7 +157,11 @@ class Following:
 
     def _astray(self, parts: Array, variance: Array, say: Say | None) -> Say | None:
         """Judge once the other trim has moved: both may now be off their places."""
-        self.place, sigma = explain_both(self.belief, parts, variance, self.place)
+        place, sigma, misfit = explain_both(self.belief, parts, variance, self.place)
+        if not fits(misfit, parts.size):
+            self.strayed = False
+            return None
+        self.place = place
         own, other = self.place[self.trim], self.place[1 - self.trim]
         if abs(other) > max(4.0 * float(sigma[1 - self.trim]), 0.01) and abs(other) > abs(own):
             return "wrong-trim"
@@ -227,4 +234,21 @@ class Following:
         if now - self.history[0][0] < wanted:
             return False
         recent = [s for t, s in self.history if now - t <= wanted]
-        return len(recent) >= 3 and all(excess(s, last) < STILL for s in recent[:-1])
+        return len(recent) >= 4 and not _moves_on(recent, self.base, last)
+
+
+def _moves_on(recent: list[Seen], base: Seen, last: Seen) -> bool:
+    """Whether the later half of some readings is further along than the earlier half.
+
+    Looked at along the change that the turn has made so far: in all parts together a slow movement
+    is lost in the noise.
+    """
+    size = min(base.parts.size, *(s.parts.size for s in recent))
+    half = len(recent) // 2
+    parts = np.array([s.parts[:size] for s in recent])
+    change = parts.mean(axis=0) - base.parts[:size]
+    length = float(np.linalg.norm(change))
+    along = change / length if length > 0.0 else change
+    step = float(along @ (parts[-half:].mean(axis=0) - parts[:half].mean(axis=0)))
+    noise = float(np.sqrt(2.0 / half * (along**2 @ last.variance[:size])))
+    return abs(step) > STILL * noise + STILL_SHARE * length

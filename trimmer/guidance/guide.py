@@ -160,6 +160,11 @@ class Guide:
         return self._net(-1)
 
     @property
+    def lag_s(self) -> float:
+        """The person's lag from *stop* to the hand's rest, as learned by following; seconds."""
+        return self._lag.mean_s
+
+    @property
     def best_seen(self) -> BestSeen | None:
         """The best setting read so far."""
         record = self._course.knowledge.record

@@ -103,7 +103,7 @@ def _design(moves: Sequence[Move], hand: Hand) -> tuple[Array, Array]:
             own[i] = 0.2 * hand.jitter
             continue
         asked = move.asked if move.followed is None else move.followed
-        own[i] = hand.sigma(asked)
+        own[i] = hand.sigma(asked, unseen=move.unseen)
         made = asked
         if move.stopped:
             made = 0.5 * asked

@@ -71,7 +71,14 @@ class Knowledge:
         self.notice = ""
         self.drifts, self.suspicion = 0, None
         before = self.record.here
-        move = Move(trim, asked, stopped=stopped, told=stopped, followed=seen.way)
+        move = Move(
+            trim,
+            asked,
+            stopped=stopped,
+            told=stopped,
+            unseen=not self.estimate.known[trim],
+            followed=seen.way,
+        )
         if seen.other != 0.0:
             move = self._astray(move, seen)
         self.record.add(move, one)

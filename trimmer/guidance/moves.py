@@ -18,6 +18,8 @@ class Move:
     """Whether the trim would not go further."""
     told: bool = False
     """Whether the person said so."""
+    unseen: bool = False
+    """Whether the trim's column was not known, so that nobody could tell how far it went."""
     followed: float | None = None
     """Signed share of the travel really made, as seen while it was followed."""
     extra: bool = False

@@ -58,6 +58,16 @@ class Walk:
 
 
 @dataclass(frozen=True, slots=True, eq=False)
+class Sizes:
+    """How much larger than the prior says the weights of the field are, squared."""
+
+    columns: Array
+    """Shape (m, 2)."""
+    bends: Array
+    """Shape (m,), of the curvature besides what larger columns bring with them."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
 class Found:
     """The most probable walk and the belief about the field around its last place.
 
@@ -84,6 +94,8 @@ class Found:
     cost: float
     """Minus twice the logarithm of the probability of it all, up to a constant; comparable between
     searches with the same prior and readings."""
+    sizes: Sizes | None
+    """Sizes of the weights where they were learned."""
     strain: float
     """Sum of squares over variances of the steps against what was expected of them."""
     converged: bool
@@ -98,6 +110,7 @@ def find_walk(
     *,
     marginal: bool = False,
     freedom: float | None = None,
+    sizes: Sizes | None = None,
 ) -> Found:
     """Find the most probable steps and field.
 
@@ -116,20 +129,26 @@ def find_walk(
     freedom
         How surely the prior knows the size of each part's weights, as degrees of freedom; None takes
         the sizes as they are.
+    sizes
+        Sizes learned before, to start from.
     """
     problem = _Problem(walk, prior, marginal)
+    learning = 0 if freedom is None else SIZE_ROUNDS
+    if freedom is not None and sizes is not None and sizes.bends.size == prior.mean.shape[0]:
+        problem.take_sizes(sizes, freedom)
+        learning = 1
     now = problem.at(walk.expected.copy() if start is None else start.copy())
     converged = walk.expected.size == 0
     for round_ in range(0 if converged else rounds):
-        if freedom is not None and round_ < SIZE_ROUNDS:
-            problem.learn_sizes(now, freedom)
+        if freedom is not None and round_ < learning:
+            problem.take_sizes(problem.sizes_of(now, freedom), freedom)
             now = problem.at(now.steps)
         better = problem.better(now)
         if better is None:
             break
         gained = now.cost - better.cost
         now = better
-        if gained < RESTS and (freedom is None or round_ >= SIZE_ROUNDS):
+        if gained < RESTS and round_ >= learning:
             converged = True
             break
     return problem.found(now, converged)
@@ -166,7 +185,8 @@ class _Problem:
         self.weighted_parts = self.weight * walk.parts
         self.given = np.asarray(np.linalg.inv(prior.covariance), dtype=np.float64)
         self.precision = self.given
-        self.sizes = 0.0
+        self.sizes: Sizes | None = None
+        self.sizes_cost = 0.0
         self.pull = np.einsum("kfg,kg->kf", self.given, prior.mean)
 
     def at(self, steps: Array) -> _Trial:
@@ -185,15 +205,15 @@ class _Problem:
         ) + self._strain(steps)
         cost = misfit
         if self.marginal:
-            cost += float(np.sum(np.linalg.slogdet(normal)[1])) + self.sizes
+            cost += float(np.sum(np.linalg.slogdet(normal)[1])) + self.sizes_cost
         return _Trial(steps, phi, inverse, weights, miss, misfit, cost)
 
     def _strain(self, steps: Array) -> float:
         slip = steps - self.walk.expected
         return float(slip @ self.held @ slip)
 
-    def learn_sizes(self, now: _Trial, freedom: float) -> None:
-        """Learn the sizes of columns and of curvature (one round of expectation and maximisation).
+    def sizes_of(self, now: _Trial, freedom: float) -> Sizes:
+        """Give the sizes of columns and of curvature (one round of expectation and maximisation).
 
         A column is as long as it is: its size is learned from all its crest parts together, and from
         all its skew parts together. How much a part bends is learned for each part.
@@ -205,12 +225,19 @@ class _Problem:
             columns[kind::2] = seen[kind::2, 1:3].mean(axis=0)
         grown = np.exp(np.log(columns) @ _POWERS[3:].T)
         bends = (freedom + np.sum(seen[:, 3:] / grown, axis=1)) / (freedom + grown.shape[1])
-        by = np.ones_like(seen)
+        return Sizes(columns, bends)
+
+    def take_sizes(self, sizes: Sizes, freedom: float) -> None:
+        """Widen the prior to some sizes."""
+        columns, bends = sizes.columns, sizes.bends
+        grown = np.exp(np.log(columns) @ _POWERS[3:].T)
+        by = np.ones_like(self.prior.mean)
         by[:, 1:3] = 1.0 / np.sqrt(columns)
         by[:, 3:] = 1.0 / np.sqrt(grown * bends[:, None])
         # What the prior's own normalisation and the prior on the sizes add to the cost.
-        self.sizes = -2.0 * float(np.sum(np.log(by)))
-        self.sizes += freedom * float(np.sum(1.0 / bends + np.log(bends)))
+        self.sizes = sizes
+        self.sizes_cost = -2.0 * float(np.sum(np.log(by)))
+        self.sizes_cost += freedom * float(np.sum(1.0 / bends + np.log(bends)))
         self.precision = self.given * by[:, :, None] * by[:, None, :]
         self.pull = np.einsum("kfg,kg->kf", self.precision, self.prior.mean)
 
@@ -272,5 +299,6 @@ class _Problem:
             misfit=now.misfit,
             cost=now.cost,
             strain=self._strain(now.steps),
+            sizes=self.sizes,
             converged=converged,
         )

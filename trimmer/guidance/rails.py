@@ -10,7 +10,7 @@ from typing import Final
 import numpy as np
 
 from trimmer.guidance.estimate import Estimate
-from trimmer.guidance.explain import Explained, Movement, explain
+from trimmer.guidance.explain import Explained, Movement, explain, fits
 from trimmer.guidance.field import Array
 from trimmer.guidance.general import column_scale
 from trimmer.guidance.habit import expected_moves
@@ -119,14 +119,22 @@ def look_into(before: Estimate, moves: Sequence[Move], hand: Hand, after: Seen) 
     if last.dead or after.parts.size < size:
         return Finding(Verdict.AS_ASKED, last)
     asked = _explained(before, moves, hand, after, last)
+    if _plain(asked, size):
+        return Finding(Verdict.AS_ASKED, last)
     best, found = asked.surprise, Finding(Verdict.AS_ASKED, last)
     for verdict, move in _mistakes(last, before):
-        surprise = _explained(before, moves, hand, after, move).surprise + MISTAKE
-        if surprise < best:
-            best, found = surprise, Finding(verdict, move)
+        mistake = _explained(before, moves, hand, after, move)
+        if mistake.surprise + MISTAKE < best and fits(mistake.misfit, size):
+            best, found = mistake.surprise + MISTAKE, Finding(verdict, move)
     if found.verdict is Verdict.AS_ASKED and _strange(asked, size):
         return Finding(Verdict.STRANGE, last)
     return found
+
+
+def _plain(asked: Explained, size: int) -> bool:
+    """Whether the turn asked for explains the reading so well that nothing else need be thought of."""
+    left = (asked.misfit - size) / float(np.sqrt(2.0 * size))
+    return left < CHANCE and abs(asked.slip) < CHANCE
 
 
 def _strange(asked: Explained, size: int) -> bool:
