@@ -183,6 +183,12 @@ def build_parser() -> argparse.ArgumentParser:
     for add in (_output, _sheet, _reading, _bench):
         add(warmup)
 
+    survey = command("survey", "check the set unit over its frequency range, following the dial")
+    survey.add_argument("source", metavar="SOURCE", help=SOURCE_HELP)
+    _survey(survey)
+    for add in (_output, _sheet, _reading, _bench):
+        add(survey)
+
     sources = command("sources", "what can be read from this machine, and what each answers")
     _output(sources)
 
@@ -204,6 +210,24 @@ def build_parser() -> argparse.ArgumentParser:
     log = command("log", "the bench book: list, show, export, import")
     _log(log)
     return parser
+
+
+def _survey(parser: argparse.ArgumentParser) -> None:
+    group = parser.add_argument_group("survey")
+    group.add_argument("--from", metavar="HZ", type=positive, default=47.0, help="lowest (47)")
+    group.add_argument("--to", metavar="HZ", type=positive, default=18e3, help="highest (18000)")
+    group.add_argument("--points", metavar="N", type=count, default=7, help="how many (7)")
+    group.add_argument("--limit-thd", metavar="RATIO", type=positive, help="largest THD allowed")
+    group.add_argument(
+        "--limit-symmetry", metavar="SHARE", type=positive, help="largest rise share off one half"
+    )
+    group.add_argument("--limit-offset", metavar="VOLTS", type=positive, help="largest offset")
+    group.add_argument(
+        "--limit-flatness", metavar="RATIO", type=positive, help="largest change of amplitude"
+    )
+    group.add_argument(
+        "--keep-limits", action="store_true", help="keep these limits for the kind, in the book"
+    )
 
 
 def _log(parser: argparse.ArgumentParser) -> None:

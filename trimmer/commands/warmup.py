@@ -16,6 +16,7 @@ from drivers import SourceInfo
 from trimmer.book import Book, RecordStart, open_book
 from trimmer.book.readings import reading_document
 from trimmer.commands.chain import reference_of
+from trimmer.commands.kinds import kind_of, warm_ups_of
 from trimmer.commands.measure import wanted
 from trimmer.commands.opening import opened, shape_of
 from trimmer.commands.watching import GivenUp, Inbox, Left, Lines, Watch
@@ -27,7 +28,7 @@ from trimmer.guidance.warming import Warming
 from trimmer.intake import Taken
 from trimmer.measurement import MeasurementError, Reading, combine
 from trimmer.measurement.reading import Interval
-from trimmer.upkeep.drift import Usual, compared, course_document, course_from, course_of
+from trimmer.upkeep.drift import Usual, compared, course_document, course_of
 from trimmer.upkeep.settling import Settling, settle
 
 LEAST_WINDOW_S = 0.5
@@ -42,8 +43,6 @@ SAY_SHARE = 0.06
 """later at this share of the time since the beginning,"""
 SAY_MOST_S = 30.0
 """but at least this often."""
-EARLIER = 50
-"""Earlier warm-ups of the kind that are looked at."""
 
 
 def run(options: argparse.Namespace) -> int:
@@ -230,20 +229,6 @@ def minutes_noted(options: argparse.Namespace) -> float:
             f"{said!r} is no number of minutes since switch-on", "Write it as `--note minutes=3`."
         )
     return minutes
-
-
-def kind_of(book: Book, options: argparse.Namespace) -> str:
-    """Give the kind that was said, else the unit's last one, else none."""
-    kind = options.kind or (book.kind_of(options.unit) if options.unit else "")
-    return kind or ""
-
-
-def warm_ups_of(book: Book, kind: str) -> list[Warming]:
-    """Give the courses of a kind's settled warm-ups, newest first."""
-    if not kind:
-        return []
-    found = book.records("warmup", kind=kind, limit=EARLIER)
-    return [course_from(each.document["course"]) for each in found if "course" in each.document]
 
 
 def settling_document(state: Settling) -> dict[str, Any]:
