@@ -189,6 +189,11 @@ def build_parser() -> argparse.ArgumentParser:
     for add in (_output, _sheet, _reading, _bench):
         add(survey)
 
+    recheck = command("recheck", "compare a unit with its logged sheet")
+    recheck.add_argument("source", metavar="SOURCE", help=SOURCE_HELP)
+    for add in (_output, _sheet, _reading, _bench):
+        add(recheck)
+
     sources = command("sources", "what can be read from this machine, and what each answers")
     _output(sources)
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 import argparse
 
 from trimmer.book import Book
+from trimmer.errors import CommandError
 from trimmer.guidance import Learned
 from trimmer.guidance.warming import Warming
 from trimmer.upkeep.drift import course_from
@@ -34,3 +35,25 @@ def warm_ups_of(book: Book, kind: str) -> list[Warming]:
         return []
     found = book.records("warmup", kind=kind, limit=EARLIER)
     return [course_from(each.document["course"]) for each in found if "course" in each.document]
+
+
+def minutes_noted(options: argparse.Namespace) -> float | None:
+    """Give the minutes since switch-on that the person noted; None where nothing was.
+
+    Raises
+    ------
+    CommandError
+        What was noted is no number of minutes.
+    """
+    said = dict(options.note).get("minutes")
+    if said is None:
+        return None
+    try:
+        minutes = float(said)
+    except ValueError:
+        minutes = -1.0
+    if not 0.0 <= minutes < 1e5:
+        raise CommandError(
+            f"{said!r} is no number of minutes since switch-on", "Write it as `--note minutes=3`."
+        )
+    return minutes

@@ -16,7 +16,7 @@ from drivers import SourceInfo
 from trimmer.book import Book, RecordStart, open_book
 from trimmer.book.readings import reading_document
 from trimmer.commands.chain import reference_of
-from trimmer.commands.kinds import kind_of, warm_ups_of
+from trimmer.commands.kinds import kind_of, minutes_noted, warm_ups_of
 from trimmer.commands.measure import wanted
 from trimmer.commands.opening import opened, shape_of
 from trimmer.commands.watching import GivenUp, Inbox, Left, Lines, Watch
@@ -128,7 +128,7 @@ class Warmup:
         GivenUp
             The source or signal was lost for good.
         """
-        offset = minutes_noted(self.options)
+        offset = minutes_noted(self.options) or 0.0
         self.kind = kind_of(self.book, self.options)
         self._earlier = warm_ups_of(self.book, self.kind)
         began, said = None, -SAY_MOST_S
@@ -215,20 +215,6 @@ class Warmup:
             source=info.name,
             document={"identity": info.identity, "notes": dict(self.options.note)},
         )
-
-
-def minutes_noted(options: argparse.Namespace) -> float:
-    """Give the minutes since switch-on that the person noted; 0 where none."""
-    said = dict(options.note).get("minutes", "0")
-    try:
-        minutes = float(said)
-    except ValueError:
-        minutes = -1.0
-    if not 0.0 <= minutes < 1e5:
-        raise CommandError(
-            f"{said!r} is no number of minutes since switch-on", "Write it as `--note minutes=3`."
-        )
-    return minutes
 
 
 def settling_document(state: Settling) -> dict[str, Any]:
