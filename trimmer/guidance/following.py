@@ -31,13 +31,15 @@ STILL_SHARE: Final = 0.01
 """.. besides this share of the turn."""
 STILL_S: Final = 0.6
 """Readings unchanged for so long are still, seconds .."""
+SLACK_S: Final = 0.05
+"""Readings come a little early or late."""
 PAUSE_S: Final = 1.6
 """.. but on the way, a pause this long."""
 NEAR: Final = 0.8
 """Share of the way from which on the hand is no longer on the way."""
-MISTAKE: Final = 20.0
+MISTAKE: Final = 16.0
 """How much better, over the last few readings together, a mistake must explain what is read."""
-LIKELIER: Final = 6.0
+LIKELIER: Final = 5.0
 """How much better it must explain the last one."""
 RUNNING: Final = 3
 """The last few readings."""
@@ -73,6 +75,8 @@ class Following:
     known: tuple[bool, bool]
     lag: Lag
     moved: bool = False
+    moved_s: float | None = None
+    """When the movement was first seen."""
     strayed: bool = False
     """Whether the other trim was seen to move."""
     running: int = 0
@@ -231,7 +235,9 @@ class Following:
         on_the_way = share is not None and share < NEAR
         wanted = PAUSE_S if on_the_way else STILL_S
         now, last = self.history[-1]
-        if now - self.history[0][0] < wanted:
+        if self.moved_s is None:
+            self.moved_s = now
+        if now - self.moved_s < wanted - SLACK_S:
             return False
         recent = [s for t, s in self.history if now - t <= wanted]
         return len(recent) >= 4 and not _moves_on(recent, self.base, last)
