@@ -7,7 +7,10 @@ import time
 from datetime import UTC, datetime
 from typing import Any
 
-from drivers import SourceInfo
+import numpy as np
+from numpy.typing import NDArray
+
+from drivers import SourceInfo, Waveform
 from trimmer.book import Book, RecordStart, Sheet, SheetFilter, open_book
 from trimmer.book.readings import advice_document, reading_document
 from trimmer.commands.chain import reference_of
@@ -31,6 +34,10 @@ FRAMES = 4
 """Captures combined at first,"""
 MORE_FRAMES = 24
 """and so many more where they may tell."""
+SAME_STEP = 0.01
+"""Steps between codes that differ by less, relative, are of one range."""
+MOST_CODES = 20_000
+"""More steps than this are no codes."""
 
 
 def run(options: argparse.Namespace) -> int:
@@ -48,13 +55,13 @@ def run(options: argparse.Namespace) -> int:
             watch = Watch(source.source, asked, inbox, signal_patience_s=DIALLING_S)
             dial = SimulatedDial(source.bench, source.bench.seed) if source.bench else None
             try:
-                same = same_input(source.source.info, sheet)
-                taken = reading_at(watch, logged, lines, dial, same=same)
+                taken = reading_at(watch, sheet, logged, lines, dial)
             except Left:
                 return 0
             except GivenUp as lost:
                 complain(lost, lost.remedy)
                 return lost.exit_status
+            same = same_input(source.source.info, taken.waveform, sheet)
             return told(book, options, lines, taken, sheet, logged, same=same)
 
 
@@ -76,16 +83,34 @@ def logged_sheet(book: Book, unit: str) -> tuple[Sheet, Reading]:
     )
 
 
-def same_input(info: SourceInfo, sheet: Sheet) -> bool:
-    """Say whether what the input itself adds is the same as when the sheet was made."""
+def same_input(info: SourceInfo, waveform: Waveform, sheet: Sheet) -> bool:
+    """Say whether what the input itself adds is the same as when the sheet was made.
+
+    That needs the same instrument, channel and range. A sheet keeps the samples of its captures, and
+    the range shows in them as the step between neighbouring codes.
+    """
     start = sheet.start
-    ranges = {key: value for key, value in info.settings.items() if "rate" not in key.lower()}
-    then = {key: value for key, value in start.settings.items() if "rate" not in key.lower()}
-    return (info.identity, info.dialect, ranges) == (start.identity, start.dialect, then)
+    if (info.identity, info.dialect) != (start.identity, start.dialect):
+        return False
+    if info.settings.get("channel") != start.settings.get("channel"):
+        return False
+    kept = [turn.waveform for turn in sheet.turns if turn.waveform is not None]
+    if not kept:
+        return False
+    then, now = code_step(kept[-1]), code_step(waveform.samples)
+    return then is not None and now is not None and abs(now / then - 1.0) < SAME_STEP
+
+
+def code_step(samples: NDArray[np.float64]) -> float | None:
+    """Give the step between neighbouring codes; None where the samples show none."""
+    steps = np.diff(np.unique(np.round(samples, 9)))
+    if steps.size < 8 or steps.size > MOST_CODES:
+        return None
+    return float(np.median(steps))
 
 
 def reading_at(
-    watch: Watch, logged: Reading, lines: Lines, dial: SimulatedDial | None, *, same: bool
+    watch: Watch, sheet: Sheet, logged: Reading, lines: Lines, dial: SimulatedDial | None
 ) -> Taken:
     """Read at the sheet's frequency, once the dial is there and still; longer where that may tell.
 
@@ -123,17 +148,20 @@ def reading_at(
         elif watch.source.info.finite or watch.paced:
             return frame
         elif not still.moved(time.monotonic(), now.fundamental_hz, now.fundamental_sigma_hz):
-            taken = longer(watch, logged, same=same)
+            taken = longer(watch, sheet, logged)
             if taken is not None:
                 return taken
         if dial is not None and asked:
             dial.step()
 
 
-def longer(watch: Watch, logged: Reading, *, same: bool) -> Taken | None:
+def longer(watch: Watch, sheet: Sheet, logged: Reading) -> Taken | None:
     """Read a unit that stands still, and on where it is doubtful whether anything changed."""
     first = watch.still(FRAMES)
-    if first is None or not is_doubtful(changes(first.reading, logged, same_input=same)):
+    if first is None:
+        return None
+    same = same_input(watch.source.info, first.waveform, sheet)
+    if not is_doubtful(changes(first.reading, logged, same_input=same)):
         return first
     more = watch.still(MORE_FRAMES)
     if more is None:
@@ -160,6 +188,7 @@ def told(
         learned=learned_of(book, options.unit),
         warm_ups=warm_ups_of(book, kind),
         minutes=minutes_noted(options),
+        last={turn.advice.trim: turn.advice.sense for turn in sheet.turns if turn.advice},
     )
     waveform = taken.waveform
     start = RecordStart(

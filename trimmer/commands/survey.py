@@ -153,6 +153,8 @@ class Survey:
         GivenUp
             The source or signal was lost for good.
         """
+        if self.watch.paced:  # nothing is seen before the first file
+            yield self._ask(self.way.next_hz(), None)
         while self.way.left:
             if self.watch.inbox.heard() == "skip" and self._asked is not None:
                 self.way.taken(self._asked)
@@ -188,7 +190,7 @@ class Survey:
             self.book.finish_record(self.record, found.verdict, {"version": 1, **event})
         return event
 
-    def _ask(self, towards: float, hertz: float) -> Event:
+    def _ask(self, towards: float, hertz: float | None) -> Event:
         self._asked = towards
         if self.dial is not None:
             self.dial.towards(towards)
@@ -297,16 +299,20 @@ def survey_lines(event: Event) -> list[str]:
     """Write a survey's event as lines."""
     match event["event"]:
         case "dial":
-            way = "up" if event["towards_hz"] > event["now_hz"] else "down"
-            left = event["left"]
-            return [
-                f"TURN THE DIAL {way.upper()} to {dialled(event['towards_hz'])} "
-                f"(it stands at {dialled(event['now_hz'])}; {left} point{'s' * (left > 1)} to go)."
-            ]
+            return [_dial_line(event)]
         case "reading":
             return [_point_line(event)]
         case _:
             return _result_lines(event)
+
+
+def _dial_line(event: dict[str, Any]) -> str:
+    towards, now, left = event["towards_hz"], event["now_hz"], event["left"]
+    to_go = f"{left} point{'s' * (left > 1)} to go"
+    if now is None:
+        return f"TURN THE DIAL to {dialled(towards)} and save a capture ({to_go})."
+    way = "UP" if towards > now else "DOWN"
+    return f"TURN THE DIAL {way} to {dialled(towards)} (it stands at {dialled(now)}; {to_go})."
 
 
 def _point_line(event: dict[str, Any]) -> str:

@@ -3,20 +3,20 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Final, Literal
 
 import numpy as np
 
 from trimmer.guidance import Learned
-from trimmer.guidance.advice import Advice
+from trimmer.guidance.advice import Advice, Sense, Trim
 from trimmer.guidance.warming import WarmDrift, Warming
 from trimmer.measurement import cut_to
 from trimmer.measurement.reading import Reading
 from trimmer.upkeep.changes import Change, changes, is_called
 from trimmer.upkeep.drift import LEAST_SPREAD
-from trimmer.upkeep.retrim import Retrim, retrim
+from trimmer.upkeep.retrim import NO_TURNS, Retrim, retrim
 
 Verdict = Literal["holds", "drifted", "retrim"]
 
@@ -60,6 +60,7 @@ def rechecked(
     learned: Learned | None = None,
     warm_ups: Sequence[Warming] = (),
     minutes: float | None = None,
+    last: Mapping[Trim, Sense] = NO_TURNS,
 ) -> Recheck:
     """Hold a reading against the logged one.
 
@@ -75,6 +76,8 @@ def rechecked(
         Earlier warm-ups of the kind.
     minutes
         Minutes since switch-on, where they are known.
+    last
+        Which way each trim was turned last, as far as it is known.
     """
     found = changes(now, logged, same_input=same_input)
     thds = (now.thd.value, logged.thd.value)
@@ -88,7 +91,7 @@ def rechecked(
         )
         return Recheck("drifted", found, *thds, (), warming, reason)
     if learned is not None:
-        plan = retrim(now, learned)
+        plan = retrim(now, learned, last)
         if _worth(now, plan):
             reason = "It has changed, and its trims can take most of that back."
             return Recheck("retrim", found, *thds, plan.advice, None, reason)

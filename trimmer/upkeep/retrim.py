@@ -3,13 +3,15 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Mapping
 from dataclasses import dataclass
+from types import MappingProxyType
 from typing import Final
 
 import numpy as np
 
 from trimmer.guidance import Learned
-from trimmer.guidance.advice import Advice, Trim
+from trimmer.guidance.advice import Advice, Sense, Trim
 from trimmer.guidance.field import features, slopes
 from trimmer.guidance.hand import hand_for
 from trimmer.measurement import cut_to
@@ -21,6 +23,7 @@ WITHIN: Final = 0.35
 ASTRAY: Final = 3e-4
 """How far a part may have moved by ageing alone, ratio."""
 ROUNDS: Final = 25
+NO_TURNS: Final[Mapping[Trim, Sense]] = MappingProxyType({})
 TRIMS: Final[tuple[Trim, Trim]] = ("upper", "lower")
 
 
@@ -34,7 +37,7 @@ class Retrim:
     """One turn for each trim that is worth turning, the more effective first; empty for none."""
 
 
-def retrim(now: Reading, learned: Learned) -> Retrim:
+def retrim(now: Reading, learned: Learned, last: Mapping[Trim, Sense] = NO_TURNS) -> Retrim:
     """Find the turns from a reading to the least THD.
 
     Where the trims stand is found first, as the setting at which the learned response comes nearest to
@@ -46,6 +49,9 @@ def retrim(now: Reading, learned: Learned) -> Retrim:
         The reading, at the frequency where the response was learned.
     learned
         What the unit taught, around its best setting.
+    last
+        Which way each trim was turned last, as far as it is known: a turn the other way loses the play
+        of the screw, and is made longer by what is usual.
     """
     orders = min(now.orders, learned.orders)
     reading = cut_to(now, orders)
@@ -72,9 +78,17 @@ def retrim(now: Reading, learned: Learned) -> Retrim:
     for i in due:
         at = _with(at, i, float(best[i]))
         after = thd_at(at)
-        advice.append(_advice(TRIMS[i], float(turns[i]), after, before, thd_at(best)))
+        turn = float(turns[i])
+        if TRIMS[i] in last and last[TRIMS[i]] != sense_of(turn):
+            turn += math.copysign(hand.backlash * learned.travel_turns, turn)
+        advice.append(_advice(TRIMS[i], turn, after, before, thd_at(best)))
         before = after
     return Retrim(thd_at(at), tuple(advice))
+
+
+def sense_of(turns: float) -> Sense:
+    """Give the sense of a turn; plus is clockwise."""
+    return "clockwise" if turns > 0.0 else "counter-clockwise"
 
 
 def _aged(orders: int) -> Array:
@@ -118,7 +132,7 @@ def _advice(trim: Trim, turns: float, after: float, before: float, floor: float)
     return Advice(
         turn=0,
         trim=trim,
-        sense="clockwise" if turns > 0.0 else "counter-clockwise",
+        sense=sense_of(turns),
         turns=abs(turns),
         expected_thd=after,
         floor_thd=floor,
