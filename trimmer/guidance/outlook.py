@@ -24,10 +24,13 @@ CLOSE_SHARE: Final = 0.015
 """A setting is there when THD is within this share of the floor .."""
 CLOSE_THD: Final = 6e-5
 """.. or this much THD of it, whichever is more."""
-GOOD_SHARE: Final = 0.03
+GOOD_SHARE: Final = 0.022
 """A setting is good enough to be left where only luck would better it within this share .."""
-GOOD_THD: Final = 1.2e-4
-""".. or this much THD."""
+GOOD_THD: Final = 1.0e-4
+""".. or this much THD. A blind hand leaves it then even where a little might be gained: what is left is
+less than such a hand sets on purpose."""
+SURELY: Final = 3.0
+"""How many times over what is not known of the best setting must fit into that too."""
 CLEARLY: Final = 0.9
 """A turn gains clearly when it leaves less than this share of the squared THD over the floor's."""
 FAIR_CHANCE: Final = 0.25
@@ -167,7 +170,11 @@ class Outlook:
         energy = self._energy(ends)
         chance, rest = self._one_more(ends, energy)
         now = float(self._energy(self.away)) + self._lost()
+        good = self._radius2(GOOD_SHARE, GOOD_THD)
+        surely = float(self._energy(self.away)) + SURELY * self._lost() <= good
+        if surely and self.hand.scatter > self.hand.unseen_scatter:
+            return False
         if float(chances @ np.minimum(energy, rest)) < CLEARLY * now:
             return True
         soon = float(chances @ np.where(energy <= self.radius2, 1.0, chance))
-        return now > self._radius2(GOOD_SHARE, GOOD_THD) and soon > FAIR_CHANCE
+        return now > good and soon > FAIR_CHANCE
