@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from drivers.contract import UnusableCapture, clean
-from drivers.files.cells import parse_cell
+from drivers.files.cells import is_date, parse_cell
 from drivers.files.layout import NO_ROWS, Layout, split
 from drivers.files.rows import BLANK, DATA, Rows, read_rows
 from drivers.files.text import Text
@@ -66,6 +66,7 @@ def read_block(text: Text, layout: Layout) -> Block:
     gaps = 0 if len(body) > 1.8 * len(kept) else len(body) - len(kept)
     header = [_header_cells(line, layout) for line in lines[:first] if line.strip()]
     below = [line for line in lines[last + 1 :] if line.strip()]
+    _refuse_numbers_above(header, layout)
     block = Block(header, _beside(kept, layout), numbers, kept, rows.units, gaps)
     return _trimmed(block, layout, below, text.ended)
 
@@ -88,6 +89,19 @@ def _longest_run(rows: Rows, lines: list[str]) -> NDArray[np.intp]:
             "Save one capture, one segment, to a file; remove what stands between the numbers.",
         )
     return np.asarray(filled[starts[order[0]] : ends[order[0]]])
+
+
+def _refuse_numbers_above(header: list[list[str]], layout: Layout) -> None:
+    """Refuse to drop rows of numbers that only have another count: what parts them is in doubt."""
+    last = header[-1] if header else []
+    filled = [cell for cell in last if cell]
+    if min(len(filled), len(layout.columns)) < 2 or any(map(is_date, filled)):
+        return
+    if all(parse_cell(cell, layout.convention) for cell in filled):
+        raise UnusableCapture(
+            f"the rows of numbers do not all have the same count: {clean(' '.join(last), 60)!r}",
+            "Save with semicolons or tabs between the columns, and no blanks in numbers.",
+        )
 
 
 def _header_cells(line: str, layout: Layout) -> list[str]:

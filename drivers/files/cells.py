@@ -39,6 +39,8 @@ class Convention:
     """The decimal mark."""
     thousands: str = ""
     """The mark between groups of three digits, besides blanks; empty for none."""
+    doubtful: bool = False
+    """True where every number could be read either way, as 1,234 can."""
 
 
 @dataclass(frozen=True, slots=True)

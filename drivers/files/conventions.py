@@ -10,8 +10,9 @@ from drivers.files.cells import NUMBER, Convention, is_date, plain_digits
 def find_convention(columns: Iterable[Iterable[str]]) -> Convention | None:
     """Find the decimal mark from the numbers themselves.
 
-    A sine passes through zero, so that a column of grouped numbers has ungrouped ones among them; a
-    comma in every number of a column is a decimal mark.
+    A column of grouped numbers has ungrouped ones among them, where the sine passes through zero,
+    and none that begin with `0,`. Without either it stays in doubt. A point in every number is a
+    decimal mark.
 
     Parameters
     ----------
@@ -65,8 +66,12 @@ def _one_mark(mark: str, bodies: list[str]) -> Convention | None:
     """Settle columns whose numbers show only commas, or only points."""
     if any(body.count(mark) > 1 for body in bodies):
         return _chosen(_other(mark), bodies)
-    if mark == ".":
-        return Convention()
     whole = [body for body in bodies if mark not in body]
-    grouped = whole and all(len(body) <= 3 for body in whole) and _fits(",", ".", bodies)
-    return Convention(".", ",") if grouped else Convention(",")
+    small = all(len(body) <= 3 for body in whole)
+    if not _fits(mark, _other(mark), bodies):
+        return Convention(mark)
+    if mark == ".":
+        return Convention(mark, doubtful=bool(whole) and small)
+    if not whole:
+        return Convention(mark, doubtful=True)
+    return Convention(_other(mark), mark) if small else Convention(mark)

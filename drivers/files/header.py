@@ -9,7 +9,7 @@ from drivers.contract import UnusableCapture, clean
 from drivers.files.block import Block
 from drivers.files.cells import is_date, parse_cell
 from drivers.files.facts import Fact, collect
-from drivers.files.layout import Layout
+from drivers.files.layout import AMBIGUOUS, Layout
 from drivers.files.units import Unit, parse_unit, unit_in_name
 from drivers.files.vocabulary import (
     CODE_NAMES,
@@ -154,6 +154,7 @@ def _name_rows(rows: list[list[str]], layout: Layout) -> tuple[dict[int, str], d
         _refuse_lost_units(rows)
         return {}, {}
     last = above[-1]
+    _refuse_too_few(rows[-1], layout)
     if _is_units(last) or (len(above) > 1 and _has_units(last)):
         same_kind = len(above) > 1 and len(above[-2]) == len(last)
         return (above[-2] if same_kind else last), last
@@ -169,6 +170,15 @@ def _refuse_lost_units(rows: list[list[str]]) -> None:
             f"the line above the numbers, {clean(line, 60)!r}, has another count of names than "
             "there are columns",
             "Save with tabs, semicolons or commas between the columns.",
+        )
+
+
+def _refuse_too_few(row: list[str], layout: Layout) -> None:
+    """Refuse commas that make more columns than there are names: some may be decimal marks."""
+    if layout.delimiter == "," and 1 < len(row) < layout.width:
+        raise UnusableCapture(
+            f"there are {len(row)} names for {layout.width} columns: some commas may mark decimals",
+            AMBIGUOUS,
         )
 
 

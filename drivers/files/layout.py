@@ -32,6 +32,7 @@ SAMPLE_ROWS = 120
 FRONT = 8192
 """Characters of a line looked at to find the layout."""
 NO_ROWS = "Save the capture as rows of numbers, one row for each instant."
+_BLANKS = re.compile(r"[ \t]+")
 _FRACTION = re.compile(r"^(\d+)([eE][+-]?\d+)?(?:\s*[^\d\s.,+-][^\d.,]*)?$")
 AMBIGUOUS = "Save with a point as decimal mark, or with semicolons or tabs between the columns."
 
@@ -89,6 +90,8 @@ def split(line: str, delimiter: str | None) -> list[str]:
             cells = line.split(delimiter)
         if delimiter is None:
             cells = [cell for cell in cells if cell]
+    elif delimiter is None and not line.isascii():
+        cells = _BLANKS.split(line.strip(" \t"))  # a no-break space does not part columns
     else:
         cells = line.split(delimiter)
     return [cell.strip() for cell in cells]
@@ -113,10 +116,21 @@ def find_layout(text: Text) -> Layout:
         raise UnusableCapture("the file is empty", NO_ROWS)
     tried = [text.delimiter] if text.delimiter else list(DELIMITERS)
     tallies = [tally for mark in tried if (tally := _tally(sample, mark))]
-    best = max(tallies, key=lambda tally: (round(tally.score, 2), len(tally.shape)), default=None)
+    best = max(tallies, key=_merit, default=None)
     if best is None or best.score == 0.0:
         raise UnusableCapture("no rows of numbers were found in the file", NO_ROWS)
-    return _layout(_without_joined_commas(best, tallies, text.lines[:100]))
+    best = _without_joined_commas(best, tallies, text.lines[:100])
+    if best.convention.doubtful:
+        raise UnusableCapture(
+            "every mark stands before three digits: it may mark decimals or thousands", AMBIGUOUS
+        )
+    return _layout(best)
+
+
+def _merit(tally: _Tally) -> tuple[float, bool, int]:
+    """Rank a reading: what it explains, then a mark over blanks, which may part thousands too."""
+    count = len(tally.shape)
+    return round(tally.score, 2), tally.delimiter is not None and count > 1, count
 
 
 def _sample(lines: list[str]) -> list[str]:
@@ -214,8 +228,8 @@ def _could_be_pairs(rows: list[list[str]]) -> bool:
             or not all(map(_FRACTION.match, row[1::2]))
         ):
             return False
-    counts = all(int(below[0]) == int(row[0]) + 1 for row, below in pairwise(rows))
-    return not counts
+    first = [int("".join(row[0].split())) for row in rows]
+    return any(below != above + 1 for above, below in pairwise(first))
 
 
 def _count_names(head: list[str]) -> int:
@@ -239,4 +253,4 @@ def _decimal_pair(whole: str, fraction: str) -> bool:
 
 
 def _whole(cell: str) -> bool:
-    return cell.lstrip("+-").isdigit()
+    return "".join(cell.lstrip("+-").split()).isdigit()

@@ -152,7 +152,9 @@ def _time_form(plan: Plan) -> str:
 
 def _printed(values: np.ndarray, plan: Plan) -> list[str]:
     size = plan.peak_v / scales(plan)[1]
-    decimals = max(0, plan.digits - int(np.floor(np.log10(size))))
+    # 17.229 for seventeen thousand looks like any other decimal: nothing could tell.
+    least = 1 if plan.grouped == "mark" else 0
+    decimals = max(least, plan.digits - int(np.floor(np.log10(size))))
     if plan.form != "f":
         printed = cells(values, f".{plan.digits}{plan.form}")
     elif plan.grouped == "mark":
@@ -175,13 +177,14 @@ def is_doubtful(plan: Plan) -> bool:
     printed_groups = plan.form == "f" and bool(plan.grouped)
     groups_part = printed_groups and (
         (plan.grouped == "mark" and not plan.decimal_comma and plan.mark == ",")
-        or (plan.grouped != "mark" and plan.mark == " ")
+        or (plan.grouped != "mark" and (plan.mark == " " or plan.channels == 1))
     )
     commas_twice = plan.decimal_comma and plan.mark == ","
     nameless = plan.names == "none" and plan.channels > 1 and plan.channel == 0
+    three = plan.form == "f" and (plan.decimal_comma or plan.grouped == "mark")
     # The only comma of a file of whole numbers may be in an overrange mark that no sample shows.
     hidden = plan.decimal_comma and bool(plan.over)
-    return ((commas_twice or groups_part) and not plan.quoted) or nameless or hidden
+    return ((commas_twice or groups_part) and not plan.quoted) or nameless or hidden or three
 
 
 def judge(plan: Plan) -> str:

@@ -100,6 +100,10 @@ REFUSALS = {
         "dt,1e-6\nA,B\n" + rows(*[map(str, abs(CODES))] * 4),
         "may part the columns or mark decimals",
     ),
+    "thousands_or_decimals": (
+        "dt;1e-6\n" + "".join(f"{2 + n % 3},{n % 1000:03d}\n" for n in range(300)),
+        "decimals or thousands",
+    ),
     "mixed_units": (
         HEAD + rows(TIMES, [f"{c} {'V' if n % 2 else 'A'}" for n, c in enumerate(VOLTS)]),
         "mixes units",
