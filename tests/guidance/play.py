@@ -75,6 +75,15 @@ class Play:
         share = sense * self.answer.turns / self.guide.travel_turns
         return (0 if self.answer.trim == "upper" else 1), share
 
+    @property
+    def asked_last(self) -> tuple[int, float]:
+        """The turn asked for before the last answer."""
+        last, self.answers = self.answers[-1], self.answers[:-1]
+        try:
+            return self.asked()
+        finally:
+            self.answers.append(last)
+
     def step(self, *, tells_stop: bool = True) -> Answer:
         """Do what was asked: a longer reading or a turn."""
         if isinstance(self.answer, Confirm):

@@ -61,7 +61,8 @@ def floor_at(found: Found, best: Array, last: Seen) -> tuple[float, float]:
     doubt += float(shared @ found.steps_covariance @ shared)
     # Of a square with noise in all its parts: 4 a'Ca + 2 tr C^2. Where the bend is not known yet, all
     # of the doubt may lie on one side: it only ever makes a length longer.
-    longer = float(trust @ (own - np.minimum(own, last.variance[:size])))
+    outside = 1.0 - np.sum(tangent**2, axis=1)
+    longer = float((trust * outside) @ (own - np.minimum(own, last.variance[:size])))
     variance = 4.0 * doubt + 2.0 * float(noise @ noise) + longer**2
     length = max(float(np.sqrt(square)), (2.0 * float(noise @ noise)) ** 0.25)
     return float(np.sqrt(square)), float(np.sqrt(variance)) / (2.0 * length)

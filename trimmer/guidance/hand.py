@@ -14,7 +14,7 @@ BLIND: Final = (0.15, 1.5)
 """Scatter of a turn made by what was said: relative, and degrees of a single-turn screw."""
 FOLLOWED: Final = (0.03, 0.7)
 """The same of a turn made until told to stop."""
-UNSEEN: Final = 0.08
+UNSEEN: Final = 0.05
 """Relative scatter of a careful turn that cannot be followed, in between the two."""
 UNEVEN: Final = 0.05
 """Relative scatter of the wiper's path over a turn, for the unevenness of the track."""

@@ -172,7 +172,7 @@ class Outlook:
         now = float(self._energy(self.away)) + self._lost()
         good = self._radius2(GOOD_SHARE, GOOD_THD)
         surely = float(self._energy(self.away)) + SURELY * self._lost() <= good
-        if surely and self.hand.scatter > self.hand.unseen_scatter:
+        if surely and self.hand.scatter >= self.hand.unseen_scatter:  # blind
             return False
         if float(chances @ np.minimum(energy, rest)) < CLEARLY * now:
             return True
