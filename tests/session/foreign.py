@@ -24,18 +24,13 @@ class BareInstrument:
     ----------
     unit
         The unit; the test turns its trims.
-    arms_by
-        The one command that it takes for a new frame.
     has_queue
         False for an instrument without an error queue.
     """
 
-    def __init__(
-        self, unit: StraightUnit, *, arms_by: str = ":SINGLE", has_queue: bool = True
-    ) -> None:
+    def __init__(self, unit: StraightUnit, *, has_queue: bool = True) -> None:
         self.unit = unit
         self.frames = 0
-        self._arms_by = arms_by
         self._has_queue = has_queue
         self._errors: list[str] = []
         self._codes = np.zeros(0, np.uint8)
@@ -72,7 +67,7 @@ class BareInstrument:
                 self._errors.clear()
             case ":SYSTEM:ERROR?" | ":SYST:ERR?" if self._has_queue:
                 return (self._errors.pop(0) if self._errors else '0,"No error"').encode() + b"\n"
-            case word if word == self._arms_by:
+            case ":DIGITIZE" | ":DIG":
                 volts = self.unit.samples()
                 self._codes = np.clip(np.round(volts / CODE_V) + 128, 0, 255).astype(np.uint8)
                 self.frames += 1
