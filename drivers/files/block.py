@@ -66,7 +66,11 @@ def read_block(text: Text, layout: Layout) -> Block:
     gaps = 0 if len(body) > 1.8 * len(kept) else len(body) - len(kept)
     header = [_header_cells(line, layout) for line in lines[:first] if line.strip()]
     below = [line for line in lines[last + 1 :] if line.strip()]
-    _refuse_numbers_above(header, layout)
+    for cells in header[-1:]:
+        _refuse_other_count(cells, layout)
+    for line in below:
+        if len(below) > 1 or not _is_stump(line, layout):
+            _refuse_other_count(split(line, layout.delimiter), layout)
     block = Block(header, _beside(kept, layout), numbers, kept, rows.units, gaps)
     return _trimmed(block, layout, below, text.ended)
 
@@ -91,15 +95,14 @@ def _longest_run(rows: Rows, lines: list[str]) -> NDArray[np.intp]:
     return np.asarray(filled[starts[order[0]] : ends[order[0]]])
 
 
-def _refuse_numbers_above(header: list[list[str]], layout: Layout) -> None:
-    """Refuse to drop rows of numbers that only have another count: what parts them is in doubt."""
-    last = header[-1] if header else []
-    filled = [cell for cell in last if cell]
+def _refuse_other_count(cells: list[str], layout: Layout) -> None:
+    """Refuse to drop a row of numbers that only has another count: what parts them is in doubt."""
+    filled = [cell for cell in cells if cell]
     if min(len(filled), len(layout.columns)) < 2 or any(map(is_date, filled)):
         return
     if all(parse_cell(cell, layout.convention) for cell in filled):
         raise UnusableCapture(
-            f"the rows of numbers do not all have the same count: {clean(' '.join(last), 60)!r}",
+            f"the rows of numbers do not all have the same count: {clean(' '.join(cells), 60)!r}",
             "Save with semicolons or tabs between the columns, and no blanks in numbers.",
         )
 
