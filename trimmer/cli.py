@@ -212,6 +212,15 @@ def build_parser() -> argparse.ArgumentParser:
     )
     _bench(bench)
 
+    report = command("report", "one page of a unit, or of a kind, to hand on")
+    report.add_argument("unit", metavar="UNIT", nargs="?", default="", help="the unit's name")
+    report.add_argument("--kind", metavar="NAME", help="a page of this kind instead")
+    report.add_argument(
+        "-o", "--output", metavar="FILE", required=True, help=".html, .pdf, .svg or .png"
+    )
+    for add in (_book, _output):
+        add(report)
+
     log = command("log", "the bench book: list, show, export, import")
     _log(log)
     return parser
