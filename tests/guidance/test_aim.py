@@ -33,7 +33,9 @@ def test_the_joint_aim_is_the_least_expected_distortion(seed, angle):
         return float(np.sum(b.at(x) ** 2) + np.sum(b.variance(x)))
 
     found = aim.joint(np.zeros(2), WIDE)
-    best = minimize(expected, np.zeros(2), method="Nelder-Mead", options={"xatol": 1e-8, "fatol": 1e-16})
+    best = minimize(
+        expected, np.zeros(2), method="Nelder-Mead", options={"xatol": 1e-8, "fatol": 1e-16}
+    )
     assert aim.expected(found) == pytest.approx(expected(found))
     assert expected(found) <= best.fun * (1 + 1e-4)
 

@@ -23,7 +23,18 @@ def weights(seed=0, m=5):
 
 def test_features_are_the_terms_of_a_taylor_series():
     u, v = 0.3, -0.7
-    expected = [1, u, v, u * u / 2, u * v, v * v / 2, u**3 / 6, u * u * v / 2, u * v * v / 2, v**3 / 6]
+    expected = [
+        1,
+        u,
+        v,
+        u * u / 2,
+        u * v,
+        v * v / 2,
+        u**3 / 6,
+        u * u * v / 2,
+        u * v * v / 2,
+        v**3 / 6,
+    ]
     assert features(np.array([u, v])) == pytest.approx(expected)
 
 

@@ -63,7 +63,9 @@ def test_one_odd_unit_does_not_spoil_the_kind():
     base = field()
     good = units(6)
     odd = learned(base @ warp_matrix(Warp(-1.0), Warp(1.0)).T)
-    wild = learned(field(7, gain=2.0)[:, ::1] * np.random.default_rng(3).normal(1, 1, (28, FEATURES)))
+    wild = learned(
+        field(7, gain=2.0)[:, ::1] * np.random.default_rng(3).normal(1, 1, (28, FEATURES))
+    )
     plain = KindPrior.from_units(good)
     for stranger in (odd, wild):
         spoiled = KindPrior.from_units([*good, stranger])
@@ -131,7 +133,7 @@ def test_documents_go_through_json_and_back():
 )
 def test_a_document_that_is_none_is_refused(spoil):
     document = {**units(1)[0].to_document(), **spoil}
-    with pytest.raises(ValueError, match="version|shape"):
+    with pytest.raises(ValueError, match=r"version|shape"):
         Learned.from_document(document)
 
 
@@ -154,7 +156,10 @@ def test_a_unit_learned_by_turning_has_the_true_columns_in_all_but_scale():
     h = 1e-3
     for trim, sense in ((0, 1), (1, -1)):
         step = h * np.eye(2)[trim]
-        plus, minus = source.respond(u + step[0], v + step[1]), source.respond(u - step[0], v - step[1])
+        plus, minus = (
+            source.respond(u + step[0], v + step[1]),
+            source.respond(u - step[0], v - step[1]),
+        )
         true = sense * (plus - minus) / (2 * h)
         column = taught.columns[trim]
         cosine = column @ true / np.linalg.norm(column) / np.linalg.norm(true)

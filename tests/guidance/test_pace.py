@@ -18,7 +18,11 @@ def drive(pace, speed, target, seconds, dt=0.1, start=0.0):
 def test_a_turn_is_called_turn_then_slow_then_stop():
     words = [w for _, _, w in drive(Pace(Lag()), 0.1, 0.2, 2.5)]
     assert words[0] == "turn"
-    assert [w for i, w in enumerate(words) if i == 0 or w != words[i - 1]] == ["turn", "slow", "stop"]
+    assert [w for i, w in enumerate(words) if i == 0 or w != words[i - 1]] == [
+        "turn",
+        "slow",
+        "stop",
+    ]
 
 
 def test_stop_is_said_early_by_the_lag():

@@ -114,7 +114,9 @@ def test_marginal_steps_are_those_of_the_marginal_probability():
             total += miss @ np.linalg.solve(spread, miss) + np.linalg.slogdet(spread)[1]
         return total
 
-    best = minimize(cost, walk.expected, method="Nelder-Mead", options={"xatol": 1e-7, "fatol": 1e-9})
+    best = minimize(
+        cost, walk.expected, method="Nelder-Mead", options={"xatol": 1e-7, "fatol": 1e-9}
+    )
     found = find_walk(walk, prior, rounds=60, marginal=True)
     assert cost(found.steps) == pytest.approx(best.fun, abs=0.02)
     assert found.steps == pytest.approx(best.x, abs=1.5e-3)
@@ -159,9 +161,7 @@ def test_sizes_are_learned_so_that_a_column_three_times_as_long_is_no_surprise()
         steps = -np.array([[[1.0], [0.0]], [[0.0], [0.0]]])
         places = steps @ np.array([0.08])
         parts = features(places) @ weights.T + 1e-4 * rng.standard_normal((2, 28))
-        walk = Walk(
-            parts, np.full((2, 28), 1e-8), steps, np.array([0.08]), np.array([[0.015**2]])
-        )
+        walk = Walk(parts, np.full((2, 28), 1e-8), steps, np.array([0.08]), np.array([[0.015**2]]))
         found = find_walk(walk, prior, marginal=True, freedom=3.0)
         assert abs(found.steps[0] - 0.08) < 0.015
         secant = (parts[1] - parts[0]) / 0.08

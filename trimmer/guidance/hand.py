@@ -28,6 +28,8 @@ class Hand:
     """Relative scatter of a turn."""
     jitter: float
     """Scatter of any turn, however small."""
+    followed: bool
+    """Whether it turns until told to stop, where that can be told."""
     unseen_scatter: float
     """Relative scatter of a turn that cannot be followed, its trim's column not being known."""
     unseen_jitter: float
@@ -60,6 +62,7 @@ def hand_for(travel_turns: float, followed: bool) -> Hand:
     return Hand(
         scatter=scatter,
         jitter=jitter * degree,
+        followed=followed,
         unseen_scatter=UNSEEN if followed else scatter,
         unseen_jitter=BLIND[1] * degree,
         backlash=1.5 * degree,

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field, replace
+from typing import Final
 
 from trimmer.guidance import words
 from trimmer.guidance.estimate import Estimate, Offsets, estimate
@@ -13,6 +14,9 @@ from trimmer.guidance.moves import Move
 from trimmer.guidance.rails import Finding, Verdict, drifted, is_dead, look_into
 from trimmer.guidance.record import Record
 from trimmer.guidance.seen import Seen
+
+TOLD: Final = 14.0
+"""How much likelier all readings together must be one way for it to be taken as told."""
 
 
 @dataclass(slots=True)
@@ -33,6 +37,8 @@ class Knowledge:
     """What the last reading looks like, until another one at the same setting bears it out."""
     before: Estimate | None = None
     """The estimate before the last turn."""
+    rival: list[Move] | None = None
+    """The moves as they may have been made instead, while it cannot be told."""
 
     def begin(self, one: Seen) -> None:
         """Take the first reading."""
@@ -90,6 +96,7 @@ class Knowledge:
         elif seen.other == 0.0:
             self._look_into()
         self._think(self.estimate)
+        self._weigh_rival()
 
     def _astray(self, move: Move, seen: Outcome) -> Move:
         """Take in that the other trim was turned, instead of or besides the one asked for."""
@@ -110,6 +117,24 @@ class Knowledge:
         found = look_into(self.estimate, self.record.moves, self.hand, self.record.here)
         strange = found.verdict is Verdict.STRANGE and self.kind is None
         self.suspicion = None if found.verdict is Verdict.AS_ASKED or strange else found
+        if found.rival is not None:
+            self.rival = [*self.record.moves[:-1], found.rival]
+
+    def _weigh_rival(self) -> None:
+        """See whether the turns since speak for the moves as they may have been made instead."""
+        assert self.estimate is not None
+        if self.rival is None:
+            return
+        self.rival += self.record.moves[len(self.rival) :]
+        other = Record(self.record.places, self.rival)
+        instead = estimate(other, self.hand, self.kind, None, self.offsets)
+        gained = self.estimate.found.cost - instead.found.cost
+        if gained > TOLD:
+            self.record.moves, self.rival = self.rival, None
+            self.estimate, self.suspicion = instead, None
+            self.notice = words.MISTAKEN
+        elif gained < -TOLD:
+            self.rival = None
 
     def _act_on(self, found: Finding) -> Estimate | None:
         """Take a mistake for one. Gives the estimate to search on from, None to begin afresh."""

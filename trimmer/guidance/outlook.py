@@ -57,6 +57,8 @@ class Outlook:
         self.away = est.here - est.best
         columns = est.belief.columns(est.best)
         self.h = columns @ columns.T + 1e-9 * np.eye(2)
+        # At a stop the best setting is a slope that ends there, not the bottom of a bowl.
+        self.slope = 2.0 * columns @ est.aimed.at(est.best)
         self.floor = est.floor_thd
         self.radius2 = self._radius2(CLOSE_SHARE, CLOSE_THD)
         self.doubt = self._doubt(columns)
@@ -74,8 +76,8 @@ class Outlook:
         return result
 
     def _energy(self, e: Array) -> Array:
-        result: Array = np.einsum("...a,ab,...b->...", e, self.h, e)
-        return result
+        bowl = np.einsum("...a,ab,...b->...", e, self.h, e)
+        return np.asarray(bowl + np.maximum(e @ self.slope, 0.0))
 
     def is_there(self) -> bool:
         """Tell whether the present setting is close enough, what is not known of the best counted."""
@@ -172,7 +174,7 @@ class Outlook:
         now = float(self._energy(self.away)) + self._lost()
         good = self._radius2(GOOD_SHARE, GOOD_THD)
         surely = float(self._energy(self.away)) + SURELY * self._lost() <= good
-        if surely and self.hand.scatter >= self.hand.unseen_scatter:  # blind
+        if surely and not self.hand.followed:
             return False
         if float(chances @ np.minimum(energy, rest)) < CLEARLY * now:
             return True

@@ -20,6 +20,10 @@ from trimmer.guidance.seen import Seen
 
 CHANCE: Final = 3.0
 """A change within so many standard deviations of none is none."""
+PLAIN: Final = 1.5
+"""Standard deviations of misfit up to which a turn explains its reading plainly .."""
+PLAIN_SLIP: Final = 2.5
+""".. if it is no further than this from what was asked for."""
 DUE: Final = 8.0
 """A turn must be due to change the reading by so many times that, for no change to mean anything."""
 LEAST_MADE: Final = 0.05
@@ -33,6 +37,8 @@ DRIFT_THD: Final = 3e-4
 MISTAKE: Final = 12.0
 """How much better a mistake must explain a reading than the turn asked for: hands err in about one turn
 of fifty (a guess), and a wrong alarm costs more than a late one."""
+RIVAL: Final = 6.0
+"""A mistake that explains a reading no worse than this is kept in mind."""
 STRANGE: Final = 8.0
 """Standard deviations of misfit from which on no turn of a unit of this kind explains a reading."""
 
@@ -96,6 +102,8 @@ class Finding:
     verdict: Verdict
     move: Move
     """The turn as it was probably made."""
+    rival: Move | None = None
+    """Another way in which it may have been made, hardly less likely."""
 
 
 def look_into(before: Estimate, moves: Sequence[Move], hand: Hand, after: Seen) -> Finding:
@@ -124,9 +132,13 @@ def look_into(before: Estimate, moves: Sequence[Move], hand: Hand, after: Seen) 
     best, found = asked.surprise, Finding(Verdict.AS_ASKED, last)
     for verdict, move in _mistakes(last, before):
         mistake = _explained(before, moves, hand, after, move)
-        if mistake.surprise + MISTAKE < best and fits(mistake.misfit, size):
+        if not fits(mistake.misfit, size):
+            continue
+        if mistake.surprise + MISTAKE < best:
             best, found = mistake.surprise + MISTAKE, Finding(verdict, move)
-    if found.verdict is Verdict.AS_ASKED and _strange(asked, size):
+        elif found.verdict is Verdict.AS_ASKED and mistake.surprise < asked.surprise + RIVAL:
+            found = Finding(Verdict.AS_ASKED, last, move)
+    if found.verdict is Verdict.AS_ASKED and found.rival is None and _strange(asked, size):
         return Finding(Verdict.STRANGE, last)
     return found
 
@@ -134,7 +146,7 @@ def look_into(before: Estimate, moves: Sequence[Move], hand: Hand, after: Seen) 
 def _plain(asked: Explained, size: int) -> bool:
     """Whether the turn asked for explains the reading so well that nothing else need be thought of."""
     left = (asked.misfit - size) / float(np.sqrt(2.0 * size))
-    return left < CHANCE and abs(asked.slip) < CHANCE
+    return left < PLAIN and abs(asked.slip) < PLAIN_SLIP
 
 
 def _strange(asked: Explained, size: int) -> bool:

@@ -35,6 +35,9 @@ END_OF_TRAVEL = (
 SILENT = "The {trim} trim answers in neither sense: another screw, or an open wiper."
 STOP_MET = "The {trim} trim is at its end."
 WRONG_TRIM = "It was the {trim} trim that moved; the guide goes on from there."
+MISTAKEN = (
+    "An earlier turn seems to have been another one than was asked; the guide goes on from there."
+)
 WRONG_WAY = "The {trim} trim went the other way; the guide goes on from there."
 KIND_TURNED = "In this unit the {trim} trim works the other way round than in others of its kind."
 KIND_DIFFERS = "This unit answers differently from its kind; it is learned afresh."
