@@ -58,10 +58,8 @@ def interpret(raw: bytes, path: Path, wanted: Wanted, taken_at: datetime) -> Fil
         if is_wav(raw):
             return read_wav(raw, wanted, taken_at, source)
         if path.suffix.casefold() == ".wav":
-            raise UnusableCapture(f"{source} does not begin as a WAV file does")
+            raise UnusableCapture("the file does not begin as a WAV file does")
         return read_csv(raw, wanted, taken_at, source)
-    except UnusableCapture as error:
-        raise UnusableCapture(f"{source}: {error}", error.remedy) from error
     except MemoryError as error:
         raise UnusableCapture(
             f"{source} is too large for this machine", "Save fewer points."

@@ -181,12 +181,12 @@ class FolderSource:
             raise
         except SourceLost:
             return None  # gone again: renamed or removed
-        except SourceError:
+        except SourceError as error:
             if not stalled:
                 self._unripe[seen.name] = seen
                 return None
             self._watch.settle(seen)
-            raise
+            raise type(error)(f"{clean(seen.name)}: {error}", error.remedy) from error
         if read.cut and not stalled:
             self._unripe[seen.name] = seen
             return None

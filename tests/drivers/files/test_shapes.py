@@ -119,7 +119,6 @@ def test_what_cannot_be_read_for_sure_is_refused_with_reason_and_remedy(tmp_path
     with pytest.raises(UnusableCapture, match=reason) as caught:
         capture(tmp_path, content)
     assert caught.value.remedy.endswith(".")
-    assert "capture.csv" in str(caught.value)
 
 
 @pytest.mark.parametrize("drop", [1, 3])
