@@ -10,11 +10,19 @@ from trimmer.guidance.estimate import Estimate, Offsets, estimate
 from trimmer.guidance.following import Outcome
 from trimmer.guidance.hand import Hand
 from trimmer.guidance.memory import KindPrior
-from trimmer.guidance.moves import Move
+from trimmer.guidance.moves import Move, mistaken
 from trimmer.guidance.rails import Finding, Verdict, drifted, is_dead, look_into
 from trimmer.guidance.record import Record
 from trimmer.guidance.seen import Seen
 
+STRAINED: Final = 3.0
+"""Strain for each turn from which on the turns no longer fit together .."""
+STRAINED_ANYHOW: Final = 15.0
+""".. besides this much."""
+LOOKED_BACK: Final = 6
+"""So many turns are looked back on."""
+TOLD_LATE: Final = 30.0
+"""How much likelier it must be with a mistake in an earlier turn."""
 TOLD: Final = 14.0
 """How much likelier all readings together must be one way for it to be taken as told."""
 
@@ -97,6 +105,7 @@ class Knowledge:
             self._look_into()
         self._think(self.estimate)
         self._weigh_rival()
+        self._look_back()
 
     def _astray(self, move: Move, seen: Outcome) -> Move:
         """Take in that the other trim was turned, instead of or besides the one asked for."""
@@ -135,6 +144,30 @@ class Knowledge:
             self.notice = words.MISTAKEN
         elif gained < -TOLD:
             self.rival = None
+
+    def _look_back(self) -> None:
+        """Look for a mistake in an earlier turn once the turns no longer fit together.
+
+        It takes some tens of milliseconds, and hardly ever happens to a hand that errs in size only.
+        """
+        assert self.estimate is not None
+        moves = self.record.moves
+        usual = STRAINED * len(moves) + STRAINED_ANYHOW
+        if self.suspicion is not None or self.estimate.found.strain < usual:
+            return
+        found, best = None, self.estimate.found.cost - TOLD_LATE
+        for i in range(max(0, len(moves) - LOOKED_BACK), len(moves)):
+            for other in mistaken(moves[i]):
+                tried = [*moves[:i], other, *moves[i + 1 :]]
+                instead = estimate(
+                    Record(self.record.places, tried), self.hand, self.kind, None, self.offsets
+                )
+                if instead.found.cost < best:
+                    found, best = (tried, instead), instead.found.cost
+        if found is not None:
+            self.record.moves, self.estimate = found
+            self.rival = self.suspicion = None
+            self.notice = words.MISTAKEN
 
     def _act_on(self, found: Finding) -> Estimate | None:
         """Take a mistake for one. Gives the estimate to search on from, None to begin afresh."""

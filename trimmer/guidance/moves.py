@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 
 @dataclass(frozen=True, slots=True)
@@ -39,3 +39,17 @@ def last_sense(moves: Sequence[Move], trim: int) -> int:
         if move.trim == trim and not move.dead:
             return move.sense
     return 0
+
+
+def mistaken(move: Move) -> tuple[Move, ...]:
+    """Give the other ways in which a turn may have been made: other sense, other trim, both.
+
+    A turn that was followed, or that did nothing, has none.
+    """
+    if move.dead or move.extra or move.followed is not None:
+        return ()
+    return (
+        replace(move, asked=-move.asked),
+        replace(move, trim=1 - move.trim),
+        replace(move, trim=1 - move.trim, asked=-move.asked),
+    )
