@@ -152,7 +152,7 @@ def test_a_mistake_is_seen_said_and_made_good(mistake, kind):
         words = notices(p)[-1] if isinstance(p.answer, Advice) else ""
         tried += 1
         seen += ("other way" in words) if mistake == "way" else ("that moved" in words)
-        p.finish()
+        p.finish(70)
         mended += p.thd <= tolerance(p.unit.best()[1])
     assert tried >= 3
     # A pair whose trims work almost alike hides a mistake so early that two columns are all there is.

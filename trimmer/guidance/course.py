@@ -58,7 +58,7 @@ class Course:
     @property
     def turns(self) -> int:
         """Turns made so far."""
-        return sum(1 for m in self.knowledge.record.moves if not m.extra)
+        return self.knowledge.turns
 
     def _take(self, call: Call, one: Seen, seen: Outcome) -> None:
         if not self.knowledge.record.places:
@@ -188,7 +188,7 @@ class Course:
     def _finish(self, verdict: Verdict, reason: str) -> Done:
         est = self.knowledge.estimate
         known = est is not None and all(est.known)
-        net = est.net * self.travel_turns if est is not None else np.zeros(2)
+        net = self.knowledge.net() * self.travel_turns
         self.pending = None
         return Done(
             turn=self.turns,

@@ -166,14 +166,15 @@ class Guide:
 
     @property
     def best_seen(self) -> BestSeen | None:
-        """The best setting read so far."""
+        """The best setting read so far, since the guide last began afresh."""
         record = self._course.knowledge.record
         if not record.places:
             return None
         thds = record.thds()
         best = int(np.argmin(thds))
         place = record.readable()[best]
-        turn = sum(1 for m in record.moves[:place] if not m.extra)
+        forgotten = self._course.knowledge.forgotten.turns
+        turn = forgotten + sum(1 for m in record.moves[:place] if not m.extra)
         return BestSeen(turn, thds[best], self._net(place))
 
     @property
@@ -222,10 +223,7 @@ class Guide:
         return est if est is not None and all(est.known) else None
 
     def _net(self, place: int) -> dict[Trim, float]:
-        if self._estimate is None:
-            return {"upper": 0.0, "lower": 0.0}
-        places = self._estimate.found.places
-        net = (places[place] - places[0]) * self.travel_turns
+        net = self._course.knowledge.net(place) * self.travel_turns
         return {"upper": float(net[0]), "lower": float(net[1])}
 
     # ---- state -------------------------------------------------------------------------------

@@ -5,8 +5,11 @@ from __future__ import annotations
 from dataclasses import dataclass, field, replace
 from typing import Final
 
+import numpy as np
+
 from trimmer.guidance import words
 from trimmer.guidance.estimate import Estimate, Offsets, estimate
+from trimmer.guidance.field import Array
 from trimmer.guidance.following import Outcome
 from trimmer.guidance.hand import Hand
 from trimmer.guidance.memory import KindPrior
@@ -27,6 +30,24 @@ TOLD: Final = 14.0
 """How much likelier all readings together must be one way for it to be taken as told."""
 
 
+MOST_CORRECTIONS: Final = 3
+"""So many corrections say that the guide is lost rather than the hand."""
+MOST_BEGINNINGS: Final = 2
+"""So often the guide begins afresh."""
+
+
+@dataclass(slots=True)
+class Forgotten:
+    """Turns made before the guide began afresh."""
+
+    turns: int = 0
+    """Their number."""
+    net: Array = field(default_factory=lambda: np.zeros(2))
+    """Shape (2,), where they led, shares of the travel."""
+    beginnings: int = 0
+    """How often it began afresh."""
+
+
 @dataclass(slots=True)
 class Knowledge:
     """The record so far and what follows from it."""
@@ -45,6 +66,10 @@ class Knowledge:
     """What the last reading looks like, until another one at the same setting bears it out."""
     before: Estimate | None = None
     """The estimate before the last turn."""
+    corrections: int = 0
+    """How often the last turns were taken for other ones than were asked for."""
+    forgotten: Forgotten = field(default_factory=Forgotten)
+    """What was before the guide began afresh."""
     rival: list[Move] | None = None
     """The moves as they may have been made instead, while it cannot be told."""
 
@@ -106,6 +131,8 @@ class Knowledge:
         self._think(self.estimate)
         self._weigh_rival()
         self._look_back()
+        if self.corrections >= MOST_CORRECTIONS:
+            self._begin_afresh()
 
     def _astray(self, move: Move, seen: Outcome) -> Move:
         """Take in that the other trim was turned, instead of or besides the one asked for."""
@@ -141,6 +168,7 @@ class Knowledge:
         if gained > TOLD:
             self.record.moves, self.rival = self.rival, None
             self.estimate, self.suspicion = instead, None
+            self.corrections += 1
             self.notice = words.MISTAKEN
         elif gained < -TOLD:
             self.rival = None
@@ -164,14 +192,18 @@ class Knowledge:
                 )
                 if instead.found.cost < best:
                     found, best = (tried, instead), instead.found.cost
-        if found is not None:
-            self.record.moves, self.estimate = found
-            self.rival = self.suspicion = None
-            self.notice = words.MISTAKEN
+        self.rival = None
+        if found is None:
+            self._begin_afresh()
+            return
+        self.record.moves, self.estimate = found
+        self.corrections += 1
+        self.notice = words.MISTAKEN
 
     def _act_on(self, found: Finding) -> Estimate | None:
         """Take a mistake for one. Gives the estimate to search on from, None to begin afresh."""
         moves = self.record.moves
+        self.corrections += 1
         trim = words.TRIMS[found.move.trim]
         first = all(m.trim != found.move.trim or m.dead for m in moves[:-1])
         match found.verdict:
@@ -190,6 +222,32 @@ class Knowledge:
                 self.notice = words.KIND_DIFFERS
                 return None
         return self.before
+
+    def _begin_afresh(self) -> None:
+        """Forget all readings but the last: the turns made do not fit what is believed of the unit."""
+        gone = self.forgotten
+        if self.estimate is None or gone.beginnings >= MOST_BEGINNINGS:
+            return
+        net = gone.net + self.estimate.net
+        self.forgotten = Forgotten(self.turns, net, gone.beginnings + 1)
+        here = self.record.here
+        self.record = Record()
+        self.record.begin(here)
+        self.kind, self.rival, self.suspicion, self.corrections = None, None, None, 0
+        self.notice = words.AFRESH
+        self._think(None)
+
+    @property
+    def turns(self) -> int:
+        """Turns made so far."""
+        return self.forgotten.turns + sum(1 for m in self.record.moves if not m.extra)
+
+    def net(self, place: int = -1) -> Array:
+        """Give the net movement since the start at one of the places, shares of the travel."""
+        if self.estimate is None:
+            return np.zeros(2)
+        places = self.estimate.found.places
+        return np.asarray(self.forgotten.net + places[place] - places[0])
 
     def _think(self, before: Estimate | None) -> None:
         self.estimate = estimate(self.record, self.hand, self.kind, before, self.offsets)

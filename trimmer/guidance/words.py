@@ -35,6 +35,7 @@ END_OF_TRAVEL = (
 SILENT = "The {trim} trim answers in neither sense: another screw, or an open wiper."
 STOP_MET = "The {trim} trim is at its end."
 WRONG_TRIM = "It was the {trim} trim that moved; the guide goes on from there."
+AFRESH = "The turns made do not fit together: the guide begins afresh from here, turn by turn."
 MISTAKEN = (
     "An earlier turn seems to have been another one than was asked; the guide goes on from there."
 )
