@@ -89,7 +89,7 @@ def split(line: str, delimiter: str | None) -> list[str]:
         except (csv.Error, StopIteration):
             cells = line.split(delimiter)
         if delimiter is None:
-            cells = [cell for cell in cells if cell]
+            cells = [cell for cell in cells if cell] or [""]
     elif delimiter is None and not line.isascii():
         cells = _BLANKS.split(line.strip(" \t"))  # a no-break space does not part columns
     else:

@@ -149,3 +149,8 @@ def test_a_file_cut_anywhere_gives_right_values_or_a_refusal(name):
         np.testing.assert_allclose(
             wave.samples[:-1], right[:-1], rtol=1e-12, atol=wanted_shape.tolerance
         )
+
+
+@pytest.mark.parametrize("raw", [b'"\n1,234.5, Time\n0\t', b"0\nTime,0,0,", b"sep=\n", b"\xff\xfe"])
+def test_files_that_once_ended_in_a_traceback(raw):
+    outcome(raw, "x.csv", Wanted())
