@@ -121,7 +121,7 @@ def _prepare(connection: sqlite3.Connection, path: Path, writes: bool) -> None:
 
 
 def _check_owner(connection: sqlite3.Connection, path: Path, writes: bool) -> None:
-    owner = connection.execute("PRAGMA application_id").fetchone()[0]
+    owner = _owner(connection)
     if owner == APPLICATION_ID:
         return
     empty = connection.execute("SELECT count(*) FROM sqlite_master").fetchone()[0] == 0
@@ -129,10 +129,17 @@ def _check_owner(connection: sqlite3.Connection, path: Path, writes: bool) -> No
         if writes:
             connection.execute(f"PRAGMA application_id = {APPLICATION_ID}")
         return
+    # Another bench may have made this book between the two questions: it signs before it fills it.
+    if _owner(connection) == APPLICATION_ID:
+        return
     raise BookError(
         f"{path} is another program's database, not a bench book.",
         "Choose another file with `--book`; this one was left as it is.",
     )
+
+
+def _owner(connection: sqlite3.Connection) -> int:
+    return int(connection.execute("PRAGMA application_id").fetchone()[0])
 
 
 def _begin(connection: sa.Connection) -> None:
