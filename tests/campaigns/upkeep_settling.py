@@ -14,7 +14,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from tests.upkeep.warmups import SORTS, Sort, WarmUnit
-from trimmer.upkeep.settling import Settling, settle
+from trimmer.upkeep.settling import GOOD_POINTS, GOOD_SHARE, SESSION_S, Settling, settle
 
 HALF_WIDTH_SHARE = 0.15
 HALF_WIDTH_LEAST = 1e-4
@@ -62,9 +62,12 @@ def foretell(unit: WarmUnit, sort: Sort, share: float = 1.0 / 3.0) -> Foretold:
     warm = unit.true_parts(1e9)
     then = unit.true_parts(times[-1])
     true_thd = unit.settled_thd()
-    good = max(1e-4, 0.02 * true_thd)
+    good = max(GOOD_POINTS, GOOD_SHARE * true_thd)
     ahead = times[-1] + np.linspace(0.0, 7.0, 400) * unit.slow_s
-    near = [np.linalg.norm(unit.true_parts(float(t)) - warm) <= good for t in ahead]
+    near = [
+        np.linalg.norm(unit.true_parts(float(t)) - unit.true_parts(float(t) + SESSION_S)) <= good
+        for t in ahead
+    ]
     left = float(ahead[int(np.argmax(near))] - times[-1]) / 60.0
     return Foretold(sort, said, true_thd, float(np.linalg.norm(then) - np.linalg.norm(warm)), left)
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import os
 import signal
 from dataclasses import replace
 from datetime import UTC, datetime
@@ -26,7 +27,9 @@ def events(text: str) -> list[dict[str, Any]]:
     return [json.loads(line) for line in text.splitlines()]
 
 
-def capture(path: Path, hertz: float, thd: float, rng: np.random.Generator) -> Path:
+def capture(
+    path: Path, hertz: float, thd: float, rng: np.random.Generator, taken_at: float | None = None
+) -> Path:
     """Write a capture of ten periods with one harmonic, noise of an 8-bit digitiser."""
     n = 2000
     t = np.arange(n) / (n * hertz / 10.0)
@@ -35,6 +38,8 @@ def capture(path: Path, hertz: float, thd: float, rng: np.random.Generator) -> P
     rows = "\n".join(f"{a:.9e},{v:.6e}" for a, v in zip(t, values, strict=True))
     part = path.with_suffix(".part")
     part.write_text(f"Time (s),Channel 1 (V)\n{rows}\n")
+    if taken_at is not None:
+        os.utime(part, (taken_at, taken_at))
     part.rename(path)
     return path
 
@@ -126,6 +131,30 @@ def test_plain_lines_say_how_long_until_it_is_worth_trimming(own_home: Path) -> 
     assert "Too early to tell" in lines[2]
     assert "worth trimming in about" in lines[3]
     assert any("no word here" in text for text in running.messages)
+
+
+def test_a_warm_up_saved_file_by_file_is_foretold(tmp_path: Path, own_home: Path) -> None:
+    rng = np.random.default_rng(1)
+    folder = tmp_path / "captures"
+    folder.mkdir()
+    began = datetime.now(UTC).timestamp() - 3600.0
+    with Running("warmup", folder, "--json", "--unit", "W") as running:
+        lines = running.events()
+        told = []
+        for n in range(16):  # a file every half minute, by the files' own times
+            cold = np.exp(-30.0 * n / 300.0)
+            hertz, thd = 1000.0 * (1.0 + 0.003 * cold), 0.01 + 0.002 * cold
+            capture(folder / f"{n:02d}.csv", hertz, thd, rng, began + 30.0 * n)
+            told.append(next(lines))
+        running.say("quit")
+        told += list(lines)
+        assert running.end() == 0
+    last = told[-1]
+    assert last["minutes"] == pytest.approx(7.5, abs=0.02)
+    assert last["settled_thd_low"] <= 0.01 <= last["settled_thd_high"]
+    assert last["settled_thd_high"] - last["settled_thd_low"] < 5e-4
+    assert last["time_constant_s"] == pytest.approx(300.0, rel=0.1)
+    assert last["settled_fundamental_hz"] == pytest.approx(1000.0, abs=0.2)
 
 
 def test_one_capture_is_no_warm_up_and_no_survey(tmp_path: Path, own_home: Path) -> None:

@@ -43,7 +43,7 @@ LIGHT: Final = 0.01
 """Cells of less weight are small enough."""
 OWN_WAY: Final = 0.7
 """How much a channel's slow and fast drift differ from the shares of all, relative."""
-SIZES: Final = tuple((size, bend) for size in (0.1, 0.5, 2.5) for bend in (0.015, 0.15))
+SIZES: Final = tuple((size, bend) for size in (0.03, 0.3, 2.0) for bend in (0.015, 0.15))
 """Sizes of a drift over the usual one, each with a size of its quadratic part over its linear one."""
 EXACT: Final = 0.003
 """No unit follows exponentials nearer than this share of its drift."""

@@ -21,19 +21,27 @@ LEAST: Final = 6
 """Fewer readings say nothing of a time constant."""
 DRAWS: Final = 1500
 """Draws from the mixture."""
-GOOD_POINTS: Final = 1e-4
-"""Parts nearer than this to their settled values (ratio; 0.01 percentage points) count as settled."""
+GOOD_POINTS: Final = 2e-4
+"""Parts that move by less than this within a session (ratio; 0.02 percentage points) count as settled:
+off the best setting by so much, a THD of 0.3 % is 0.3007 %."""
 GOOD_SHARE: Final = 0.02
 """The same relative to the settled THD; the larger of the two counts."""
-SURE: Final = 0.95
+SESSION_S: Final = 600.0
+"""How long a session of trimming is: what moves more slowly does not spoil it. Of a tail much longer than
+the time it was watched for nothing can be known."""
+SURE: Final = 0.9
 """Probability from which on the unit is called settled."""
 WANDER_LEAST: Final = 40
 """Fewer readings do not call a unit unsettled."""
+WANDER: Final = 0.5
+"""Wandering of so much of what counts as settled is too much."""
+WANDER_SURE: Final = 4.0
+"""Standard deviations by which the wandering must stand out."""
 LONGEST_S: Final = 5400.0
 """A unit that has not settled by then is called unsettled."""
 HOPELESS_S: Final = 1200.0
 """From then on a unit that needs much longer still is called unsettled."""
-FAR_S: Final = 7200.0
+FAR_S: Final = 2700.0
 """How much longer that is."""
 
 
@@ -121,15 +129,18 @@ class _Draws:
         """Shape (D, C-2), parts once settled."""
         return self.coefficients[:, 2:, 0]
 
-    def distance(self, times_s: Array) -> Array:
-        """How far the parts are from settled at some times; shape (D, len(times_s))."""
+    def to_come(self, times_s: Array) -> Array:
+        """How far the parts move within a session from some times on; shape (D, len(times_s))."""
         drift = self.coefficients[:, 2:, 1:]
         gram = np.einsum("dci,dcj->dij", drift, drift)
-        slow = np.exp(-times_s / self.slow_s[:, None])
-        fast = np.exp(-times_s / self.fast_s[:, None])
-        terms = np.stack((slow, slow**2, fast), axis=-1)
+        terms = self._terms(times_s) - self._terms(times_s + SESSION_S)
         square = np.einsum("dti,dij,dtj->dt", terms, gram, terms, optimize=True)
         return np.asarray(np.sqrt(np.maximum(square, 0.0)))
+
+    def _terms(self, times_s: Array) -> Array:
+        slow = np.exp(-times_s / self.slow_s[:, None])
+        fast = np.exp(-times_s / self.fast_s[:, None])
+        return np.stack((slow, slow**2, fast), axis=-1)
 
 
 def _draw(mixture: Mixture) -> _Draws:
@@ -169,7 +180,7 @@ def _judged(channels: Channels, mixture: Mixture, last: Reading) -> Settling:
     settled = _thd_interval(draws.settled)
     good = max(GOOD_POINTS, GOOD_SHARE * settled.value)
     left_s = _time_left(draws, now_s, good)
-    close = float(np.mean(draws.distance(np.array([now_s]))[:, 0] <= good))
+    close = float(np.mean(draws.to_come(np.array([now_s]))[:, 0] <= good))
     verdict, reason = _verdict(channels, mixture, close, left_s, good)
     course = mixture.course(np.array([now_s]))[0]
     log_hz = np.median(draws.coefficients[:, 0, 0])
@@ -198,10 +209,10 @@ def _thd_interval(parts: Array) -> Interval:
 
 
 def _time_left(draws: _Draws, now_s: float, good: float) -> float:
-    """Seconds until the parts are as good as settled: the median over the draws."""
+    """Seconds until the parts hardly move within a session: the median over the draws."""
     ahead = np.concatenate(([0.0], np.geomspace(0.02, 12.0, 64)))
     scale = float(np.median(draws.slow_s))
-    away = draws.distance(now_s + ahead * scale) > good
+    away = draws.to_come(now_s + ahead * scale) > good
     # the last time they are still away, since two terms may cancel for a moment
     last = np.where(away.any(axis=1), away.shape[1] - 1 - np.argmax(away[:, ::-1], axis=1), -1)
     until = ahead[np.minimum(last + 1, ahead.size - 1)]
@@ -212,7 +223,7 @@ def _verdict(
     channels: Channels, mixture: Mixture, close: float, left_s: float, good: float
 ) -> tuple[Verdict, str]:
     now_s = float(channels.times_s[-1])
-    if len(channels.times_s) >= WANDER_LEAST and _wander(channels, mixture) > good:
+    if len(channels.times_s) >= WANDER_LEAST and _wander(channels, mixture) > WANDER * good:
         return "unsettled", "The waveform wanders in a way that no warming explains."
     if close >= SURE:
         return "settled", "What is still to come is too small to matter."
@@ -224,8 +235,13 @@ def _verdict(
 
 
 def _wander(channels: Channels, mixture: Mixture) -> float:
-    """How far the parts stray from the fitted course, beyond their noise, rms in the later half."""
+    """How far the parts stray from the fitted course in the later half, rms, beyond their noise.
+
+    What strays in one reading and still does in the next is no noise: the products of neighbours.
+    """
     later = slice(len(channels.times_s) // 2, None)
-    left = channels.parts - mixture.course(channels.times_s)[:, 2:]
-    beyond = (left[later] ** 2 - channels.variance[later, 2:]).mean(axis=0)
-    return float(np.sqrt(max(float(beyond.sum()), 0.0)))
+    left = (channels.parts - mixture.course(channels.times_s)[:, 2:])[later]
+    products = (left[1:] * left[:-1]).sum(axis=1)
+    chance = float(np.sqrt((channels.variance[later, 2:] ** 2).sum()) / len(products))
+    strays = float(products.mean())
+    return float(np.sqrt(strays)) if strays > WANDER_SURE * chance else 0.0
