@@ -213,3 +213,15 @@ def test_following_needs_no_word() -> None:
     says = {event["say"] for event in events if event["event"] == "follow"}
     assert {"turn", "stop"} <= says
     assert events[-1]["verdict"] == "at-floor"
+
+
+@pytest.mark.parametrize(("limit", "verdict"), [(0.02, "inside"), (0.005, "outside")])
+def test_a_limit_is_judged_with_the_uncertainty(tmp_path: Path, limit: float, verdict: str) -> None:
+    file = csv_of(tmp_path / "one.csv", sine(8.3))
+    done = trimmer("measure", file, "--json", "--limit-thd", str(limit))
+    assert json.loads(done.stdout)["verdict"] == verdict
+
+
+def test_a_session_says_whether_its_end_is_within_the_limit() -> None:
+    done = trimmer("demo", "--hands", "auto", "--json", "--seed", "2", "--limit-thd", "0.01")
+    assert json.loads(done.stdout.splitlines()[-1])["limit"] == "inside"

@@ -128,6 +128,7 @@ def _tuning(parser: argparse.ArgumentParser) -> None:
         metavar="SHEET",
         help="go on with a sheet that broke off (its id, or part of it)",
     )
+    _limit(parser)
     parser.add_argument("--follow", action="store_true", help="watch the hand, without being told")
 
 
@@ -171,6 +172,7 @@ def build_parser() -> argparse.ArgumentParser:
     for add in (_output, _reading, _bench, _book):
         add(measure)
 
+    _limit(measure)
     measure.add_argument(
         "--store", action="store_true", help="store the reading as the reference of that name"
     )
@@ -224,6 +226,15 @@ def build_parser() -> argparse.ArgumentParser:
     log = command("log", "the bench book: list, show, export, import")
     _log(log)
     return parser
+
+
+def _limit(parser: argparse.ArgumentParser) -> None:
+    parser.add_argument(
+        "--limit-thd",
+        metavar="RATIO",
+        type=positive,
+        help="largest THD allowed (0.01 is 1 percent)",
+    )
 
 
 def _survey(parser: argparse.ArgumentParser) -> None:

@@ -5,8 +5,16 @@ from __future__ import annotations
 import sys
 from typing import Protocol, TextIO, assert_never
 
-from trimmer.commands.wording import advice_lines, done_lines, percent, reading_lines
+from trimmer.commands.wording import (
+    advice_lines,
+    done_lines,
+    limit_fields,
+    limit_lines,
+    percent,
+    reading_lines,
+)
 from trimmer.events import advice_event, done_event, follow_event, line, reading_event
+from trimmer.measurement.reading import Reading
 from trimmer.reports import (
     Advised,
     Awaiting,
@@ -40,14 +48,23 @@ class Face(Protocol):
 class JsonFace:
     """Lines of JSON on stdout and nothing else there; messages go to stderr."""
 
-    def __init__(self, out: TextIO | None = None, messages: TextIO | None = None) -> None:
+    def __init__(
+        self,
+        out: TextIO | None = None,
+        messages: TextIO | None = None,
+        *,
+        limit_thd: float | None = None,
+    ) -> None:
         self._out = out or sys.stdout
         self._messages = messages or sys.stderr
+        self._limit_thd = limit_thd
+        self._reading: Reading | None = None
 
     def show(self, report: Report) -> None:
         """Show one report."""
         match report:
             case Measured():
+                self._reading = report.reading
                 event = reading_event(
                     report.turn,
                     report.taken_at,
@@ -61,9 +78,10 @@ class JsonFace:
             case Followed():
                 self._print(line(follow_event(report.word, report.age_s)))
             case Finished():
-                self._print(
-                    line(done_event(report.done, report.thd, report.thd_sigma, report.sheet))
-                )
+                event = done_event(report.done, report.thd, report.thd_sigma, report.sheet)
+                if self._reading is not None and self._limit_thd is not None:
+                    event["limit"] = limit_fields(self._reading, self._limit_thd)["verdict"]
+                self._print(line(event))
             case Opened():
                 _message(
                     self._messages, f"{report.identity}: sheet {report.sheet} in {report.book}"
@@ -81,8 +99,15 @@ class PlainFace:
     """Sentences on stdout; trouble on stderr."""
 
     def __init__(
-        self, out: TextIO | None = None, messages: TextIO | None = None, *, prompt: bool = True
+        self,
+        out: TextIO | None = None,
+        messages: TextIO | None = None,
+        *,
+        prompt: bool = True,
+        limit_thd: float | None = None,
     ) -> None:
+        self._limit_thd = limit_thd
+        self._reading: Reading | None = None
         self._out = out or sys.stdout
         self._messages = messages or sys.stderr
         self._prompt = prompt
@@ -97,6 +122,7 @@ class PlainFace:
                 self._print(f"Trimming {unit} from {report.source}: {report.identity}.")
                 self._print(f"Sheet {report.sheet} in {report.book}.")
             case Measured():
+                self._reading = report.reading
                 self._print(*reading_lines(f"Turn {report.turn}", report.reading, report.notes))
             case Advised():
                 self._word = ""
@@ -107,6 +133,8 @@ class PlainFace:
                 self._followed(report)
             case Finished():
                 self._print(*done_lines(report.done, report.thd, report.thd_sigma, report.sheet))
+                if self._reading is not None:
+                    self._print(*limit_lines(self._reading, self._limit_thd))
             case Awaiting() | Told() | Failed():
                 _trouble(self._messages, report)
             case _:

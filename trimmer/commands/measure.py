@@ -10,7 +10,7 @@ from drivers import SourceError, UnusableCapture, clean
 from trimmer.book import Book, open_book
 from trimmer.commands.chain import reference_of, store
 from trimmer.commands.opening import opened
-from trimmer.commands.wording import reading_lines
+from trimmer.commands.wording import limit_fields, limit_lines, reading_lines
 from trimmer.console import SIGNAL_UNUSABLE, SOURCE_FAILED, complain
 from trimmer.errors import CommandError
 from trimmer.events import line, reading_event
@@ -70,9 +70,12 @@ def _one(
         event = reading_event(
             None, waveform.taken_at, waveform.source, taken.reading, notes=list(waveform.notes)
         )
+        event |= limit_fields(taken.reading, options.limit_thd)
         print(line(event), flush=True)
         return 0
     for text in reading_lines(waveform.source, taken.reading, waveform.notes):
+        print(text)
+    for text in limit_lines(taken.reading, options.limit_thd):
         print(text)
     sys.stdout.flush()
     return 0

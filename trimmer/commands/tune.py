@@ -87,5 +87,10 @@ def _lines(options: argparse.Namespace, begin: Begin, *, end_quits: bool) -> int
     with contextlib.ExitStack() as stack:
         session = begin(stack).session
         listen(session, end_quits=end_quits)
-        face = JsonFace() if options.json else PlainFace(prompt=end_quits)
+        limit_thd = options.limit_thd
+        face = (
+            JsonFace(limit_thd=limit_thd)
+            if options.json
+            else PlainFace(prompt=end_quits, limit_thd=limit_thd)
+        )
         return converse(session, face)

@@ -6,6 +6,7 @@ import math
 
 from trimmer.guidance.advice import Advice, Done
 from trimmer.measurement.reading import Interval, Reading
+from trimmer.upkeep.limits import judged
 
 VERDICTS = {
     "at-floor": "Done: both trims are at their best",
@@ -112,3 +113,22 @@ def done_lines(done: Done, thd: float | None, sigma: float | None, sheet: str) -
     lines.append("  Check again when the unit is warm.")
     lines.append(f"Sheet {sheet}.")
     return lines
+
+
+def limit_fields(reading: Reading, limit_thd: float | None) -> dict[str, str]:
+    """Give the verdict on a limit of THD as fields of a line; none without a limit."""
+    if limit_thd is None:
+        return {}
+    return {"verdict": judged(reading.thd.low, reading.thd.high, limit_thd)}
+
+
+def limit_lines(reading: Reading, limit_thd: float | None) -> list[str]:
+    """Say whether THD is within a limit, its 95 % interval counted."""
+    if limit_thd is None:
+        return []
+    said = {
+        "inside": "within",
+        "outside": "above",
+        "cannot-tell": "too uncertain to be told from",
+    }[judged(reading.thd.low, reading.thd.high, limit_thd)]
+    return [f"  THD is {said} the limit of {percent(limit_thd)}."]
