@@ -166,6 +166,12 @@ def test_one_capture_is_no_warm_up_and_no_survey(tmp_path: Path, own_home: Path)
         assert "folder" in done.stderr
 
 
+def test_only_the_simulated_unit_can_be_made_cold(tmp_path: Path, own_home: Path) -> None:
+    done = trimmer("warmup", tmp_path, "--cold")
+    assert done.returncode == 2
+    assert "simulated" in done.stderr
+
+
 def test_minutes_since_switch_on_must_be_a_number(own_home: Path) -> None:
     done = trimmer("warmup", "bench", "--note", "minutes=soon")
     assert done.returncode == 2

@@ -52,6 +52,10 @@ def run(options: argparse.Namespace) -> int:
             f"{options.source} is one capture; a warm-up needs many",
             "Name an instrument, or a folder and save a capture into it every minute or so.",
         )
+    if options.cold and options.source != "bench":
+        raise CommandError(
+            "--cold is for the simulated unit", "Leave it out: a real unit is as cold as it is."
+        )
     lines = Lines(json=options.json, words=warmup_lines)
     with open_book(options.book) as book, opened(options.source, options) as source:
         asked = wanted(options, frames=1, reference=reference_of(book, options))
