@@ -63,7 +63,7 @@ def foretell(unit: WarmUnit, sort: Sort, share: float = 1.0 / 3.0) -> Foretold:
     then = unit.true_parts(times[-1])
     true_thd = unit.settled_thd()
     good = max(GOOD_POINTS, GOOD_SHARE * true_thd)
-    ahead = times[-1] + np.linspace(0.0, 7.0, 400) * unit.slow_s
+    ahead = times[-1] + np.linspace(0.0, 7.0, 120) * unit.slow_s
     near = [
         np.linalg.norm(unit.true_parts(float(t)) - unit.true_parts(float(t) + SESSION_S)) <= good
         for t in ahead

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass, field, replace
+from typing import Any
 
 import numpy as np
 from numpy.random import Generator
@@ -64,8 +65,9 @@ class Unit:
         found = self.known_best
         if found is not None:
             return found
+        fit: Any = least_squares
         for start in ((0.5, 0.5), (0.25, 0.25), (0.25, 0.75), (0.75, 0.25), (0.75, 0.75)):
-            answer = least_squares(
+            answer = fit(
                 lambda p: self.respond(float(p[0]), float(p[1])),
                 np.array(start),
                 bounds=(0.0, 1.0),

@@ -7,22 +7,30 @@ trims could hide, wrongly: it is taken out of what they are aimed at.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cache
 from typing import Final
 
 import numpy as np
+from numpy.typing import NDArray
 
 from trimmer.guidance import words
 from trimmer.guidance.field import Array
-from trimmer.measurement.diagnose import Remainder, diagnose
+from trimmer.measurement.diagnose import diagnose
 from trimmer.measurement.reading import Reading
-from trimmer.measurement.templates import SLOWEST, slewing
+from trimmer.measurement.templates import SLOWEST, bandwidth, slewing
 
 MOST: Final = 0.5
 """A cause that makes more than this share of THD is to be seen to first .."""
 MATTERS: Final = 0.004
 """.. if it makes this much THD itself."""
-SLEWS: Final = 0.002
+SLEWS: Final = 0.004
 """Slewing that makes more THD than this is kept out of the trims' aim."""
+FORM: Final = 0.05
+"""The closed forms of slewing and bandwidth are trusted to this share of the largest part."""
+MARKED: Final = 10.0
+"""Slewing must explain the odd skew parts better than bandwidth alone by this sum of squares .."""
+FACTOR: Final = 4.0
+""".. and by this factor."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -37,10 +45,11 @@ class First:
 
 def look_first(reading: Reading) -> First:
     """Look at a first reading."""
+    slewed = slewing_in(reading)
+    if slewed is not None:
+        share = 100.0 * float(np.linalg.norm(slewed))
+        return First(words.SLEWING.format(thd=share), slewed)
     causes = {cause.cause: cause for cause in diagnose([reading])}
-    slews = causes.get("slewing")
-    if slews is not None and slews.thd > SLEWS:
-        return First(words.SLEWING.format(thd=100.0 * slews.thd), _slewing_of(slews, reading))
     for name in ("clipping-in-unit", "supply"):
         if name in causes:
             return First(causes[name].remedy, None)
@@ -50,9 +59,38 @@ def look_first(reading: Reading) -> First:
     return First("", None)
 
 
-def _slewing_of(cause: Remainder, reading: Reading) -> Array:
-    """Parts of a slewing output that makes so much THD."""
-    ratios = np.linspace(SLOWEST, 0.999, 240)
-    marks = np.array([slewing(float(r), reading.orders) for r in ratios])
-    nearest = int(np.argmin(np.abs(np.linalg.norm(marks, axis=1) - cause.thd)))
-    return np.asarray(marks[nearest], dtype=np.float64)
+def slewing_in(reading: Reading) -> Array | None:
+    """Give the parts that a slewing output adds, None where it does not slew.
+
+    Slewing and bandwidth come together at high frequencies. Both lean the wave, and the trims do not:
+    so the odd skew parts alone, in which the two differ in shape, tell how much there is of each; the
+    crest part of slewing follows from its skew part.
+
+    Returns
+    -------
+    Array or None
+        Shape (2(K-1),).
+    """
+    marks, slow, rows = _forms(reading.orders)
+    seen = reading.parts[rows]
+    trust = (FORM * float(np.max(np.abs(seen)))) ** 2
+    weight = 1.0 / (np.diag(reading.random_covariance)[rows] + trust)
+    left = seen - marks[:, rows]
+    size = np.maximum(left @ (weight * slow[rows]) / float(slow[rows] ** 2 @ weight), 0.0)
+    misfit = (left - size[:, None] * slow[rows]) ** 2 @ weight
+    best = int(np.argmin(misfit))
+    plain = float(misfit[-1])  # the last form is no slewing at all
+    clear = plain - misfit[best] > MARKED and plain > FACTOR * misfit[best]
+    if not clear or float(np.linalg.norm(marks[best])) < SLEWS:
+        return None
+    return np.asarray(marks[best], dtype=np.float64)
+
+
+@cache
+def _forms(orders: int) -> tuple[Array, Array, NDArray[np.intp]]:
+    """Parts of slewing outputs, the last of none, shape (n, m); of bandwidth; odd skew rows."""
+    ratios = np.append(np.linspace(SLOWEST, 0.995, 120), 1.0)
+    marks = np.array([slewing(float(ratio), orders) for ratio in ratios])
+    k = np.repeat(np.arange(2, orders + 1), 2)
+    rows = np.flatnonzero((k % 2 == 1) & (np.arange(k.size) % 2 == 1))
+    return marks, bandwidth(orders), rows

@@ -18,6 +18,8 @@ from trimmer.guidance.seen import Seen
 
 CREST_LEFT: Final = 0.003
 """Size of a crest part at the best setting, ratio."""
+WIDER: Final = 1.15
+"""The uncertainty is stated so much wider, for what a field of third degree does not know of itself."""
 SKEW_LEFT: Final = 0.02
 """Size of the second order's skew part; that of higher orders falls with the square."""
 
@@ -65,4 +67,4 @@ def floor_at(found: Found, best: Array, last: Seen) -> tuple[float, float]:
     longer = float((trust * outside) @ (own - np.minimum(own, last.variance[:size])))
     variance = 4.0 * doubt + 2.0 * float(noise @ noise) + longer**2
     length = max(float(np.sqrt(square)), (2.0 * float(noise @ noise)) ** 0.25)
-    return float(np.sqrt(square)), float(np.sqrt(variance)) / (2.0 * length)
+    return float(np.sqrt(square)), WIDER * float(np.sqrt(variance)) / (2.0 * length)

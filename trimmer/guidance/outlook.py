@@ -24,11 +24,15 @@ CLOSE_SHARE: Final = 0.015
 """A setting is there when THD is within this share of the floor .."""
 CLOSE_THD: Final = 6e-5
 """.. or this much THD of it, whichever is more."""
+FOLLOWED_CLOSER: Final = 0.8
+"""A hand that is told when to stop sets finer: this share of both."""
 GOOD_SHARE: Final = 0.022
 """A setting is good enough to be left where only luck would better it within this share .."""
 GOOD_THD: Final = 1.0e-4
 """.. or this much THD. A blind hand leaves it then even where a little might be gained: what is left is
 less than such a hand sets on purpose."""
+UNSEEN_SHARE: Final = 0.3
+"""The most that the digitiser's own error may take of what counts as there: no turn mends it."""
 SURELY: Final = 3.0
 """How many times over what is not known of the best setting must fit into that too."""
 CLEARLY: Final = 0.9
@@ -60,8 +64,13 @@ class Outlook:
         # At a stop the best setting is a slope that ends there, not the bottom of a bowl.
         self.slope = 2.0 * columns @ est.aimed.at(est.best)
         self.floor = est.floor_thd
-        self.radius2 = self._radius2(CLOSE_SHARE, CLOSE_THD)
+        finer = FOLLOWED_CLOSER if hand.followed else 1.0
+        self.radius2 = self._radius2(finer * CLOSE_SHARE, finer * CLOSE_THD)
         self.doubt = self._doubt(columns)
+        # What the digitiser's own error may hide in the plane of the columns, whatever is read.
+        tangent, _ = np.linalg.qr(columns.T)
+        fixed = record.here.fixed[: columns.shape[1]]
+        self.unseen = min(float(np.sum(tangent.T**2 @ fixed)), UNSEEN_SHARE * self.radius2)
         self.thd_now = float(np.sqrt(self.floor**2 + self._energy(self.away)))
 
     def _doubt(self, columns: Array) -> Array:
@@ -81,7 +90,8 @@ class Outlook:
 
     def is_there(self) -> bool:
         """Tell whether the present setting is close enough, what is not known of the best counted."""
-        return bool(self._energy(self.away) + 2.0 * self._lost() <= self.radius2)
+        doubt = 2.0 * self._lost() + self.unseen
+        return bool(self._energy(self.away) + doubt <= self.radius2)
 
     def _lost(self) -> float:
         """Squared distortion that not knowing the best setting costs on average."""

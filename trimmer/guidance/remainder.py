@@ -2,14 +2,26 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+from typing import Final
+
+import numpy as np
+
 from trimmer.guidance.advice import Cause
 from trimmer.guidance.field import Array
-from trimmer.measurement.diagnose import diagnose
+from trimmer.guidance.firsts import slewing_in
+from trimmer.measurement.diagnose import REMEDIES, diagnose
 from trimmer.measurement.reading import Reading
+
+FORM: Final = 0.1
+"""The closed form of slewing is trusted to this share of itself."""
 
 
 def remainder(reading: Reading | None, basis: Array | None) -> tuple[Cause, ...]:
     """Name the causes of what the trims do not reach, largest first.
+
+    Slewing is told from bandwidth first, since one reading shows both at once; the rest is diagnosed
+    without it.
 
     Parameters
     ----------
@@ -20,5 +32,12 @@ def remainder(reading: Reading | None, basis: Array | None) -> tuple[Cause, ...]
     """
     if reading is None:
         return ()
+    causes: list[Cause] = []
+    slewed = slewing_in(reading)
+    if slewed is not None:
+        thd = float(np.linalg.norm(slewed))
+        causes.append(Cause("slewing", thd, REMEDIES["slewing"], FORM * thd))
+        reading = replace(reading, parts=reading.parts - slewed)
     items = diagnose([reading], reach=basis)
-    return tuple(Cause(i.cause, i.thd, i.remedy, i.thd_sigma) for i in items)
+    causes += [Cause(i.cause, i.thd, i.remedy, i.thd_sigma) for i in items]
+    return tuple(sorted(causes, key=lambda cause: -cause.thd))
