@@ -209,7 +209,7 @@ def test_an_instrument_that_reboots_is_met_again(link) -> None:
         assert "goes on by itself" in caught.value.remedy
         brain.format = 0  # a reboot forgets what was set
         server.come_back()
-        taken = source.capture()
+        taken = recovered(source)
         assert np.allclose(taken.samples, [float(volts) for volts in brain.meant], atol=1e-9)
         assert brain.format == 1
 
