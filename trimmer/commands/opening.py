@@ -21,7 +21,7 @@ Shape = Literal["bench", "visa", "sound", "file", "folder"]
 
 FILE_ENDINGS = {".csv", ".txt", ".tsv", ".wav"}
 _INTERFACES = ("TCPIP", "USB", "GPIB", "ASRL", "PRLGX", "VICP")
-_VISA = re.compile(rf"^({'|'.join(_INTERFACES)})\w*::", re.IGNORECASE)
+_VISA = re.compile(rf"^({'|'.join(_INTERFACES)})[^:]*::", re.IGNORECASE)
 
 
 @dataclass(frozen=True, slots=True)
@@ -51,13 +51,13 @@ def shape_of(word: str) -> Shape:
     if _VISA.match(word):
         return "visa"
     path = Path(word)
-    if path.is_dir():
+    if word and path.is_dir():  # an empty word would be the folder one stands in
         return "folder"
     if path.suffix.lower() in FILE_ENDINGS:
         if not path.exists():
             raise SourceNotFound(f"there is no file {clean(word)}", "Check the path of the file.")
         return "file"
-    if path.exists():
+    if word and path.exists():
         raise CommandError(
             f"{clean(word)} is not a .csv, .txt, .tsv or .wav file",
             "Save the waveform as comma-separated values or as WAV.",

@@ -34,7 +34,7 @@ def listen(session: Conversation, *, end_quits: bool, lines: TextIO | None = Non
     lines
         Where the lines come from; None is stdin.
     """
-    source = lines or sys.stdin
+    source = lines or sys.stdin or ()  # a closed stdin has ended, as an empty one has
 
     def run() -> None:
         for text in source:
