@@ -225,3 +225,19 @@ def test_a_limit_is_judged_with_the_uncertainty(tmp_path: Path, limit: float, ve
 def test_a_session_says_whether_its_end_is_within_the_limit() -> None:
     done = trimmer("demo", "--hands", "auto", "--json", "--seed", "2", "--limit-thd", "0.01")
     assert json.loads(done.stdout.splitlines()[-1])["limit"] == "inside"
+
+
+@pytest.mark.parametrize("content", ["x", "", "Dear all"], ids=["one byte", "empty", "text"])
+def test_looking_at_what_is_no_book_leaves_it_alone(tmp_path: Path, content: str) -> None:
+    path = tmp_path / "one.txt"
+    path.write_text(content)
+    done = trimmer("log", "list", "--book", path)
+    assert done.returncode == 5
+    assert path.read_text() == content
+    assert list(tmp_path.glob("one.txt*")) == [path]
+
+
+def test_a_seed_below_zero_is_a_wrong_command() -> None:
+    done = trimmer("demo", "--hands", "auto", "--json", "--seed", "-5")
+    assert done.returncode == 2
+    assert "Traceback" not in done.stderr

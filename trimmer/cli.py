@@ -52,6 +52,17 @@ def orders(text: str) -> int:
     return value
 
 
+def seed(text: str) -> int:
+    """Read a whole number of at least 0."""
+    try:
+        value = int(text)
+    except ValueError:
+        raise argparse.ArgumentTypeError(f"{text!r} is not a whole number") from None
+    if value < 0:
+        raise argparse.ArgumentTypeError(f"{text!r} is less than 0")
+    return value
+
+
 def note(text: str) -> tuple[str, str]:
     """Read KEY=VALUE."""
     key, sign, value = text.partition("=")
@@ -135,7 +146,7 @@ def _tuning(parser: argparse.ArgumentParser) -> None:
 def _bench(parser: argparse.ArgumentParser) -> None:
     group = parser.add_argument_group("simulated unit")
     group.add_argument(
-        "--seed", metavar="N", type=int, help="the same unit, hand and noise each time"
+        "--seed", metavar="N", type=seed, help="the same unit, hand and noise each time"
     )
 
 
@@ -290,13 +301,11 @@ def run(arguments: Sequence[str] | None = None) -> int:
     int
         The documented exit status.
     """
-    signal.signal(signal.SIGTERM, _interrupt)
     try:
-        options = build_parser().parse_args(arguments)
-    except SystemExit as end:
+        signal.signal(signal.SIGTERM, _interrupt)
+        return _run(build_parser().parse_args(arguments))
+    except SystemExit as end:  # argparse ends so, with its message said
         return int(end.code or 0)
-    try:
-        return _run(options)
     except KeyboardInterrupt:
         return INTERRUPTED
     except BrokenPipeError:

@@ -26,6 +26,8 @@ BUSY_S = 10.0
 
 _CONNECT_S = 3
 _SILENCE_MS = 5000
+_BEGINNING = b"SQLite format 3\x00"
+"""First bytes of every SQLite file (SQLite, *Database File Format*, section 1.3.1)."""
 
 
 def sqlite_engine(path: Path, *, writes: bool = True) -> sa.Engine:
@@ -62,6 +64,22 @@ def _check_path(path: Path) -> None:
     if not stat.S_ISREG(mode):
         what = "a folder" if stat.S_ISDIR(mode) else "no plain file"
         raise BookError(f"The book {path} failed: it is {what}.", "Give a file with `--book`.")
+    _check_beginning(path)
+
+
+def _check_beginning(path: Path) -> None:
+    """Refuse a file that does not begin as SQLite's do: SQLite itself would write over a short one."""
+    try:
+        with path.open("rb") as file:
+            beginning = file.read(len(_BEGINNING))
+    except OSError:
+        return  # what may not be read is told by what opens it
+    # An empty file is what another bench leaves for an instant while it makes this very book.
+    if beginning and beginning != _BEGINNING:
+        raise BookError(
+            f"{path} is no bench book.",
+            "Choose another file with `--book`; this one was left as it is.",
+        )
 
 
 def _open(path: Path, writes: bool) -> sqlite3.Connection:

@@ -55,7 +55,7 @@ def _open_file(place: Place, writes: bool) -> Book:
 
 def _settled(place: Place, writes: bool) -> bool:
     """Make the default book where there is none; a named one only where it will be written."""
-    if writes or place.path.exists():
+    if writes or (place.path.exists() and place.path.stat().st_size):
         return writes
     if place.chosen:
         raise BookError(f"There is no book {place.shown}.", "Check the path given with `--book`.")
