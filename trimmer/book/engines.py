@@ -77,7 +77,7 @@ def _check_beginning(path: Path) -> None:
     # An empty file is what another bench leaves for an instant while it makes this very book.
     if beginning and beginning != _BEGINNING:
         raise BookError(
-            f"{path} is no bench book.",
+            f"{path} is not a bench book.",
             "Choose another file with `--book`; this one was left as it is.",
         )
 
