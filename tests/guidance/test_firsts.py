@@ -34,10 +34,19 @@ def test_bandwidth_alone_is_not_called_slewing(slow):
 
 def test_no_unit_at_rest_is_said_to_slew():
     for kind in (*OWN, *SIMULATED):
-        for number in range(4):
+        for number in range(12):
             rng = np.random.default_rng(number)
-            at = rng.uniform(0.2, 0.8, 2)
+            at = rng.uniform(0.02, 0.98, 2)
             assert slewing_in(Scope(rng).read(unit(kind, number).respond(*at))) is None
+
+
+def test_a_crest_part_that_no_skew_part_vouches_for_is_not_slewing():
+    parts = np.zeros(28)
+    parts[2::8] = (
+        0.12 / np.arange(1, 8)[: parts[2::8].size] ** 2
+    )  # as a triangle's, which leans by nothing
+    parts[3] = -0.0003
+    assert slewing_in(read(parts)) is None
 
 
 @pytest.mark.parametrize("hertz", [1000.0, 10_000.0])

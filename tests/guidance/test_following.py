@@ -164,6 +164,7 @@ def test_live_sessions_reach_the_best_in_few_turns_without_a_false_alarm():
     assert sum(s.stuck for s in sessions) == 0
     assert sum(s.alarms for s in sessions) == 0
     assert np.median([s.reached for s in sessions]) <= 4
+    assert max(s.turns for s in sessions) <= 12
 
 
 @pytest.mark.parametrize("mistake", ["wrong-trim", "wrong-way"])

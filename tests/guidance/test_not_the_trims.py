@@ -54,6 +54,20 @@ def test_a_unit_that_does_not_slew_is_not_said_to():
         assert "slewing" not in p.begin().notice
 
 
+def test_slewing_that_does_not_stay_is_not_believed_in_any_more():
+    source = unit("ladders", 2)
+    p = Play(source, Guide(), at=(0.4, 0.6))
+    first = reading_of(source.parts(p.trims.at) + slewing(0.85, 15), 9e-5, np.zeros((28, 28)))
+    p.answers.append(p.guide.observe(first))
+    assert "slewing" in p.answer.notice
+    document = p.guide.document()
+    assert document["log"][0]["foreign"] is not None
+    p.step()
+    assert p.guide.document()["log"][1]["foreign"] is None
+    done = p.finish()
+    assert "slewing" not in {c.cause for c in done.remainder}
+
+
 # ---- time symmetry ---------------------------------------------------------------------------
 
 

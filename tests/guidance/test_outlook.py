@@ -11,12 +11,14 @@ from trimmer.guidance.estimate import Estimate
 from trimmer.guidance.field import FEATURES, FieldBelief
 from trimmer.guidance.habit import Habit
 from trimmer.guidance.hand import UNEVEN, hand_for
+from trimmer.guidance.moves import Move
 from trimmer.guidance.outlook import BEYOND, CLOSE_SHARE, Outlook
 from trimmer.guidance.path import Found
 from trimmer.guidance.record import Record
 from trimmer.guidance.seen import Seen
 
 HAND = hand_for(0.75, followed=False)
+FOLLOWED = hand_for(0.75, followed=True)
 FLOOR = 0.004
 
 
@@ -146,6 +148,25 @@ def test_expected_thd_is_that_of_simulated_hands():
     made = -0.2 + outlook.noise(0, -0.2) * rng.standard_normal(20000)
     square = np.mean([np.sum(estimate.belief.at(np.array([m, 0.0])) ** 2) for m in made[:4000]])
     assert outlook.thd_after(0, -0.2) == pytest.approx(np.sqrt(square), rel=0.03)
+
+
+def test_a_hand_that_tries_again_and_again_is_asked_for_less():
+    fresh, record = setting((0.006, -0.006))
+    assert not Outlook(fresh, record, FOLLOWED, (0, 1)).is_there()
+    often = tuple(Move(i % 2, (-1) ** i * 0.01) for i in range(12))
+    tired, record = setting((0.006, -0.006), hand_moves=often)
+    patient = Outlook(tired, record, FOLLOWED, (0, 1))
+    assert (
+        patient.radius2
+        > 1.5 * Outlook(fresh, setting((0.006, -0.006))[1], FOLLOWED, (0, 1)).radius2
+    )
+    assert choose(tired, record, FOLLOWED) is None
+
+
+def test_large_turns_are_no_tries():
+    moves = tuple(Move(0, 0.2) for _ in range(12))
+    estimate, record = setting((0.006, -0.006), hand_moves=moves)
+    assert Outlook(estimate, record, FOLLOWED, (0, 1)).tries == 0
 
 
 def test_close_is_closer_than_what_counts_as_reached():

@@ -57,6 +57,23 @@ def test_the_lag_is_learned_from_overshoot():
     assert lag.mean_s == pytest.approx(0.5, abs=0.06)
 
 
+def test_what_small_turns_go_too_far_is_learned_and_stop_said_earlier():
+    lag = Lag()
+    for _ in range(8):
+        pace = Pace(lag)
+        for now, way, word in drive(pace, 0.01, 0.01, 4.0):
+            if word == "stop":
+                pace.say(way + 0.006, 0.01, now + 1.0)
+                break
+        pace.rest()
+    assert 0.003 < lag.creep < 0.007
+    assert Pace(lag).say(0.0101 - lag.creep, 0.01, 2.0) == "stop"
+    assert Pace(Lag()).say(0.0101 - lag.creep, 0.01, 2.0) != "stop"
+    for _ in range(20):
+        lag.overshot(-0.004)
+    assert lag.creep == 0.0
+
+
 def test_without_a_stop_nothing_is_learned():
     lag = Lag()
     pace = Pace(lag)

@@ -23,8 +23,11 @@ MOST: Final = 0.5
 """A cause that makes more than this share of THD is to be seen to first .."""
 MATTERS: Final = 0.004
 """.. if it makes this much THD itself."""
-SLEWS: Final = 0.004
-"""Slewing that makes more THD than this is kept out of the trims' aim."""
+SLEWS: Final = 0.003
+"""Slewing that leans the wave by more than this is kept out of the trims' aim."""
+LEANS: Final = 0.1
+"""A slewing output leans by at least this share of what it adds to the crests. Near its limit it makes a
+triangle, which leans by nothing: a crest part that no skew part vouches for is not believed in."""
 FORM: Final = 0.05
 """The closed forms of slewing and bandwidth are trusted to this share of the largest part."""
 MARKED: Final = 10.0
@@ -81,7 +84,7 @@ def slewing_in(reading: Reading) -> Array | None:
     best = int(np.argmin(misfit))
     plain = float(misfit[-1])  # the last form is no slewing at all
     clear = plain - misfit[best] > MARKED and plain > FACTOR * misfit[best]
-    if not clear or float(np.linalg.norm(marks[best])) < SLEWS:
+    if not clear or float(np.linalg.norm(marks[best, rows])) < SLEWS:
         return None
     return np.asarray(marks[best], dtype=np.float64)
 
@@ -91,6 +94,10 @@ def _forms(orders: int) -> tuple[Array, Array, NDArray[np.intp]]:
     """Parts of slewing outputs, the last of none, shape (n, m); of bandwidth; odd skew rows."""
     ratios = np.append(np.linspace(SLOWEST, 0.995, 120), 1.0)
     marks = np.array([slewing(float(ratio), orders) for ratio in ratios])
+    leaning = np.linalg.norm(marks[:, 1::2], axis=1) >= LEANS * np.linalg.norm(
+        marks[:, 0::2], axis=1
+    )
+    marks = marks[leaning]
     k = np.repeat(np.arange(2, orders + 1), 2)
     rows = np.flatnonzero((k % 2 == 1) & (np.arange(k.size) % 2 == 1))
     return marks, bandwidth(orders), rows

@@ -23,7 +23,7 @@ from trimmer.guidance.words import TRIMS
 
 MOVED: Final = 5.0
 """Standard deviations by which a reading must differ from the last still one to count as moved."""
-MOVED_ALONG: Final = 4.0
+MOVED_ALONG: Final = 3.5
 """Standard deviations along the asked trim's column, twice running, that count as moved too."""
 STILL: Final = 2.0
 """Standard deviations within which the two halves of a pause are the same .."""
@@ -41,6 +41,8 @@ MISTAKE: Final = 16.0
 """How much better, over the last few readings together, a mistake must explain what is read."""
 LIKELIER: Final = 5.0
 """How much better it must explain the last one."""
+TWICE: Final = 2
+"""Readings in a row that must show a movement."""
 RUNNING: Final = 3
 """The last few readings."""
 ENOUGH: Final = 25.0
@@ -157,7 +159,7 @@ class Following:
         """Note a movement that shows along the columns before it shows in the parts as a whole."""
         clear = max(abs(x.way) / x.sigma for x in (asked, mistake)) > MOVED_ALONG
         self.running = self.running + 1 if clear and self.known[self.trim] else 0
-        self.moved = self.moved or self.running >= RUNNING
+        self.moved = self.moved or self.running >= TWICE
 
     def _astray(self, parts: Array, variance: Array, say: Say | None) -> Say | None:
         """Judge once the other trim has moved: both may now be off their places."""

@@ -11,7 +11,7 @@ from trimmer.guidance.advice import Done, Follow, Trim
 from trimmer.guidance.course import Answer, Call, Course
 from trimmer.guidance.estimate import Estimate, Offsets
 from trimmer.guidance.field import Array, shift_matrix
-from trimmer.guidance.firsts import look_first
+from trimmer.guidance.firsts import look_first, slewing_in
 from trimmer.guidance.following import Following, Outcome
 from trimmer.guidance.hand import hand_for
 from trimmer.guidance.knowledge import Knowledge
@@ -237,7 +237,11 @@ class Guide:
             "prior": None if self.prior is None else self.prior.to_document(),
             "limit_thd": self.limit_thd,
             "warm": None if self.warm is None else self.warm.to_document(),
-            "lag": {"mean_s": self._lag.mean_s, "count": self._lag.count},
+            "lag": {
+                "mean_s": self._lag.mean_s,
+                "count": self._lag.count,
+                "creep": self._lag.creep,
+            },
             "log": list(self._log),
         }
 
@@ -263,7 +267,7 @@ class Guide:
         for entry in document["log"]:
             guide._replay(entry)
         lag = document["lag"]
-        guide._lag = Lag(float(lag["mean_s"]), float(lag["count"]))
+        guide._lag = Lag(float(lag["mean_s"]), float(lag["count"]), float(lag["creep"]))
         return guide
 
     def _replay(self, entry: dict[str, Any]) -> None:
@@ -275,9 +279,8 @@ class Guide:
     # ---- one step ----------------------------------------------------------------------------
 
     def _take(self, call: Call, reading: Reading | None) -> Answer:
-        if reading is not None and not self._course.knowledge.record.places:
-            first = look_first(reading)
-            self._meet(first.foreign, first.greeting)
+        if reading is not None:
+            self._look_beyond(reading)
         watched, self._following = self._following, None
         made = call in ("observe", "at-stop") and watched is not None
         outcome = watched.outcome() if made and watched is not None else UNSEEN
@@ -288,11 +291,22 @@ class Guide:
             self._course.answer = answer
         return answer
 
+    def _look_beyond(self, reading: Reading) -> None:
+        """See what a reading says of things that are not the trims' to mend.
+
+        Slewing has nothing to do with where the trims stand: it must show in every reading, or it is
+        not believed in any more.
+        """
+        knowledge = self._course.knowledge
+        if not knowledge.record.places:
+            first = look_first(reading)
+            self._meet(first.foreign, first.greeting)
+        elif knowledge.offsets.foreign is not None and slewing_in(reading) is None:
+            self._meet(None, self._course.greeting)
+
     def _meet(self, foreign: Array | None, greeting: str) -> None:
-        """Take what the very first reading says of things that are not the trims' to mend."""
-        if not self._course.knowledge.record.places:
-            self._course.knowledge.offsets = Offsets(self.warm, foreign)
-            self._course.greeting = greeting
+        self._course.knowledge.offsets = Offsets(self.warm, foreign)
+        self._course.greeting = greeting
 
     def _step(self, call: Call, one: Seen | None, outcome: Outcome) -> Answer:
         foreign = self._course.knowledge.offsets.foreign

@@ -33,6 +33,18 @@ GOOD_THD: Final = 1.0e-4
 less than such a hand sets on purpose."""
 UNSEEN_SHARE: Final = 0.3
 """The most that the digitiser's own error may take of what counts as there: no turn mends it."""
+TRIES: Final = 3
+"""After so many small turns in a row the hand is taken to set no finer than it does .."""
+PATIENCE: Final = 0.25
+""".. and each further one widens what counts as there by this share, up to good enough."""
+MOST_TRIES: Final = 8
+"""After so many, even this is left:"""
+LEFT_SHARE: Final = 0.035
+"""within this share of the floor .."""
+LEFT_THD: Final = 1.5e-4
+""".. or this much THD."""
+SMALL: Final = 0.03
+"""A small turn, share of the travel."""
 SURELY: Final = 3.0
 """How many times over what is not known of the best setting must fit into that too."""
 CLEARLY: Final = 0.9
@@ -65,7 +77,11 @@ class Outlook:
         self.slope = 2.0 * columns @ est.aimed.at(est.best)
         self.floor = est.floor_thd
         finer = FOLLOWED_CLOSER if hand.followed else 1.0
-        self.radius2 = self._radius2(finer * CLOSE_SHARE, finer * CLOSE_THD)
+        self.tries = _tries(record)
+        patience = max(0.0, PATIENCE * (self.tries - TRIES))
+        share = min(finer * CLOSE_SHARE + patience * CLOSE_SHARE, GOOD_SHARE)
+        thd = min(finer * CLOSE_THD + patience * CLOSE_THD, GOOD_THD)
+        self.radius2 = self._radius2(share, thd)
         self.doubt = self._doubt(columns)
         # What the digitiser's own error may hide in the plane of the columns, whatever is read.
         tangent, _ = np.linalg.qr(columns.T)
@@ -184,9 +200,21 @@ class Outlook:
         now = float(self._energy(self.away)) + self._lost()
         good = self._radius2(GOOD_SHARE, GOOD_THD)
         surely = float(self._energy(self.away)) + SURELY * self._lost() <= good
-        if surely and not self.hand.followed:
+        if surely and (not self.hand.followed or self.tries >= TRIES):
+            return False
+        if self.tries >= MOST_TRIES and now <= self._radius2(LEFT_SHARE, LEFT_THD):
             return False
         if float(chances @ np.minimum(energy, rest)) < CLEARLY * now:
             return True
         soon = float(chances @ np.where(energy <= self.radius2, 1.0, chance))
         return now > good and soon > FAIR_CHANCE
+
+
+def _tries(record: Record) -> int:
+    """Count the small turns made in a row."""
+    count = 0
+    for move in reversed(record.moves):
+        if abs(move.asked) > SMALL:
+            break
+        count += 1
+    return count
