@@ -73,7 +73,8 @@ class OptionalFields:
 
     def _silent(self, name: str, deadline: float) -> None:
         self._silences[name] += 1
-        unknown = self._talk.why_silent(deadline) == UNKNOWN
+        faults = self._talk.faults(self._dialect.errors, deadline)
+        unknown = any(fault.startswith("-113") for fault in faults)
+        unknown = unknown or self._talk.why_silent(deadline) == UNKNOWN
         if unknown or self._silences[name] >= _MOST_SILENCES:
             self.unanswered.add(name)
-        self._talk.faults(self._dialect.errors, deadline)

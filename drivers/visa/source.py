@@ -210,14 +210,25 @@ class InstrumentSource:
             faults = speaker.faults(deadline)
             if faults:
                 why = _reported(faults)
+                if not speaker.sure_of_its_way:  # the fault may be that of the command that arms
+                    speaker.try_another_way()
                 continue
             if self._found.rivals and not self._settle(frame, deadline):
                 continue
-            converted = speaker.convert(frame)
+            try:
+                converted = speaker.convert(frame)
+            except UnusableCapture as nothing:  # never armed, perhaps, in the way that was tried
+                if frame.payload or not speaker.try_another_way():
+                    raise
+                why = nothing
+                continue
             if frame.payload != self._last or np.ptp(converted.volts) == 0.0:
+                if self._last is not None or speaker.sure_of_its_way:
+                    speaker.stay()
                 self._last = frame.payload
                 return frame, converted
             why = SourceTimeout("the instrument keeps sending the frame of before")
+            speaker.try_another_way()
         raise why if why is not None else SourceTimeout("no frame could be had")
 
     def _explained(self, speaker: Speaker, silence: SourceTimeout) -> SourceError:

@@ -166,16 +166,30 @@ class Speaker:
         try:
             acquire(self.talk, self.dialect.acquire[self._place("acquire")], deadline)
         except SourceTimeout:
-            if not self._proven:  # its query is answered, but may not mean what it should
-                self.learn(acquire=(self._place("acquire") + 1) % len(self.dialect.acquire))
+            self.try_another_way()  # its query is answered, but may not mean what it should
             raise
         complete_at = time.monotonic()
         try:
             frame = self._read(complete_at, deadline)
         except FormulaError as error:
             raise SourceRefused(f"the preamble cannot be used: {error}") from error
-        self._proven = True
         return frame
+
+    @property
+    def sure_of_its_way(self) -> bool:
+        """Whether the instrument answered the poll of the way in use: no guess, and one frame proves it."""
+        return self.dialect.acquire[self._place("acquire")].poll is not None
+
+    def try_another_way(self) -> bool:
+        """Arm and wait in the next way from now on; False where the one in use has proved good."""
+        if self._proven or len(self.dialect.acquire) == 1:
+            return False
+        self.learn(acquire=(self._place("acquire") + 1) % len(self.dialect.acquire))
+        return True
+
+    def stay(self) -> None:
+        """Keep to the way of arming and waiting: it brought a frame that is good and new."""
+        self._proven = True
 
     def convert(self, frame: Frame) -> Converted:
         """Turn a frame into volts."""

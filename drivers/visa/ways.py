@@ -11,7 +11,7 @@ from drivers.visa.conversation import Conversation
 from drivers.visa.dialect import Dialect, Encoding
 from drivers.visa.preamble import ask_fields, matches
 
-PROBE_S = 0.7
+PROBE_S = 0.5
 """Longest wait for an answer that may not come."""
 
 ANOTHER = "Choose another dialect with `--dialect`."

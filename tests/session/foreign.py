@@ -8,7 +8,8 @@ from __future__ import annotations
 
 import socket
 import threading
-from typing import Self
+import time
+from typing import Literal, Self
 
 import numpy as np
 
@@ -26,12 +27,30 @@ class BareInstrument:
         The unit; the test turns its trims.
     has_queue
         False for an instrument without an error queue.
+    arms_by
+        The one command that it takes for a new frame.
+    says_text
+        True where it sends samples as text too.
+    slow_s
+        Seconds it takes over each answer.
     """
 
-    def __init__(self, unit: StraightUnit, *, has_queue: bool = True) -> None:
+    def __init__(
+        self,
+        unit: StraightUnit,
+        *,
+        has_queue: bool = True,
+        arms_by: Literal[":DIGITIZE", ":SINGLE"] = ":DIGITIZE",
+        says_text: bool = False,
+        slow_s: float = 0.0,
+    ) -> None:
         self.unit = unit
         self.frames = 0
         self._has_queue = has_queue
+        self._arms_by = arms_by
+        self._says_text = says_text
+        self._slow_s = slow_s
+        self._as_text = False
         self._errors: list[str] = []
         self._codes = np.zeros(0, np.uint8)
         self._listener = socket.create_server(("127.0.0.1", 0))
@@ -52,6 +71,7 @@ class BareInstrument:
                 for line in lines:
                     for message in line.decode("ascii").strip().split(";"):
                         if (reply := self._answer(message.strip().upper())) is not None:
+                            time.sleep(self._slow_s)
                             connection.sendall(reply)
             except OSError:
                 return
@@ -67,16 +87,23 @@ class BareInstrument:
                 self._errors.clear()
             case ":SYSTEM:ERROR?" | ":SYST:ERR?" if self._has_queue:
                 return (self._errors.pop(0) if self._errors else '0,"No error"').encode() + b"\n"
-            case ":DIGITIZE" | ":DIG":
+            case word if word == self._arms_by:
                 volts = self.unit.samples()
                 self._codes = np.clip(np.round(volts / CODE_V) + 128, 0, 255).astype(np.uint8)
                 self.frames += 1
-            case ":WAVEFORM:SOURCE" | ":WAV:SOUR" | ":WAVEFORM:FORMAT" | ":WAV:FORM" | ":STOP":
+            case ":WAVEFORM:SOURCE" | ":WAV:SOUR" | ":STOP":
                 pass
+            case ":WAVEFORM:FORMAT" if "WORD" in words:
+                pass  # ignored without a word: it takes only bytes, and text where it can
+            case ":WAVEFORM:FORMAT":
+                self._as_text = self._says_text and "ASC" in words
             case ":WAVEFORM:PREAMBLE?" | ":WAV:PRE?":
-                fields = f"0,0,{self._codes.size},1,{INTERVAL_S:.6E},0.0,0,{CODE_V:.6E},0.0,128"
-                return fields.encode() + b"\n"
+                axes = f"{INTERVAL_S:.6E},0.0,0,{CODE_V:.6E},0.0,128"
+                return f"{4 * self._as_text},0,{self._codes.size},1,{axes}\n".encode()
             case ":WAVEFORM:DATA?" | ":WAV:DATA?":
+                if self._as_text:
+                    volts = (self._codes.astype(float) - 128) * CODE_V
+                    return ",".join(f"{value:.5E}" for value in volts).encode() + b"\n"
                 data = self._codes.tobytes()
                 return b"#8%08d" % len(data) + data + b"\n"
             case _:

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from typing import Any
+
 import pytest
 
 from tests.command import Running
@@ -9,12 +11,21 @@ from tests.session.foreign import BareInstrument
 from tests.session.sources import StraightUnit
 from tests.session.test_session import SIGN
 
+VARIETIES: dict[str, dict[str, Any]] = {
+    "error queue": {},
+    "no error queue": {"has_queue": False},
+    "text, formats ignored in silence": {"has_queue": False, "says_text": True},
+    "single sequence only": {"arms_by": ":SINGLE"},
+    "single sequence only, no error queue": {"arms_by": ":SINGLE", "has_queue": False},
+    "a tenth of a second over each answer": {"slow_s": 0.1, "says_text": True},
+}
 
-@pytest.mark.parametrize("has_queue", [True, False], ids=["error queue", "no error queue"])
-def test_a_bare_instrument_in_another_process_is_trimmed(has_queue: bool) -> None:
+
+@pytest.mark.parametrize("variety", VARIETIES)
+def test_a_bare_instrument_in_another_process_is_trimmed(variety: str) -> None:
     unit = StraightUnit(41)
     with (
-        BareInstrument(unit, has_queue=has_queue) as instrument,
+        BareInstrument(unit, **VARIETIES[variety]) as instrument,
         Running("tune", instrument.resource, "--json") as tune,
     ):
         for event in tune.events():
